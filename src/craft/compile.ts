@@ -19,6 +19,8 @@ const TYPICAL_LIFT_SLOPE_SOLIDITY = 0.53;
 /** In-plane drag over ρ D³ where it was not measured; common practice, no source. */
 const TYPICAL_INPLANE_DRAG = 0.007;
 const SEA_LEVEL_DENSITY = 1.225;
+/** Apparent mass of the flow through a disc over ρ A R, Pitt & Peters (1981). */
+const APPARENT_MASS = 8 / (3 * Math.PI);
 
 export interface RotorConstants {
   readonly radius_m: number;
@@ -30,6 +32,12 @@ export interface RotorConstants {
   /** Hover inflow ratio λ_h = √(C_T/2) in helicopter notation, times R: v_h = this · Ω. */
   readonly hoverInflowFactor_m: Float64Array;
   readonly tableTop_radps: number;
+  /** Table places per rad/s. */
+  readonly tablePerSpeed_s: number;
+  /** 1/(2A), 1/m². */
+  readonly perTwiceArea_m2: number;
+  /** 2/(apparent mass over ρ A), 1/m: rate of the inflow per difference of squared velocities. */
+  readonly inflowRelaxation_per_m: number;
   /** (σa/4) π R³, m³: loss of thrust per ρ Ω and per inflow velocity beyond hover's. */
   readonly inflowSlope_m3: number;
   /** Measured C_T(J)/C_T(0) and C_P(J)/C_P(0) on a uniform grid 0 … advanceTop; empty when not measured. */
@@ -169,6 +177,9 @@ function compileRotor(build: Build): RotorConstants {
     torqueFactor,
     hoverInflowFactor_m,
     tableTop_radps,
+    tablePerSpeed_s: (TABLE_POINTS - 1) / tableTop_radps,
+    perTwiceArea_m2: 1 / (2 * discArea_m2),
+    inflowRelaxation_per_m: 2 / (APPARENT_MASS * R),
     inflowSlope_m3: (TYPICAL_LIFT_SLOPE_SOLIDITY / 4) * Math.PI * R ** 3,
     ...compileAdvance(propeller.advanceTable),
     inPlaneDrag: propeller.inPlaneDrag ?? TYPICAL_INPLANE_DRAG * SEA_LEVEL_DENSITY * D ** 3,

@@ -5,19 +5,28 @@
  *
  * m v̇ = m g + R F;  I ω̇ + ω × (I ω + h) = τ, with h = Σ s J_r Ω about body z and the motors' reaction in τ.
  */
+import { openCircuitVoltage_V } from '../craft/cell.ts';
 import { LAGGED_MOTOR_EFFICIENCY, type Craft } from '../craft/compile.ts';
 import { GRAVITY_MPS2 } from '../math/angles.ts';
 import {
-  FORCE_X,
-  FORCE_Y,
-  groundEffect,
-  INFLOW_RATE,
-  LOADS_SIZE,
-  MOMENT_X,
-  MOMENT_Y,
-  rotorLoads,
-  THRUST,
-  TORQUE,
+  FLOW_DENSITY,
+  FLOW_DOWN_X,
+  FLOW_DOWN_Y,
+  FLOW_DOWN_Z,
+  FLOW_HEIGHT,
+  FLOW_P,
+  FLOW_Q,
+  FLOW_R,
+  FLOW_U,
+  FLOW_V,
+  FLOW_W,
+  RotorSet,
+  WRENCH_FX,
+  WRENCH_FY,
+  WRENCH_FZ,
+  WRENCH_MX,
+  WRENCH_MY,
+  WRENCH_MZ,
 } from './rotor.ts';
 import { ATTITUDE, CHARGE, INFLOW, POSITION, RATES, ROTOR_SPEED, VELOCITY } from './state.ts';
 
@@ -31,8 +40,7 @@ export class FlightDynamics {
   readonly duty = new Float64Array(4);
   /** 1 where a propeller struck something: its motor is off and it stops. */
   readonly stopped = new Uint8Array(4);
-  /** Faults: share of healthy thrust and of healthy motor torque per rotor. */
-  readonly thrustShare = new Float64Array([1, 1, 1, 1]);
+  /** Faults: share of healthy motor torque per rotor. */
   readonly torqueShare = new Float64Array([1, 1, 1, 1]);
   /** Air velocity, world axes, m/s, held over the step. */
   windNorth_mps = 0;
@@ -45,19 +53,18 @@ export class FlightDynamics {
   density_kgpm3: number;
   /** Rest voltage of the pack at its charge, V, held over the step. */
   openVoltage_V = 0;
+  /** Faults: voltage that dead cells no longer give. */
+  missingVoltage_V = 0;
   /** Down coordinate of the ground below, m; Infinity switches ground effect off. */
   groundDown_m = 0;
 
-  /** Results of the last call: rotor loads (4 × LOADS_SIZE). */
-  readonly loads = new Float64Array(4 * LOADS_SIZE);
+
+  /** The rotors, with their faults and the loads of the last call. */
+  readonly rotors = new RotorSet();
   readonly motorCurrent_A = new Float64Array(4);
   batteryVoltage_V = 0;
   batteryCurrent_A = 0;
-  /** Acceleration of the centre of mass, world axes, gravity included, m/s². */
-  readonly acceleration_mps2 = new Float64Array(3);
-  readonly angularAcceleration_radps2 = new Float64Array(3);
-  /** What an accelerometer at the centre of mass feels, body axes, m/s². */
-  readonly specificForce_mps2 = new Float64Array(3);
+  private readonly emf_V = new Float64Array(4);
 
   constructor(
     public craft: Craft,
@@ -66,7 +73,17 @@ export class FlightDynamics {
     this.density_kgpm3 = density_kgpm3;
   }
 
-  /** dS/dt of the state `s` into `d`; also refreshes the result fields. */
+  /**
+   * Takes what holds over a step from the state: the pack's rest voltage and the rotors' static coefficients.
+   * Call it before each step, or before each `derivative` when that is differentiated.
+   */
+  prepare(s: Float64Array): void {
+    const { craft } = this;
+    this.openVoltage_V = craft.cells * openCircuitVoltage_V(s[CHARGE]) - this.missingVoltage_V;
+    this.rotors.hold(craft.rotor, s);
+  }
+
+  /** dS/dt of the state `s` into `d`; the rotors' loads and the battery's fields are those of this call. */
   derivative(s: Float64Array, d: Float64Array): void {
     const craft = this.craft;
     const rho = this.density_kgpm3;
@@ -98,60 +115,42 @@ export class FlightDynamics {
     const u = r00 * an + r10 * ae + r20 * ad;
     const v = r01 * an + r11 * ae + r21 * ad;
     const w = r02 * an + r12 * ae + r22 * ad;
-    const pa = p - this.gustP_radps;
-    const qa = q - this.gustQ_radps;
-    const ra = r - this.gustR_radps;
+    const rotors = this.rotors;
+    const flow = rotors.flow;
+    flow[FLOW_U] = u;
+    flow[FLOW_V] = v;
+    flow[FLOW_W] = w;
+    flow[FLOW_P] = p - this.gustP_radps;
+    flow[FLOW_Q] = q - this.gustQ_radps;
+    flow[FLOW_R] = r - this.gustR_radps;
+    flow[FLOW_DENSITY] = rho;
+    flow[FLOW_HEIGHT] = this.groundDown_m - s[POSITION + 2];
+    flow[FLOW_DOWN_X] = r20;
+    flow[FLOW_DOWN_Y] = r21;
+    flow[FLOW_DOWN_Z] = r22;
 
+    // Battery, rotors, motors.
     this.solveBattery(s);
     d[CHARGE] = -this.batteryCurrent_A / craft.capacity_C;
-
-    // Motors and rotors.
-    const position = craft.rotorPosition_m;
-    let fx = 0;
-    let fy = 0;
-    let fz = 0;
-    let mx = 0;
-    let my = 0;
-    let mz = 0;
+    rotors.loads(craft.rotor, craft.rotorPosition_m, craft.spin, s);
+    const wrench = rotors.wrench;
+    let fx = wrench[WRENCH_FX];
+    let fy = wrench[WRENCH_FY];
+    let fz = wrench[WRENCH_FZ];
+    const mx = wrench[WRENCH_MX];
+    const my = wrench[WRENCH_MY];
+    let mz = wrench[WRENCH_MZ];
     let spinMomentum = 0;
-    const loads = this.loads;
+    const rotorInertia = craft.rotor.inertia_kgm2;
     for (let i = 0; i < 4; i++) {
-      const x = position[3 * i];
-      const y = position[3 * i + 1];
-      const z = position[3 * i + 2];
       const speed = s[ROTOR_SPEED + i];
-      const at = i * LOADS_SIZE;
-      const height = this.groundDown_m - (s[POSITION + 2] + r20 * x + r21 * y + r22 * z);
-      const ground = r22 > 0.5 ? groundEffect(craft.rotor.radius_m, height) : 1;
-      rotorLoads(
-        craft.rotor,
-        rho,
-        speed,
-        s[INFLOW + i],
-        u + qa * z - ra * y,
-        v + ra * x - pa * z,
-        w + pa * y - qa * x,
-        craft.spin[i],
-        ground,
-        this.thrustShare[i],
-        loads,
-        at,
-      );
-      const spinUp = this.rotorAcceleration(i, speed, loads[at + TORQUE]);
+      const torque = rotors.torque_Nm[i];
+      const spinUp = this.rotorAcceleration(i, speed, torque);
       d[ROTOR_SPEED + i] = spinUp;
-      d[INFLOW + i] = loads[at + INFLOW_RATE];
-      const inertia = craft.rotor.inertia_kgm2;
-      spinMomentum += craft.spin[i] * inertia * speed;
-      const bx = loads[at + FORCE_X];
-      const by = loads[at + FORCE_Y];
-      const bz = -loads[at + THRUST];
-      fx += bx;
-      fy += by;
-      fz += bz;
-      mx += y * bz - z * by + loads[at + MOMENT_X];
-      my += z * bx - x * bz + loads[at + MOMENT_Y];
+      d[INFLOW + i] = rotors.inflowRate_mps2[i];
+      spinMomentum += craft.spin[i] * rotorInertia * speed;
       // The stator gives the rotor J_r dΩ/dt + Q and feels the opposite.
-      mz += x * by - y * bx - craft.spin[i] * (inertia * spinUp + loads[at + TORQUE]);
+      mz -= craft.spin[i] * (rotorInertia * spinUp + torque);
     }
 
     // Body drag, quadratic per axis.
@@ -194,16 +193,6 @@ export class FlightDynamics {
     d[ATTITUDE + 1] = 0.5 * (qw * p + qy * r - qz * q);
     d[ATTITUDE + 2] = 0.5 * (qw * q + qz * p - qx * r);
     d[ATTITUDE + 3] = 0.5 * (qw * r + qx * q - qy * p);
-
-    this.specificForce_mps2[0] = sx;
-    this.specificForce_mps2[1] = sy;
-    this.specificForce_mps2[2] = sz;
-    this.acceleration_mps2[0] = dvn;
-    this.acceleration_mps2[1] = dve;
-    this.acceleration_mps2[2] = dvd;
-    this.angularAcceleration_radps2[0] = dp;
-    this.angularAcceleration_radps2[1] = dq;
-    this.angularAcceleration_radps2[2] = dr;
   }
 
   /**
@@ -217,39 +206,28 @@ export class FlightDynamics {
       this.solveLaggedBattery(s);
       return;
     }
-    const perOhm = 1 / motor.resistance_ohm;
+    const emf = this.emf_V;
+    let square = 0;
+    let back = 0;
+    let off = 0;
+    for (let i = 0; i < 4; i++) {
+      const own = motor.torqueConstant * this.torqueShare[i] * s[ROTOR_SPEED + i];
+      const u = duty[i];
+      emf[i] = own;
+      square += u * u;
+      back += u * own;
+      off |= this.stopped[i] << i;
+    }
     const Rb = craft.batteryResistance_ohm;
-    let active = 15;
-    let voltage = 0;
-    for (let pass = 0; pass < 4; pass++) {
-      let square = 0;
-      let back = 0;
-      for (let i = 0; i < 4; i++) {
-        if ((active & (1 << i)) === 0 || this.stopped[i] !== 0) continue;
-        const emf = motor.torqueConstant * this.torqueShare[i] * s[ROTOR_SPEED + i];
-        square += duty[i] * duty[i];
-        back += duty[i] * emf;
-      }
-      voltage = (this.openVoltage_V + Rb * back * perOhm) / (1 + Rb * square * perOhm);
-      if (craft.braking) break;
-      let changed = false;
-      for (let i = 0; i < 4; i++) {
-        const emf = motor.torqueConstant * this.torqueShare[i] * s[ROTOR_SPEED + i];
-        if ((active & (1 << i)) !== 0 && duty[i] * voltage < emf) {
-          active &= ~(1 << i);
-          changed = true;
-        }
-      }
-      if (!changed) break;
+    const perOhm = 1 / motor.resistance_ohm;
+    let voltage = (this.openVoltage_V + Rb * back * perOhm) / (1 + Rb * square * perOhm);
+    if (off !== 0 || !craft.braking) {
+      off = this.switchedOff(off, voltage);
+      voltage = this.voltageWithout(off);
     }
     let total = 0;
     for (let i = 0; i < 4; i++) {
-      if ((active & (1 << i)) === 0 || this.stopped[i] !== 0) {
-        motorCurrent_A[i] = 0;
-        continue;
-      }
-      const emf = motor.torqueConstant * this.torqueShare[i] * s[ROTOR_SPEED + i];
-      const current = (duty[i] * voltage - emf) * perOhm;
+      const current = (off & (1 << i)) !== 0 ? 0 : (duty[i] * voltage - emf[i]) * perOhm;
       motorCurrent_A[i] = current;
       total += duty[i] * current;
     }
@@ -257,11 +235,39 @@ export class FlightDynamics {
     this.batteryCurrent_A = total;
   }
 
+  /** Pack voltage with the motors in the bit set `off` drawing nothing. */
+  private voltageWithout(off: number): number {
+    const { craft, duty, emf_V } = this;
+    let square = 0;
+    let back = 0;
+    for (let i = 0; i < 4; i++) {
+      if ((off & (1 << i)) !== 0) continue;
+      square += duty[i] * duty[i];
+      back += duty[i] * emf_V[i];
+    }
+    const share = craft.batteryResistance_ohm / craft.motor.resistance_ohm;
+    return (this.openVoltage_V + share * back) / (1 + share * square);
+  }
+
+  /** Adds to `off` the motors that would generate, unless the ESC brakes; at most four more passes. */
+  private switchedOff(off: number, voltage: number): number {
+    if (this.craft.braking) return off;
+    let set = off;
+    let volts = voltage;
+    for (let pass = 0; pass < 4; pass++) {
+      const before = set;
+      for (let i = 0; i < 4; i++) if (this.duty[i] * volts < this.emf_V[i]) set |= 1 << i;
+      if (set === before) break;
+      volts = this.voltageWithout(set);
+    }
+    return set;
+  }
+
   /** A lagged motor's current from its shaft power at a typical efficiency. */
   private solveLaggedBattery(s: Float64Array): void {
     let power_W = 0;
     for (let i = 0; i < 4; i++) {
-      const shaft_W = Math.max(0, this.loads[i * LOADS_SIZE + TORQUE] * s[ROTOR_SPEED + i]);
+      const shaft_W = Math.max(0, this.rotors.torque_Nm[i] * s[ROTOR_SPEED + i]);
       const electric_W = shaft_W / LAGGED_MOTOR_EFFICIENCY;
       this.motorCurrent_A[i] = this.openVoltage_V > 0 ? electric_W / this.openVoltage_V : 0;
       power_W += electric_W;
