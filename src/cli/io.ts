@@ -69,10 +69,9 @@ export async function runVerb(verb: () => number | Promise<number>): Promise<voi
     process.exitCode = await verb();
   } catch (error) {
     if (!(error instanceof InputError)) throw error;
-    process.stderr.write(`${describeProblem(error.file, error.problems[0])}\n`);
-    for (const problem of error.problems.slice(1)) {
-      process.stderr.write(`${describeProblem(error.file, problem)}\n`);
-    }
+    const more = error.problems.length - 1;
+    const rest = more > 0 ? ` (and ${more} more like it)` : '';
+    process.stderr.write(`${describeProblem(error.file, error.problems[0])}${rest}\n`);
     process.exitCode = BAD_INPUT;
   }
 }

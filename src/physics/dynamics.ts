@@ -1,13 +1,19 @@
 /**
  * The equations of motion: rate of change of the whole flight state for commands and air that hold over the
- * step. Passes in the order of the physics: attitude → airspeed → battery → motors and rotors → body drag →
- * linear and angular acceleration. Nothing is allocated.
- *
- * m v̇ = m g + R F;  I ω̇ + ω × (I ω + h) = τ, with h = Σ s J_r Ω about body z and the motors' reaction in τ.
+ * step. Passes in the order of the physics: attitude → air → battery → rotors → motors → body drag → rigid
+ * body. Nothing is allocated.
  */
 import { openCircuitVoltage_V } from '../craft/cell.ts';
 import { LAGGED_MOTOR_EFFICIENCY, type Craft } from '../craft/compile.ts';
-import { GRAVITY_MPS2 } from '../math/angles.ts';
+import {
+  FORCE_X,
+  FORCE_Y,
+  FORCE_Z,
+  rigidBodyRates,
+  rotationOf,
+  SPIN_MOMENTUM,
+  TORQUE_Z,
+} from './rigidBody.ts';
 import {
   FLOW_DENSITY,
   FLOW_DOWN_X,
@@ -21,14 +27,8 @@ import {
   FLOW_V,
   FLOW_W,
   RotorSet,
-  WRENCH_FX,
-  WRENCH_FY,
-  WRENCH_FZ,
-  WRENCH_MX,
-  WRENCH_MY,
-  WRENCH_MZ,
 } from './rotor.ts';
-import { ATTITUDE, CHARGE, INFLOW, POSITION, RATES, ROTOR_SPEED, VELOCITY } from './state.ts';
+import { CHARGE, INFLOW, POSITION, RATES, ROTOR_SPEED, VELOCITY } from './state.ts';
 
 /** Speed below which bearing friction fades to zero, rad/s, so that a motor comes to rest. */
 const FRICTION_KNEE_RADPS = 5;
@@ -64,6 +64,7 @@ export class FlightDynamics {
   readonly motorCurrent_A = new Float64Array(4);
   batteryVoltage_V = 0;
   batteryCurrent_A = 0;
+  private readonly rotation = new Float64Array(9);
   private readonly emf_V = new Float64Array(4);
 
   constructor(
@@ -85,114 +86,70 @@ export class FlightDynamics {
 
   /** dS/dt of the state `s` into `d`; the rotors' loads and the battery's fields are those of this call. */
   derivative(s: Float64Array, d: Float64Array): void {
-    const craft = this.craft;
-    const rho = this.density_kgpm3;
-
-    // Attitude: rotation matrix, body to world.
-    const qw = s[ATTITUDE];
-    const qx = s[ATTITUDE + 1];
-    const qy = s[ATTITUDE + 2];
-    const qz = s[ATTITUDE + 3];
-    // The quaternion's length is divided out here: RK4's inner stages leave the unit sphere by O(h²).
-    const unit = 2 / (qw * qw + qx * qx + qy * qy + qz * qz);
-    const r00 = 1 - unit * (qy * qy + qz * qz);
-    const r01 = unit * (qx * qy - qw * qz);
-    const r02 = unit * (qx * qz + qw * qy);
-    const r10 = unit * (qx * qy + qw * qz);
-    const r11 = 1 - unit * (qx * qx + qz * qz);
-    const r12 = unit * (qy * qz - qw * qx);
-    const r20 = unit * (qx * qz - qw * qy);
-    const r21 = unit * (qy * qz + qw * qx);
-    const r22 = 1 - unit * (qx * qx + qy * qy);
-    const p = s[RATES];
-    const q = s[RATES + 1];
-    const r = s[RATES + 2];
-
-    // Airspeed of the centre of mass, body axes.
-    const an = s[VELOCITY] - this.windNorth_mps;
-    const ae = s[VELOCITY + 1] - this.windEast_mps;
-    const ad = s[VELOCITY + 2] - this.windDown_mps;
-    const u = r00 * an + r10 * ae + r20 * ad;
-    const v = r01 * an + r11 * ae + r21 * ad;
-    const w = r02 * an + r12 * ae + r22 * ad;
-    const rotors = this.rotors;
-    const flow = rotors.flow;
-    flow[FLOW_U] = u;
-    flow[FLOW_V] = v;
-    flow[FLOW_W] = w;
-    flow[FLOW_P] = p - this.gustP_radps;
-    flow[FLOW_Q] = q - this.gustQ_radps;
-    flow[FLOW_R] = r - this.gustR_radps;
-    flow[FLOW_DENSITY] = rho;
-    flow[FLOW_HEIGHT] = this.groundDown_m - s[POSITION + 2];
-    flow[FLOW_DOWN_X] = r20;
-    flow[FLOW_DOWN_Y] = r21;
-    flow[FLOW_DOWN_Z] = r22;
-
-    // Battery, rotors, motors.
+    const { craft, rotors, rotation } = this;
+    rotationOf(s, rotation);
+    this.meetAir(s);
     this.solveBattery(s);
     d[CHARGE] = -this.batteryCurrent_A / craft.capacity_C;
     rotors.loads(craft.rotor, craft.rotorPosition_m, craft.spin, s);
-    const wrench = rotors.wrench;
-    let fx = wrench[WRENCH_FX];
-    let fy = wrench[WRENCH_FY];
-    let fz = wrench[WRENCH_FZ];
-    const mx = wrench[WRENCH_MX];
-    const my = wrench[WRENCH_MY];
-    let mz = wrench[WRENCH_MZ];
-    let spinMomentum = 0;
-    const rotorInertia = craft.rotor.inertia_kgm2;
+    this.turnRotors(s, d);
+    this.dragBody();
+    rigidBodyRates(craft, s, rotation, rotors.wrench, d);
+  }
+
+  /** Velocity and rates against the air, body axes, and the height over ground, into the rotors' flow. */
+  private meetAir(s: Float64Array): void {
+    const r = this.rotation;
+    const flow = this.rotors.flow;
+    const north = s[VELOCITY] - this.windNorth_mps;
+    const east = s[VELOCITY + 1] - this.windEast_mps;
+    const down = s[VELOCITY + 2] - this.windDown_mps;
+    flow[FLOW_U] = r[0] * north + r[3] * east + r[6] * down;
+    flow[FLOW_V] = r[1] * north + r[4] * east + r[7] * down;
+    flow[FLOW_W] = r[2] * north + r[5] * east + r[8] * down;
+    flow[FLOW_P] = s[RATES] - this.gustP_radps;
+    flow[FLOW_Q] = s[RATES + 1] - this.gustQ_radps;
+    flow[FLOW_R] = s[RATES + 2] - this.gustR_radps;
+    flow[FLOW_DENSITY] = this.density_kgpm3;
+    flow[FLOW_HEIGHT] = this.groundDown_m - s[POSITION + 2];
+    flow[FLOW_DOWN_X] = r[6];
+    flow[FLOW_DOWN_Y] = r[7];
+    flow[FLOW_DOWN_Z] = r[8];
+  }
+
+  /** Rotor accelerations and inflow rates into `d`; the motors' reaction and momentum into the wrench. */
+  private turnRotors(s: Float64Array, d: Float64Array): void {
+    const { craft, rotors } = this;
+    const { torque_Nm, inflowRate_mps2, wrench } = rotors;
+    const inertia = craft.rotor.inertia_kgm2;
+    const spin = craft.spin;
+    let reaction = 0;
+    let momentum = 0;
     for (let i = 0; i < 4; i++) {
       const speed = s[ROTOR_SPEED + i];
-      const torque = rotors.torque_Nm[i];
-      const spinUp = this.rotorAcceleration(i, speed, torque);
-      d[ROTOR_SPEED + i] = spinUp;
-      d[INFLOW + i] = rotors.inflowRate_mps2[i];
-      spinMomentum += craft.spin[i] * rotorInertia * speed;
+      const torque = torque_Nm[i];
+      const acceleration = this.rotorAcceleration(i, speed, torque);
+      d[ROTOR_SPEED + i] = acceleration;
+      d[INFLOW + i] = inflowRate_mps2[i];
+      momentum += spin[i] * inertia * speed;
       // The stator gives the rotor J_r dΩ/dt + Q and feels the opposite.
-      mz -= craft.spin[i] * (rotorInertia * spinUp + torque);
+      reaction -= spin[i] * (inertia * acceleration + torque);
     }
+    wrench[TORQUE_Z] += reaction;
+    wrench[SPIN_MOMENTUM] = momentum;
+  }
 
-    // Body drag, quadratic per axis.
-    const area = craft.dragArea_m2;
-    fx -= 0.5 * rho * area[0] * Math.abs(u) * u;
-    fy -= 0.5 * rho * area[1] * Math.abs(v) * v;
-    fz -= 0.5 * rho * area[2] * Math.abs(w) * w;
-
-    // Linear motion.
-    const perMass = 1 / craft.mass_kg;
-    const sx = fx * perMass;
-    const sy = fy * perMass;
-    const sz = fz * perMass;
-    const dvn = r00 * sx + r01 * sy + r02 * sz;
-    const dve = r10 * sx + r11 * sy + r12 * sz;
-    const dvd = r20 * sx + r21 * sy + r22 * sz + GRAVITY_MPS2;
-    d[POSITION] = s[VELOCITY];
-    d[POSITION + 1] = s[VELOCITY + 1];
-    d[POSITION + 2] = s[VELOCITY + 2];
-    d[VELOCITY] = dvn;
-    d[VELOCITY + 1] = dve;
-    d[VELOCITY + 2] = dvd;
-
-    // Angular motion, full tensor and rotor gyroscopics.
-    const I = craft.inertia;
-    const hx = I[0] * p + I[1] * q + I[2] * r;
-    const hy = I[3] * p + I[4] * q + I[5] * r;
-    const hz = I[6] * p + I[7] * q + I[8] * r + spinMomentum;
-    const tx = mx - (q * hz - r * hy);
-    const ty = my - (r * hx - p * hz);
-    const tz = mz - (p * hy - q * hx);
-    const inv = craft.inertiaInverse;
-    const dp = inv[0] * tx + inv[1] * ty + inv[2] * tz;
-    const dq = inv[3] * tx + inv[4] * ty + inv[5] * tz;
-    const dr = inv[6] * tx + inv[7] * ty + inv[8] * tz;
-    d[RATES] = dp;
-    d[RATES + 1] = dq;
-    d[RATES + 2] = dr;
-    d[ATTITUDE] = 0.5 * (-qx * p - qy * q - qz * r);
-    d[ATTITUDE + 1] = 0.5 * (qw * p + qy * r - qz * q);
-    d[ATTITUDE + 2] = 0.5 * (qw * q + qz * p - qx * r);
-    d[ATTITUDE + 3] = 0.5 * (qw * r + qx * q - qy * p);
+  /** Body drag, quadratic per axis, onto the wrench. */
+  private dragBody(): void {
+    const { flow, wrench } = this.rotors;
+    const area = this.craft.dragArea_m2;
+    const half = 0.5 * this.density_kgpm3;
+    const u = flow[FLOW_U];
+    const v = flow[FLOW_V];
+    const w = flow[FLOW_W];
+    wrench[FORCE_X] -= half * area[0] * Math.abs(u) * u;
+    wrench[FORCE_Y] -= half * area[1] * Math.abs(v) * v;
+    wrench[FORCE_Z] -= half * area[2] * Math.abs(w) * w;
   }
 
   /**

@@ -10,6 +10,7 @@
  * stiff small propeller passes most as roll (its sense follows the spin) and a part, by flapping, as pitch back.
  */
 import { TABLE_POINTS, type RotorConstants } from '../craft/compile.ts';
+import { FORCE_X, FORCE_Y, FORCE_Z, TORQUE_X, TORQUE_Y, TORQUE_Z, WRENCH_SIZE } from './rigidBody.ts';
 import { INFLOW, ROTOR_SPEED } from './state.ts';
 
 /** Shares of the rigid-blade moment that reach the hub: flap frequency ratio 1.5, Lock number 2.5. */
@@ -35,16 +36,6 @@ export const FLOW_DOWN_X = 8;
 export const FLOW_DOWN_Y = 9;
 export const FLOW_DOWN_Z = 10;
 export const FLOW_SIZE = 11;
-
-/** Offsets in the wrench of all rotors on the body, N and N·m, and their angular momentum about z. */
-export const WRENCH_FX = 0;
-export const WRENCH_FY = 1;
-export const WRENCH_FZ = 2;
-export const WRENCH_MX = 3;
-export const WRENCH_MY = 4;
-/** Without the motors' reaction, which needs their acceleration. */
-export const WRENCH_MZ = 5;
-export const WRENCH_SIZE = 6;
 
 /**
  * Ratio of induced to hover velocity in axial flight, v_i/v_h, for climb ratio x = V_c/v_h (negative in
@@ -199,12 +190,12 @@ export class RotorSet {
       my += roll * v + back * u + z * hx + x * thrust;
       mz += x * hy - y * hx;
     }
-    wrench[WRENCH_FX] = fx;
-    wrench[WRENCH_FY] = fy;
-    wrench[WRENCH_FZ] = fz;
-    wrench[WRENCH_MX] = mx;
-    wrench[WRENCH_MY] = my;
-    wrench[WRENCH_MZ] = mz;
+    wrench[FORCE_X] = fx;
+    wrench[FORCE_Y] = fy;
+    wrench[FORCE_Z] = fz;
+    wrench[TORQUE_X] = mx;
+    wrench[TORQUE_Y] = my;
+    wrench[TORQUE_Z] = mz;
   }
 }
 

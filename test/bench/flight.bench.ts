@@ -18,7 +18,7 @@ const STEP_S = 0.0005;
 const RESET = 2000;
 
 function craftAtHover() {
-  const raw: unknown = JSON.parse(readFileSync(new URL('../../scenes/sandpiper.build.json', import.meta.url), 'utf8'));
+  const raw: unknown = JSON.parse(readFileSync('scenes/sandpiper.build.json', 'utf8'));
   const craft = compileCraft(parseBuild(raw));
   return { craft, trim: findTrim(craft, { ...HOVER, density_kgpm3: 1.225 }) };
 }
@@ -64,8 +64,7 @@ function inC(): { rate: number; sum: number } | string {
   const folder = mkdtempSync(path.join(tmpdir(), 'gustbench-'));
   try {
     const program = path.join(folder, 'flight');
-    const source = new URL('./flight.c', import.meta.url).pathname;
-    execFileSync('cc', ['-O2', '-o', program, source, '-lm'], { stdio: 'pipe' });
+    execFileSync('cc', ['-O2', '-o', program, 'test/bench/flight.c', '-lm'], { stdio: 'pipe' });
     let rate = 0;
     let sum = 0;
     for (let round = 0; round < 3; round++) {
