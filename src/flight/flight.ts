@@ -520,6 +520,8 @@ export class Flight {
     }
     dynamics.missingVoltage_V = effects.deadCells * 4.2;
     this.gyro.vibrationScale = effects.vibrationScale;
+    this.gyro.mountResonance_Hz = effects.mountResonance_Hz;
+    this.gyro.mountDamping = effects.mountDamping;
   }
 
   /** Everything that the next tick depends on; `load` of the same setup's flight continues bit for bit. */

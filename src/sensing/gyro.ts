@@ -24,6 +24,9 @@ export class Gyro implements Stateful {
   noiseScale = 1;
   vibrationScale = 1;
   readonly imbalance = new Float64Array([1, 1, 1, 1]);
+  /** Resonance of a loose mount; 0: as stiff as the airframe. */
+  mountResonance_Hz = 0;
+  mountDamping = 1;
   private readonly filtered_dps = new Float64Array(3);
   private readonly noise_dps = new Float64Array(3);
   private readonly drift_dps = new Float64Array(3);
@@ -156,14 +159,24 @@ export class Gyro implements Stateful {
     for (let i = 0; i < 4; i++) {
       const speed = state[speeds + i];
       const relative = speed / this.hoverSpeed_radps;
-      const turn = this.throughBandwidth(speed) * Math.sin(phase[i] + AXIS_PHASE_RAD[axis] + i);
+      const turn = this.transmitted(speed) * Math.sin(phase[i] + AXIS_PHASE_RAD[axis] + i);
       const pass =
         BLADE_PASS_SHARE *
-        this.throughBandwidth(blades * speed) *
+        this.transmitted(blades * speed) *
         Math.sin(blades * phase[i] + AXIS_PHASE_RAD[axis] + 2 * i);
       sum += this.imbalance[i] * relative * relative * (turn + pass);
     }
     return this.vibrationScale * amplitude * sum;
+  }
+
+  /** Gain of mount and sensor at angular frequency `w`, rad/s; a mount passes vibration as a second-order base. */
+  private transmitted(w: number): number {
+    if (this.mountResonance_Hz === 0) return this.throughBandwidth(w);
+    const ratio = w / (2 * Math.PI * this.mountResonance_Hz);
+    const damping = 2 * this.mountDamping * ratio;
+    const stiff = 1 - ratio * ratio;
+    const mount = Math.sqrt((1 + damping * damping) / (stiff * stiff + damping * damping));
+    return mount * this.throughBandwidth(w);
   }
 
   /** Gain of the first-order bandwidth at angular frequency `w`, rad/s. */
