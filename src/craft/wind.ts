@@ -71,6 +71,10 @@ export const CALM: Wind = parseWind({ format: WIND_FORMAT, name: 'calm' });
  */
 export function parseWind(raw: unknown, file = 'wind'): Wind {
   const wind = parseWith(windSchema, raw, file);
+  const { profile } = wind;
+  if (typeof profile === 'object' && profile.law === 'log' && profile.reference_m <= profile.roughness_m) {
+    throw refuse(file, 'profile.reference_m', profile.reference_m, 'more than profile.roughness_m');
+  }
   wind.gusts.forEach((one, index) => {
     if ((one.length_m === undefined) === (one.rise_s === undefined)) {
       throw refuse(file, `gusts[${index}]`, one, 'exactly one of length_m and rise_s');
