@@ -458,6 +458,7 @@ export class Flight {
       const pitch = start.kind === 'free-air' ? (start.pitch_deg ?? 0) * RAD_PER_DEG : 0;
       s.set(quaternionFromEuler(roll, pitch, heading), ATTITUDE);
       this.queue.force(this.trim.command_us);
+      this.dynamics.duty.set(this.trim.duty);
       this.pilot.command_us.set(this.trim.command_us);
     }
     this.dynamics.prepare(s);

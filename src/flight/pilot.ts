@@ -21,7 +21,7 @@ export interface Sticks {
   armed: boolean;
   levelling: boolean;
   heightHold: boolean;
-  /** The bench's mooring: holds height and place whatever the sticks say. */
+  /** The bench's mooring: holds height and place; sticks only add rate to what it asks for. */
   moored: boolean;
 }
 
@@ -134,6 +134,10 @@ export class Pilot implements Stateful {
       );
       const { roll_deg, pitch_deg, yawRate_dps } = this.mooring;
       this.levelling.steer(roll_deg, pitch_deg, yawRate_dps, attitude_per_s);
+      // Sticks add rate on top of the mooring's: an excitation for identification.
+      this.levelling.roll_dps += sticks.roll * maxRate_dps.roll;
+      this.levelling.pitch_dps += sticks.pitch * maxRate_dps.pitch;
+      this.levelling.yaw_dps += sticks.yaw * maxRate_dps.yaw;
     } else if (sticks.levelling) {
       this.levelling.steer(
         sticks.roll * maxAngle_deg,

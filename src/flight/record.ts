@@ -85,7 +85,7 @@ function headerLines(header: RecordHeader): string[] {
 
 /** The record as CSV text, in pieces of a few thousand rows so that a long one needs no single huge string. */
 export function* recordCsv(record: Recorder, header: RecordHeader): Generator<string> {
-  yield `${headerLines(header).join('\n')}\n${RECORD_SIGNALS.join(', ')}\n`;
+  yield `${headerLines(header).join('\n')}\n${RECORD_SIGNALS.join(',')}\n`;
   const columns = RECORD_SIGNALS.map((name) => record.column(name));
   const places = RECORD_SIGNALS.map(decimals);
   let lines: string[] = [];
