@@ -11,6 +11,7 @@ const order = [
   'measuring',
   'matching',
   'trials',
+  'carrying',
   'cli',
   'app',
 ];
