@@ -1,0 +1,74 @@
+import { useEffect, useState } from 'preact/hooks';
+import { PLACE_LIST } from '../places/registry.ts';
+import { useStore } from '../store/context.ts';
+import { HelpDialog } from './HelpDialog.tsx';
+import { handleKey } from './keys.ts';
+import { Notices } from './Notices.tsx';
+import { PlaceFrame } from './PlaceFrame.tsx';
+import { Rail } from './Rail.tsx';
+import { hashOf, placeInHash } from './route.ts';
+import { SettingsDialog } from './SettingsDialog.tsx';
+import { TopLine, type ShellDialog } from './TopLine.tsx';
+
+/** The frame that all places live in. */
+export function App() {
+  const store = useStore();
+  const [dialog, setDialog] = useState<ShellDialog | null>(null);
+  const here = store.place.value;
+  const place = PLACE_LIST.find(({ name }) => name === here) ?? PLACE_LIST[0];
+
+  useEffect(() => {
+    const follow = () => {
+      const wanted = placeInHash(location.hash);
+      if (wanted !== null) store.choosePlace(wanted);
+    };
+    const press = (event: KeyboardEvent) => {
+      handleKey(event, {
+        place: (index) => {
+          location.hash = hashOf(PLACE_LIST[index].name);
+        },
+        undo: () => store.undo(),
+        redo: () => store.redo(),
+        help: () => setDialog('help'),
+        work: () => setDialog('work'),
+        settings: () => setDialog('settings'),
+      });
+    };
+    follow();
+    window.addEventListener('hashchange', follow);
+    window.addEventListener('keydown', press);
+    return () => {
+      window.removeEventListener('hashchange', follow);
+      window.removeEventListener('keydown', press);
+    };
+  }, [store]);
+
+  useEffect(() => {
+    document.title = `${store.texts.places[here]} · ${store.texts.title}`;
+    if (placeInHash(location.hash) !== here) history.replaceState(null, '', hashOf(here));
+  }, [here]);
+
+  const close = () => setDialog(null);
+  return (
+    <div class="frame">
+      <a
+        class="skip"
+        href="#place"
+        onClick={(event) => {
+          event.preventDefault();
+          document.getElementById('place')?.focus();
+        }}
+      >
+        {store.texts.skip}
+      </a>
+      <Rail />
+      <TopLine open={setDialog} />
+      <main class="place" id="place" tabIndex={-1} aria-label={store.texts.places[here]}>
+        <PlaceFrame key={here} place={place} />
+      </main>
+      <Notices />
+      {dialog === 'help' ? <HelpDialog onClose={close} /> : null}
+      {dialog === 'settings' ? <SettingsDialog onClose={close} /> : null}
+    </div>
+  );
+}
