@@ -2,15 +2,15 @@
 import type { Wind, WindProfile } from '../craft/wind.ts';
 
 /** Laws of the surface layer are held below this height over the ground … */
-export const LEAST_PROFILE_HEIGHT_M = 0.5;
+const LEAST_PROFILE_HEIGHT_M = 0.5;
 /** … and above this one, the usual depth of the neutral boundary layer (common practice). */
-export const GREATEST_PROFILE_HEIGHT_M = 600;
+const GREATEST_PROFILE_HEIGHT_M = 600;
 
 /**
  * Factor on the speed at the reference height.
  * Power law: (h/h_ref)^exponent. Log law: ln(h/z₀)/ln(h_ref/z₀), 0 at and below the roughness height z₀.
  */
-export function profileFactor(profile: WindProfile, height_m: number): number {
+function profileFactor(profile: WindProfile, height_m: number): number {
   if (profile === 'uniform') return 1;
   // Written so that a height that is not a number gives the least one.
   const h =
