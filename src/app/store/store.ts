@@ -272,8 +272,8 @@ export class Store {
 
   /** Puts a dot beside a place's word, with the reason; null takes it off. */
   setWaiting(place: PlaceName, what: string | null): void {
-    const { [place]: _old, ...others } = this.waiting.value;
-    this.waiting.value = what === null ? others : { ...others, [place]: what };
+    const others = Object.entries(this.waiting.value).filter(([name]) => name !== place);
+    this.waiting.value = Object.fromEntries(what === null ? others : [...others, [place, what]]);
   }
 
   /** Crafts as another window or an archive left them; not an edit of this window. */
