@@ -7,5 +7,9 @@ ensurePackages();
 const chromium = ensureChromium();
 const env = { ...process.env, ...(chromium === null ? {} : { CHROMIUM_PATH: chromium }) };
 const vitest = path.join(root, 'node_modules', 'vitest', 'vitest.mjs');
-const done = spawnSync(process.execPath, [vitest, 'run', ...process.argv.slice(2)], { cwd: root, stdio: 'inherit', env });
+const done = spawnSync(process.execPath, [vitest, 'run', ...process.argv.slice(2)], {
+  cwd: root,
+  stdio: 'inherit',
+  env,
+});
 process.exit(done.status ?? 1);

@@ -109,7 +109,9 @@ function warning(): string {
 
 /** Corners by place on a plan, with the sense of turning; no numbers. */
 function cornerPlan(build: Build): string {
-  const reach = Math.max(...build.rotors.map((rotor) => Math.max(Math.abs(rotor.position_m[0]), Math.abs(rotor.position_m[1]))));
+  const reach = Math.max(
+    ...build.rotors.map((rotor) => Math.max(Math.abs(rotor.position_m[0]), Math.abs(rotor.position_m[1]))),
+  );
   const scale = 52 / reach;
   const at = (x: number, y: number) => [95 + y * scale, 85 - x * scale];
   const radius = Math.min(26, (build.propeller.diameter_m / 2) * scale);
@@ -132,7 +134,10 @@ function gainTable(gains: Gains): string {
     ['axis', 'P µs per deg/s', 'I µs per deg', 'D µs per deg/s²', 'feed-forward'],
     AXES.map((axis) => {
       const one = gains.axes[axis];
-      return [axis, ...[one.p_us_per_dps, one.i_us_per_deg, one.d_us_per_dps2, one.feedforward_us_per_dps].map(number)];
+      return [
+        axis,
+        ...[one.p_us_per_dps, one.i_us_per_deg, one.d_us_per_dps2, one.feedforward_us_per_dps].map(number),
+      ];
     }),
   );
 }
@@ -151,12 +156,25 @@ function filters(gains: Gains): string {
 function margins(rows: readonly SheetMargins[]): string {
   if (rows.length === 0) return '<p>Not computed.</p>';
   return table(
-    ['axis', 'gain margin dB', 'phase margin deg', 'delay margin ms', 'crossover Hz', 'Ms', 'noise at motors µs rms'],
+    [
+      'axis',
+      'gain margin dB',
+      'phase margin deg',
+      'delay margin ms',
+      'crossover Hz',
+      'Ms',
+      'noise at motors µs rms',
+    ],
     rows.map((row) => [
       row.axis,
-      ...[row.gainMargin_dB, row.phaseMargin_deg, row.delayMargin_ms, row.crossover_Hz, row.maxSensitivity, row.noiseAtMotor_us_rms].map(
-        (value) => (value === null ? '—' : number(value)),
-      ),
+      ...[
+        row.gainMargin_dB,
+        row.phaseMargin_deg,
+        row.delayMargin_ms,
+        row.crossover_Hz,
+        row.maxSensitivity,
+        row.noiseAtMotor_us_rms,
+      ].map((value) => (value === null ? '—' : number(value))),
     ]),
   );
 }
@@ -170,12 +188,18 @@ function scores(rows: readonly SheetScore[]): string {
 }
 
 function signatures(): string {
-  const places = ['Built and measured by', 'Gains checked by', 'Pilot in charge', 'Date and place of the first flight'];
+  const places = [
+    'Built and measured by',
+    'Gains checked by',
+    'Pilot in charge',
+    'Date and place of the first flight',
+  ];
   return `<section class="sign">${places.map((place) => `<p><span></span>${place}</p>`).join('')}</section>`;
 }
 
 function table(heads: readonly string[], rows: readonly (readonly string[])[]): string {
-  const cells = (tag: string, row: readonly string[]) => row.map((cell) => `<${tag}>${escapeHtml(cell)}</${tag}>`).join('');
+  const cells = (tag: string, row: readonly string[]) =>
+    row.map((cell) => `<${tag}>${escapeHtml(cell)}</${tag}>`).join('');
   return `<table><thead><tr>${cells('th', heads)}</tr></thead><tbody>${rows.map((row) => `<tr>${cells('td', row)}</tr>`).join('')}</tbody></table>`;
 }
 

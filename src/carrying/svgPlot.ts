@@ -34,7 +34,9 @@ export function linePlot(frame: PlotFrame, lines: readonly PlotLine[]): string {
   if (usable.length === 0) return `<p class="empty">${escapeHtml(frame.title)}: nothing to draw.</p>`;
   const points = usable.map((line) => finitePoints(line, frame.logX === true));
   const xs = points.flatMap((line) => line.map(([x]) => x));
-  const ys = points.flatMap((line) => line.map(([, y]) => y)).concat((frame.levels ?? []).map((level) => level.y));
+  const ys = points
+    .flatMap((line) => line.map(([, y]) => y))
+    .concat((frame.levels ?? []).map((level) => level.y));
   const [x0, x1] = spread(Math.min(...xs), Math.max(...xs), 0);
   const [y0, y1] = spread(Math.min(...ys), Math.max(...ys), 0.06);
   const toX = (x: number) => LEFT + ((x - x0) / (x1 - x0)) * (WIDTH - LEFT - RIGHT);
@@ -45,27 +47,45 @@ export function linePlot(frame: PlotFrame, lines: readonly PlotLine[]): string {
     `<rect x="${LEFT}" y="${TOP}" width="${WIDTH - LEFT - RIGHT}" height="${HEIGHT - TOP - BOTTOM}" class="f"/>`,
   ];
   for (const tick of ticks(y0, y1)) {
-    parts.push(`<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(tick))}" y2="${f(toY(tick))}" class="g"/>`);
-    parts.push(`<text x="${LEFT - 4}" y="${f(toY(tick) + 3)}" class="n" text-anchor="end">${short(tick)}</text>`);
+    parts.push(
+      `<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(tick))}" y2="${f(toY(tick))}" class="g"/>`,
+    );
+    parts.push(
+      `<text x="${LEFT - 4}" y="${f(toY(tick) + 3)}" class="n" text-anchor="end">${short(tick)}</text>`,
+    );
   }
   for (const tick of frame.logX === true ? decades(x0, x1) : ticks(x0, x1)) {
     const label = frame.logX === true ? short(10 ** tick) : short(tick);
-    parts.push(`<line y1="${TOP}" y2="${HEIGHT - BOTTOM}" x1="${f(toX(tick))}" x2="${f(toX(tick))}" class="g"/>`);
-    parts.push(`<text x="${f(toX(tick))}" y="${HEIGHT - BOTTOM + 11}" class="n" text-anchor="middle">${label}</text>`);
+    parts.push(
+      `<line y1="${TOP}" y2="${HEIGHT - BOTTOM}" x1="${f(toX(tick))}" x2="${f(toX(tick))}" class="g"/>`,
+    );
+    parts.push(
+      `<text x="${f(toX(tick))}" y="${HEIGHT - BOTTOM + 11}" class="n" text-anchor="middle">${label}</text>`,
+    );
   }
   for (const level of frame.levels ?? []) {
-    parts.push(`<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(level.y))}" y2="${f(toY(level.y))}" class="l"/>`);
-    parts.push(`<text x="${WIDTH - RIGHT - 2}" y="${f(toY(level.y) - 2)}" class="n" text-anchor="end">${escapeHtml(level.label)}</text>`);
+    parts.push(
+      `<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(level.y))}" y2="${f(toY(level.y))}" class="l"/>`,
+    );
+    parts.push(
+      `<text x="${WIDTH - RIGHT - 2}" y="${f(toY(level.y) - 2)}" class="n" text-anchor="end">${escapeHtml(level.label)}</text>`,
+    );
   }
   points.forEach((line, index) => {
     const path = line.map(([x, y], i) => `${i === 0 ? 'M' : 'L'}${f(toX(x))} ${f(toY(y))}`).join('');
     parts.push(`<path d="${path}" class="s" stroke-dasharray="${usable[index].dash}"/>`);
     const lx = LEFT + 8 + index * 88;
-    parts.push(`<line x1="${lx}" x2="${lx + 24}" y1="${HEIGHT - 6}" y2="${HEIGHT - 6}" class="s" stroke-dasharray="${usable[index].dash}"/>`);
+    parts.push(
+      `<line x1="${lx}" x2="${lx + 24}" y1="${HEIGHT - 6}" y2="${HEIGHT - 6}" class="s" stroke-dasharray="${usable[index].dash}"/>`,
+    );
     parts.push(`<text x="${lx + 28}" y="${HEIGHT - 3}" class="n">${escapeHtml(usable[index].label)}</text>`);
   });
-  parts.push(`<text x="${WIDTH - RIGHT}" y="${HEIGHT - 3}" class="n" text-anchor="end">${escapeHtml(frame.xLabel)}</text>`);
-  parts.push(`<text x="${WIDTH - RIGHT}" y="13" class="n" text-anchor="end">${escapeHtml(frame.yLabel)}</text>`);
+  parts.push(
+    `<text x="${WIDTH - RIGHT}" y="${HEIGHT - 3}" class="n" text-anchor="end">${escapeHtml(frame.xLabel)}</text>`,
+  );
+  parts.push(
+    `<text x="${WIDTH - RIGHT}" y="13" class="n" text-anchor="end">${escapeHtml(frame.yLabel)}</text>`,
+  );
   parts.push('</svg>');
   return parts.join('');
 }

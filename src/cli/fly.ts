@@ -11,7 +11,18 @@ import { runFlight } from '../flight/run.ts';
 import { RECORD_SIGNALS } from '../flight/signals.ts';
 import { DEG_PER_RAD } from '../math/angles.ts';
 import { eulerFromQuaternion } from '../math/quaternion.ts';
-import { DONE, numberOption, printJson, readBuild, readGains, readScene, readText, readWind, runVerb, writeText } from './io.ts';
+import {
+  DONE,
+  numberOption,
+  printJson,
+  readBuild,
+  readGains,
+  readScene,
+  readText,
+  readWind,
+  runVerb,
+  writeText,
+} from './io.ts';
 
 interface FlyOptions {
   build: string;
@@ -32,7 +43,15 @@ const HOVER_HEIGHT_M = 5;
 const FREE_HEIGHT_M = 50;
 const LARGEST_STICKS_BYTES = 50_000_000;
 /** Signals kept besides the record's own, for the summary. */
-const SUMMARY_SIGNALS = ['u_roll_us', 'u_pitch_us', 'u_yaw_us', 'heat_FL_W', 'heat_FR_W', 'heat_RL_W', 'heat_RR_W'];
+const SUMMARY_SIGNALS = [
+  'u_roll_us',
+  'u_pitch_us',
+  'u_yaw_us',
+  'heat_FL_W',
+  'heat_FR_W',
+  'heat_RL_W',
+  'heat_RR_W',
+];
 
 export function addFlyCommand(program: Command): void {
   program
@@ -59,7 +78,8 @@ function fly(options: FlyOptions): number {
   const build = readBuild(options.build);
   const gains = readGains(options.gains);
   const scene = options.scene === undefined ? OPEN_FIELD : readScene(options.scene);
-  const wind = options.wind === undefined ? (options.scene === undefined ? CALM : scene.wind) : readWind(options.wind);
+  const wind =
+    options.wind === undefined ? (options.scene === undefined ? CALM : scene.wind) : readWind(options.wind);
   const track =
     options.sticks === undefined
       ? null
@@ -93,7 +113,8 @@ function tryFly(
   try {
     return runFlight(setup, duration_s, sticksAt, [...RECORD_SIGNALS, ...SUMMARY_SIGNALS]);
   } catch (error) {
-    if (error instanceof RangeError) throw refuse(options.build, 'propeller', error.message, 'a craft that can hover at this site');
+    if (error instanceof RangeError)
+      throw refuse(options.build, 'propeller', error.message, 'a craft that can hover at this site');
     throw error;
   }
 }
@@ -137,7 +158,14 @@ interface Summary {
   axisCommandRms_us: Record<'roll' | 'pitch' | 'yaw', number>;
   meanWindingHeat_W: number;
   endBattery_V: number;
-  final: { north_m: number; east_m: number; down_m: number; roll_deg: number; pitch_deg: number; yaw_deg: number };
+  final: {
+    north_m: number;
+    east_m: number;
+    down_m: number;
+    roll_deg: number;
+    pitch_deg: number;
+    yaw_deg: number;
+  };
 }
 
 function summarise(record: Recorder, flight: Flight): Summary {
@@ -162,7 +190,9 @@ function summarise(record: Recorder, flight: Flight): Summary {
   });
   const last = record.length - 1;
   const [roll, pitch, yaw] = eulerFromQuaternion(qw[last], qx[last], qy[last], qz[last]);
-  const heat = SUMMARY_SIGNALS.slice(3).map((name) => column(name).reduce((sum, value) => sum + value, 0) / record.length);
+  const heat = SUMMARY_SIGNALS.slice(3).map(
+    (name) => column(name).reduce((sum, value) => sum + value, 0) / record.length,
+  );
   return {
     duration_s: record.length * flight.tick_s,
     ticks: record.length,
@@ -194,7 +224,9 @@ function describe(summary: Summary, out: string | undefined): void {
     `axis command rms roll ${summary.axisCommandRms_us.roll.toFixed(2)}, pitch ${summary.axisCommandRms_us.pitch.toFixed(2)}, yaw ${summary.axisCommandRms_us.yaw.toFixed(2)} µs`,
     `winding heat     ${summary.meanWindingHeat_W.toFixed(2)} W a motor`,
     `battery at end   ${summary.endBattery_V.toFixed(2)} V`,
-    ...(summary.stopped === null ? [] : [`STOPPED at tick ${summary.stopped.tick}: ${summary.stopped.reason}, ${summary.stopped.what}`]),
+    ...(summary.stopped === null
+      ? []
+      : [`STOPPED at tick ${summary.stopped.tick}: ${summary.stopped.reason}, ${summary.stopped.what}`]),
     ...(out === undefined ? [] : [`record           ${out}`]),
     'A simulated flight is no clearance to fly.',
   ];

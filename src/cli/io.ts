@@ -58,7 +58,12 @@ export function numberOption(
   const value = text.trim() === '' ? NaN : Number(text);
   if (!Number.isFinite(value) || value < min || value > max || (whole && !Number.isInteger(value))) {
     const kind = whole ? 'a whole number' : 'a number';
-    throw refuse('command line', `--${name}`, text, `${kind} from ${min} to ${max}${unit === '' ? '' : ` ${unit}`}`);
+    throw refuse(
+      'command line',
+      `--${name}`,
+      text,
+      `${kind} from ${min} to ${max}${unit === '' ? '' : ` ${unit}`}`,
+    );
   }
   return value;
 }

@@ -24,7 +24,9 @@ export async function bundle(entries) {
     write: false,
     logLevel: 'silent',
     external: ['mujoco-js'],
-    banner: { js: "import { createRequire as makeRequire } from 'node:module'; const require = makeRequire(import.meta.url);" },
+    banner: {
+      js: "import { createRequire as makeRequire } from 'node:module'; const require = makeRequire(import.meta.url);",
+    },
   });
   const hash = createHash('sha256');
   for (const file of result.outputFiles) hash.update(file.contents);

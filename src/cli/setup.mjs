@@ -12,7 +12,9 @@ export const root = path.resolve(path.dirname(fileURLToPath(import.meta.url)), '
 const mark = path.join(root, 'node_modules', '.gustbench-installed');
 
 function lockHash() {
-  return createHash('sha256').update(readFileSync(path.join(root, 'package-lock.json'))).digest('hex');
+  return createHash('sha256')
+    .update(readFileSync(path.join(root, 'package-lock.json')))
+    .digest('hex');
 }
 
 /** Installs the locked packages when they are missing or the lock file changed. */
@@ -22,7 +24,9 @@ export function ensurePackages() {
   process.stderr.write('installing packages (once, about a minute) …\n');
   const done = spawnSync('npm', ['ci', '--no-audit', '--no-fund'], { cwd: root, stdio: ['ignore', 2, 2] });
   if (done.status !== 0) {
-    process.stderr.write('npm ci failed; see the lines above. A network to the package registry is needed once.\n');
+    process.stderr.write(
+      'npm ci failed; see the lines above. A network to the package registry is needed once.\n',
+    );
     process.exit(done.status ?? 1);
   }
   writeFileSync(mark, wanted);
@@ -48,7 +52,10 @@ export function ensureChromium() {
   const canInstall = existsSync('/usr/bin/apt-get') && process.getuid?.() === 0;
   if (canInstall) {
     process.stderr.write('installing Chromium from Debian for the browser tests …\n');
-    const quiet = { stdio: ['ignore', 'ignore', 2], env: { ...process.env, DEBIAN_FRONTEND: 'noninteractive' } };
+    const quiet = {
+      stdio: ['ignore', 'ignore', 2],
+      env: { ...process.env, DEBIAN_FRONTEND: 'noninteractive' },
+    };
     spawnSync('apt-get', ['update', '-qq'], quiet);
     spawnSync('apt-get', ['install', '-y', '-qq', '--no-install-recommends', 'chromium'], quiet);
   }

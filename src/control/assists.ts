@@ -45,7 +45,14 @@ export class HeightHold implements Stateful {
    * @param cosTilt cosine of the craft's tilt
    * @param hoverDuty share that hovers in still air on a full pack
    */
-  duty(stick: number, down_m: number, vd_mps: number, cosTilt: number, hoverDuty: number, dt_s: number): number {
+  duty(
+    stick: number,
+    down_m: number,
+    vd_mps: number,
+    cosTilt: number,
+    hoverDuty: number,
+    dt_s: number,
+  ): number {
     const deflection = 2 * stick - 1;
     let sink_mps: number;
     if (Math.abs(deflection) > HOLD_BAND) {
@@ -124,7 +131,10 @@ export class Mooring implements Stateful {
     const right = -s * an + c * ae;
     this.pitch_deg = limit(-Math.atan(forward / GRAVITY_MPS2) * DEG_PER_RAD, maxAngle_deg);
     this.roll_deg = limit(Math.atan(right / GRAVITY_MPS2) * DEG_PER_RAD, maxAngle_deg);
-    const turn = Math.atan2(Math.sin(this.heading_rad - heading_rad), Math.cos(this.heading_rad - heading_rad));
+    const turn = Math.atan2(
+      Math.sin(this.heading_rad - heading_rad),
+      Math.cos(this.heading_rad - heading_rad),
+    );
     this.yawRate_dps = limit(1.2 * turn * DEG_PER_RAD, 45);
   }
 

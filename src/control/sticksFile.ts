@@ -37,7 +37,8 @@ export function parseSticks(text: string, file = 'sticks'): StickTrack {
     comments: '#',
     skipEmptyLines: 'greedy',
   });
-  if (data.length === 0) throw refuse(file, '', 'nothing', `a head line ${COLUMNS.map(([name]) => name).join(', ')} and rows`);
+  if (data.length === 0)
+    throw refuse(file, '', 'nothing', `a head line ${COLUMNS.map(([name]) => name).join(', ')} and rows`);
   const heads = data[0].map((head) => head.trim());
   const places = COLUMNS.map(([name]) => {
     const place = heads.indexOf(name);
@@ -54,12 +55,22 @@ export function parseSticks(text: string, file = 'sticks'): StickTrack {
       const cell = (row[places[c]] ?? '').trim();
       const value = cell === '' ? NaN : Number(cell);
       if (!Number.isFinite(value) || value < min || value > max) {
-        throw refuse(file, `row ${index + 1}, ${name}`, cell === '' ? undefined : cell, `a number from ${min} to ${max}`);
+        throw refuse(
+          file,
+          `row ${index + 1}, ${name}`,
+          cell === '' ? undefined : cell,
+          `a number from ${min} to ${max}`,
+        );
       }
       tracks[c][index] = value;
     });
     if (index > 0 && tracks[0][index] <= tracks[0][index - 1]) {
-      throw refuse(file, `row ${index + 1}, t_s`, tracks[0][index], `a time after the row before, ${tracks[0][index - 1]} s`);
+      throw refuse(
+        file,
+        `row ${index + 1}, t_s`,
+        tracks[0][index],
+        `a time after the row before, ${tracks[0][index - 1]} s`,
+      );
     }
   });
   const [t_s, roll, pitch, yaw, throttle] = tracks;

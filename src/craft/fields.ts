@@ -65,7 +65,9 @@ function problemsOf(issues: readonly z.core.$ZodIssue[], raw: unknown): Problem[
         allowed: 'no field of this name',
       }));
     }
-    return [{ path: joinPath(issue.path), value: showValue(valueAt(raw, issue.path)), allowed: issue.message }];
+    return [
+      { path: joinPath(issue.path), value: showValue(valueAt(raw, issue.path)), allowed: issue.message },
+    ];
   });
 }
 

@@ -44,7 +44,10 @@ export const gainsSchema = z.strictObject(
     derivativeLowPassKind: choice(['first-order', 'biquad']).optional(),
     gyroLowPass_Hz: quantity(0, 20_000, 'Hz (0 = none)').default(0),
     gyroLowPassKind: choice(['first-order', 'biquad']).optional(),
-    notches: z.array(notch, { error: 'a list of notches' }).max(8, { error: 'at most 8 notches' }).default([]),
+    notches: z
+      .array(notch, { error: 'a list of notches' })
+      .max(8, { error: 'at most 8 notches' })
+      .default([]),
     integralLimit_us: quantity(0, 2000, 'µs').default(150),
     outputLimit_us: quantity(0, 2000, 'µs').default(400),
     antiWindup: choice(['clamping', 'back-calculation', 'none']).optional(),
@@ -88,7 +91,13 @@ export function parseGains(raw: unknown, file = 'gains'): Gains {
       );
     }
   });
-  refuseBiquadAboveNyquist(file, 'derivativeLowPass_Hz', gains.derivativeLowPass_Hz, gains.derivativeLowPassKind, nyquist_Hz);
+  refuseBiquadAboveNyquist(
+    file,
+    'derivativeLowPass_Hz',
+    gains.derivativeLowPass_Hz,
+    gains.derivativeLowPassKind,
+    nyquist_Hz,
+  );
   refuseBiquadAboveNyquist(file, 'gyroLowPass_Hz', gains.gyroLowPass_Hz, gains.gyroLowPassKind, nyquist_Hz);
   return gains;
 }
@@ -101,6 +110,11 @@ function refuseBiquadAboveNyquist(
   nyquist_Hz: number,
 ): void {
   if (kind === 'biquad' && cutoff_Hz >= nyquist_Hz) {
-    throw refuse(file, path, cutoff_Hz, `below half the loop rate, ${nyquist_Hz} Hz, for a biquad (0 = none)`);
+    throw refuse(
+      file,
+      path,
+      cutoff_Hz,
+      `below half the loop rate, ${nyquist_Hz} Hz, for a biquad (0 = none)`,
+    );
   }
 }

@@ -18,7 +18,14 @@ export function withoutPayload(build: Build): Build {
   const own = { x: (b * b + c * c) / 12, y: (a * a + c * c) / 12, z: (a * a + b * b) / 12 };
   // About the old centre of mass: whole − payload; then moved to the new centre.
   const load = shifted(
-    { xx: payload.mass_kg * own.x, yy: payload.mass_kg * own.y, zz: payload.mass_kg * own.z, xy: 0, xz: 0, yz: 0 },
+    {
+      xx: payload.mass_kg * own.x,
+      yy: payload.mass_kg * own.y,
+      zz: payload.mass_kg * own.z,
+      xy: 0,
+      xz: 0,
+      yz: 0,
+    },
     payload.mass_kg,
     difference(payload.position_m, airframe.centreOfMass_m),
     1,

@@ -4,7 +4,7 @@
  */
 import { EigenvalueDecomposition, Matrix } from 'ml-matrix';
 import { GRAVITY_MPS2, RPM_PER_RAD_PER_S } from '../math/angles.ts';
-import type { Build } from './build.ts';
+import type { Build } from './buildSchema.ts';
 import { fullCellVoltage_V } from './cell.ts';
 import { InputError, showValue, type Problem } from './problem.ts';
 import { staticCoefficients, staticThrustAtSpeed_N } from './propellerTable.ts';
@@ -158,7 +158,9 @@ function propellerProblems(build: Build): Problem[] {
   });
   advanceTable?.forEach((row, index) => {
     if (index > 0 && row.j <= advanceTable[index - 1].j) {
-      problems.push(problem(`propeller.advanceTable[${index}].j`, row.j, 'rising advance ratios, row by row'));
+      problems.push(
+        problem(`propeller.advanceTable[${index}].j`, row.j, 'rising advance ratios, row by row'),
+      );
     }
   });
   if (advanceTable !== undefined && advanceTable[0].ct <= 0) {
@@ -175,7 +177,9 @@ function escProblems(build: Build): Problem[] {
   if (max_us <= min_us) {
     problems.push(problem('esc.max_us', max_us, `above esc.min_us, ${min_us} µs`));
   } else if (idle_us < min_us || idle_us >= max_us) {
-    problems.push(problem('esc.idle_us', idle_us, `from esc.min_us, ${min_us} µs, to below esc.max_us, ${max_us} µs`));
+    problems.push(
+      problem('esc.idle_us', idle_us, `from esc.min_us, ${min_us} µs, to below esc.max_us, ${max_us} µs`),
+    );
   }
   return problems;
 }

@@ -1,5 +1,5 @@
 /** Static propeller coefficients against speed, as the build file gives them. */
-import type { Build } from './build.ts';
+import type { Build } from './buildSchema.ts';
 
 const SEA_LEVEL_DENSITY = 1.225;
 type Propeller = Build['propeller'];

@@ -24,12 +24,19 @@ const gust = z.strictObject(
 const profile = z.union(
   [
     z.literal('uniform'),
-    z.strictObject({ law: z.literal('power'), exponent: quantity(0, 1, ''), reference_m: positive(1000, 'm') }),
-    z.strictObject({ law: z.literal('log'), roughness_m: positive(5, 'm'), reference_m: positive(1000, 'm') }),
+    z.strictObject({
+      law: z.literal('power'),
+      exponent: quantity(0, 1, ''),
+      reference_m: positive(1000, 'm'),
+    }),
+    z.strictObject({
+      law: z.literal('log'),
+      roughness_m: positive(5, 'm'),
+      reference_m: positive(1000, 'm'),
+    }),
   ],
   {
-    error:
-      '"uniform", {law: "power", exponent, reference_m} or {law: "log", roughness_m, reference_m}',
+    error: '"uniform", {law: "power", exponent, reference_m} or {law: "log", roughness_m, reference_m}',
   },
 );
 

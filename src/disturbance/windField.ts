@@ -16,6 +16,7 @@ import type { Scene } from '../craft/scene.ts';
 import type { Wind } from '../craft/wind.ts';
 import { RAD_PER_DEG } from '../math/angles.ts';
 import type { SnapshotReader, SnapshotWriter, Stateful } from '../math/snapshot.ts';
+import { ATTITUDE, POSITION, VELOCITY } from '../physics/state.ts';
 import {
   GUST_AIRSPEED,
   GUST_DOWN,
@@ -147,30 +148,19 @@ export class WindField implements Stateful {
 
   /**
    * The air for the step that begins at `time_s`, into `sample`.
-   * @param q state that holds the attitude quaternion (w, x, y, z, body to world) at `qOffset`.
+   * @param state flight state: place, velocity and attitude are read from it
    */
-  advance(
-    time_s: number,
-    north_m: number,
-    east_m: number,
-    down_m: number,
-    vn_mps: number,
-    ve_mps: number,
-    vd_mps: number,
-    q: Float64Array,
-    qOffset: number,
-  ): void {
-    // Short, so that it is inlined where it is called: numbers given to a function that is not are allocated.
+  advance(time_s: number, state: Float64Array): void {
     const { place } = this;
-    place[0] = north_m;
-    place[1] = east_m;
-    place[2] = -down_m;
-    place[3] = vn_mps;
-    place[4] = ve_mps;
-    place[5] = vd_mps;
+    place[0] = state[POSITION];
+    place[1] = state[POSITION + 1];
+    place[2] = -state[POSITION + 2];
+    place[3] = state[VELOCITY];
+    place[4] = state[VELOCITY + 1];
+    place[5] = state[VELOCITY + 2];
     this.gusts.air[GUST_TIME] = time_s;
     this.renew();
-    this.turnIntoBody(q, qOffset);
+    this.turnIntoBody(state, ATTITUDE);
   }
 
   private renew(): void {

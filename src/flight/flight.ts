@@ -107,6 +107,7 @@ export class Flight {
   private readonly delayStream: RandomStream;
   private effects: FaultEffects;
   private faultList: readonly Fault[];
+  private vibrationSetting = 1;
   private touching = false;
   private lastSend_s = 0;
   private dropped = false;
@@ -169,15 +170,10 @@ export class Flight {
     if (this.stopped !== null) return;
     const time_s = this.time_s;
     this.sense();
-    const missed = this.effects.missedTickShare > 0 && this.delayStream.uniform() < this.effects.missedTickShare;
+    const missed =
+      this.effects.missedTickShare > 0 && this.delayStream.uniform() < this.effects.missedTickShare;
     if (!missed) {
-      this.pilot.tick(
-        sticks,
-        this.gyro.sample_dps,
-        this.accelerometer.sample_mps2,
-        this.state,
-        this.tick_s,
-      );
+      this.pilot.tick(sticks, this.gyro.sample_dps, this.accelerometer.sample_mps2, this.state, this.tick_s);
       this.send(time_s);
     }
     this.observe(time_s, sticks);
@@ -207,6 +203,7 @@ export class Flight {
 
   /** Gyro noise and vibration over the build's own; 1 = as built. */
   setNoise(noiseScale: number, vibrationScale: number): void {
+    this.vibrationSetting = vibrationScale;
     this.gyro.noiseScale = noiseScale;
     this.accelerometer.noiseScale = noiseScale;
     this.gyro.vibrationScale = vibrationScale * this.effects.vibrationScale;
@@ -273,17 +270,7 @@ export class Flight {
   /** One integration step that begins at `time_s`. */
   private step(time_s: number): void {
     const { state: s, dynamics, windField, step_s } = this;
-    this.windField.advance(
-      time_s,
-      s[POSITION],
-      s[POSITION + 1],
-      s[POSITION + 2],
-      s[VELOCITY],
-      s[VELOCITY + 1],
-      s[VELOCITY + 2],
-      s,
-      ATTITUDE,
-    );
+    windField.advance(time_s, s);
     const air = windField.sample;
     dynamics.windNorth_mps = air.north_mps;
     dynamics.windEast_mps = air.east_mps;
@@ -519,8 +506,8 @@ export class Flight {
       dynamics.torqueShare[i] = effects.torqueShare[i];
       this.gyro.imbalance[i] = effects.imbalance[i];
     }
-    dynamics.missingVoltage_V = effects.deadCells * 4.2;
-    this.gyro.vibrationScale = effects.vibrationScale;
+    dynamics.deadCells = Math.min(effects.deadCells, this.currentCraft.cells);
+    this.gyro.vibrationScale = this.vibrationSetting * effects.vibrationScale;
     this.gyro.mountResonance_Hz = effects.mountResonance_Hz;
     this.gyro.mountDamping = effects.mountDamping;
   }

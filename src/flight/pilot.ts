@@ -86,7 +86,13 @@ export class Pilot implements Stateful {
   }
 
   /** One tick: estimate, setpoints, rate loops, mixer, quantised commands. */
-  tick(sticks: Sticks, gyro_dps: Float64Array, accel_mps2: Float64Array, state: Float64Array, dt_s: number): void {
+  tick(
+    sticks: Sticks,
+    gyro_dps: Float64Array,
+    accel_mps2: Float64Array,
+    state: Float64Array,
+    dt_s: number,
+  ): void {
     this.levelling.estimate(gyro_dps, accel_mps2, dt_s);
     this.switchOver(sticks, gyro_dps, state);
     this.setpoints(sticks, state, dt_s);

@@ -8,7 +8,19 @@
  * Energy never grows through a contact: kinetic energy after the step is bounded by what it was plus the work
  * of the free forces over the step's real displacement; a solver's surplus is taken from the velocities.
  */
-import { Body, Box, ContactMaterial, GSSolver, Material, Plane, Quaternion, SAPBroadphase, Sphere, Vec3, World } from 'cannon-es';
+import {
+  Body,
+  Box,
+  ContactMaterial,
+  GSSolver,
+  Material,
+  Plane,
+  Quaternion,
+  SAPBroadphase,
+  Sphere,
+  Vec3,
+  World,
+} from 'cannon-es';
 import type { Scene, Solid } from '../craft/scene.ts';
 import { GRAVITY_MPS2, RAD_PER_DEG } from '../math/angles.ts';
 import type { SnapshotReader, SnapshotWriter, Stateful } from '../math/snapshot.ts';
@@ -247,7 +259,8 @@ export class ContactWorld implements Stateful {
     if (this.stillSteps < REST_STEPS) return false;
     const aside = Math.hypot(linear[0], linear[1]);
     const speed = Math.hypot(state[VELOCITY], state[VELOCITY + 1], state[VELOCITY + 2]);
-    const holds = linear[2] > PRESSED_MPS2 && aside < this.options.scene.ground.friction * linear[2] && speed < 0.2;
+    const holds =
+      linear[2] > PRESSED_MPS2 && aside < this.options.scene.ground.friction * linear[2] && speed < 0.2;
     if (!holds) this.stillSteps = 0;
     return holds;
   }

@@ -53,11 +53,10 @@ export class FlightDynamics {
   density_kgpm3: number;
   /** Rest voltage of the pack at its charge, V, held over the step. */
   openVoltage_V = 0;
-  /** Faults: voltage that dead cells no longer give. */
-  missingVoltage_V = 0;
+  /** Faults: cells that give no voltage. */
+  deadCells = 0;
   /** Down coordinate of the ground below, m; Infinity switches ground effect off. */
   groundDown_m = 0;
-
 
   /** The rotors, with their faults and the loads of the last call. */
   readonly rotors = new RotorSet();
@@ -80,7 +79,7 @@ export class FlightDynamics {
    */
   prepare(s: Float64Array): void {
     const { craft } = this;
-    this.openVoltage_V = craft.cells * openCircuitVoltage_V(s[CHARGE]) - this.missingVoltage_V;
+    this.openVoltage_V = (craft.cells - this.deadCells) * openCircuitVoltage_V(s[CHARGE]);
     this.rotors.hold(craft.rotor, s);
   }
 
@@ -239,8 +238,7 @@ export class FlightDynamics {
     const motor = craft.motor;
     if (this.stopped[i] !== 0) return -speed / STRUCK_STOP_S;
     if (motor.electric) {
-      const friction =
-        motor.noLoadCurrent_A * Math.max(-1, Math.min(1, speed / FRICTION_KNEE_RADPS));
+      const friction = motor.noLoadCurrent_A * Math.max(-1, Math.min(1, speed / FRICTION_KNEE_RADPS));
       const K = motor.torqueConstant * this.torqueShare[i];
       return (K * (this.motorCurrent_A[i] - friction) - torque) / craft.rotor.inertia_kgm2;
     }

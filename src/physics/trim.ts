@@ -58,7 +58,8 @@ export function findTrim(craft: Craft, point: TrimPoint): Trim {
     dynamics.derivative(state, rate);
     dynamics.derivative(state, rate);
     return Float64Array.from(
-      [0, 1, 2].map((i) => rate[VELOCITY + i])
+      [0, 1, 2]
+        .map((i) => rate[VELOCITY + i])
         .concat([0, 1, 2].map((i) => rate[RATES + i]))
         .concat([0, 1, 2, 3].map((i) => rate[ROTOR_SPEED + i]))
         .concat([0, 1, 2, 3].map((i) => rate[INFLOW + i])),

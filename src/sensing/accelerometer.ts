@@ -24,7 +24,8 @@ export class Accelerometer implements Stateful {
   ) {
     const part = craft.build.accelerometer;
     this.blend = part.bandwidth_Hz === 0 ? 1 : 1 - Math.exp(-2 * Math.PI * part.bandwidth_Hz * step_s);
-    const noiseBandwidth_Hz = part.bandwidth_Hz === 0 ? 1 / (2 * sample_s) : (Math.PI / 2) * part.bandwidth_Hz;
+    const noiseBandwidth_Hz =
+      part.bandwidth_Hz === 0 ? 1 / (2 * sample_s) : (Math.PI / 2) * part.bandwidth_Hz;
     this.sigma_mps2 = part.noise_mps2_per_rtHz * Math.sqrt(noiseBandwidth_Hz);
     this.streams = ['x', 'y', 'z'].map((axis) => new RandomStream(seed, `accelerometer.noise.${axis}`));
   }
@@ -50,7 +51,9 @@ export class Accelerometer implements Stateful {
         this.noiseScale * this.sigma_mps2 * this.streams[axis].gaussian();
       const limited = Math.max(-part.fullScale_mps2, Math.min(part.fullScale_mps2, value));
       this.sample_mps2[axis] =
-        part.resolution_mps2 === 0 ? limited : Math.round(limited / part.resolution_mps2) * part.resolution_mps2;
+        part.resolution_mps2 === 0
+          ? limited
+          : Math.round(limited / part.resolution_mps2) * part.resolution_mps2;
     }
   }
 

@@ -132,7 +132,8 @@ export class Gyro implements Stateful {
     const older = (newer - 1 + size) % size;
     for (let axis = 0; axis < 3; axis++) {
       this.noise_dps[axis] =
-        this.noiseCorrelation * this.noise_dps[axis] + this.noiseStep_dps * this.noiseStreams[axis].gaussian();
+        this.noiseCorrelation * this.noise_dps[axis] +
+        this.noiseStep_dps * this.noiseStreams[axis].gaussian();
       if (this.driftStep_dps > 0) {
         this.drift_dps[axis] += this.driftStep_dps * this.driftStreams[axis].gaussian();
       }
@@ -206,7 +207,8 @@ export class Gyro implements Stateful {
   }
 
   load(from: SnapshotReader): void {
-    for (const part of [this.sample_dps, this.filtered_dps, this.noise_dps, this.drift_dps]) from.takeInto(part);
+    for (const part of [this.sample_dps, this.filtered_dps, this.noise_dps, this.drift_dps])
+      from.takeInto(part);
     from.takeInto(this.history_dps);
     from.takeInto(this.lastRate_dps);
     from.takeInto(this.imbalance);

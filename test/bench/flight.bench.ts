@@ -55,7 +55,13 @@ function inC(): { rate: number; sum: number } | string {
   const { rotor, motor } = craft;
   const numbers = [
     ...[STEPS, STEP_S, craft.mass_kg, ...craft.inertia, ...craft.inertiaInverse, ...craft.dragArea_m2],
-    ...[...craft.rotorPosition_m, ...craft.spin, rotor.radius_m, rotor.perTwiceArea_m2, rotor.tablePerSpeed_s],
+    ...[
+      ...craft.rotorPosition_m,
+      ...craft.spin,
+      rotor.radius_m,
+      rotor.perTwiceArea_m2,
+      rotor.tablePerSpeed_s,
+    ],
     ...[rotor.inflowSlope_m3, rotor.inPlaneDrag, rotor.inflowRelaxation_per_m, rotor.inertia_kgm2],
     ...[...rotor.thrustFactor, ...rotor.torqueFactor, ...rotor.hoverInflowFactor_m],
     ...[motor.torqueConstant, motor.resistance_ohm, motor.noLoadCurrent_A, craft.batteryResistance_ohm],
@@ -108,8 +114,14 @@ const c = inC();
 if (typeof c === 'string') console.log(`the same in C: left out (${c})`);
 else {
   console.log(`the same equations in C -O2:         ${(c.rate / 1e6).toFixed(3)} million RK4 steps/s`);
-  console.log(`  ratio here/C: ${(here.rate / c.rate).toFixed(2)} (wanted 0.5); check sums differ by ${Math.abs(here.sum / c.sum - 1).toExponential(1)}`);
+  console.log(
+    `  ratio here/C: ${(here.rate / c.rate).toFixed(2)} (wanted 0.5); check sums differ by ${Math.abs(here.sum / c.sum - 1).toExponential(1)}`,
+  );
 }
 const m = await inMujoco();
-console.log(`mujoco-js, one free body, first 50k: ${(m.cold / 1e6).toFixed(3)}, warm: ${(m.warm / 1e6).toFixed(3)} million steps/s`);
-console.log(`  ratio here/mujoco-js: ${(here.rate / m.cold).toFixed(1)} first 50k, ${(here.rate / m.warm).toFixed(1)} warm (wanted 15)`);
+console.log(
+  `mujoco-js, one free body, first 50k: ${(m.cold / 1e6).toFixed(3)}, warm: ${(m.warm / 1e6).toFixed(3)} million steps/s`,
+);
+console.log(
+  `  ratio here/mujoco-js: ${(here.rate / m.cold).toFixed(1)} first 50k, ${(here.rate / m.warm).toFixed(1)} warm (wanted 15)`,
+);

@@ -1,6 +1,12 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
-import { biquadLowPass, biquadNotch, FilterChain, firstOrderLowPass, type BiquadCoefficients } from '../../src/control/filters.ts';
+import {
+  biquadLowPass,
+  biquadNotch,
+  FilterChain,
+  firstOrderLowPass,
+  type BiquadCoefficients,
+} from '../../src/control/filters.ts';
 import { Mixer, mixerMatrix } from '../../src/control/mixer.ts';
 import { RatePid } from '../../src/control/ratePid.ts';
 import { compileCraft } from '../../src/craft/compile.ts';
@@ -35,7 +41,11 @@ describe('filters', () => {
   it('settled on a value pass it on unchanged', () => {
     fc.assert(
       fc.property(fc.double({ min: -2000, max: 2000, noNaN: true }), (value) => {
-        const chain = new FilterChain([biquadLowPass(80, 1000), biquadNotch(120, 3, 1000), firstOrderLowPass(50, 1000)]);
+        const chain = new FilterChain([
+          biquadLowPass(80, 1000),
+          biquadNotch(120, 3, 1000),
+          firstOrderLowPass(50, 1000),
+        ]);
         chain.settle(value);
         for (let k = 0; k < 5; k++) expect(chain.next(value)).toBeCloseTo(value, 8);
       }),
@@ -46,7 +56,12 @@ describe('filters', () => {
 function gainsWith(change: object, axis: object): Gains {
   const base = rawDemo('sandpiper.gains.json') as { axes: object };
   const one = { p_us_per_dps: 0, i_us_per_deg: 0, d_us_per_dps2: 0, feedforward_us_per_dps: 0, ...axis };
-  return parseGains({ ...base, derivativeLowPass_Hz: 0, ...change, axes: { roll: one, pitch: one, yaw: one } });
+  return parseGains({
+    ...base,
+    derivativeLowPass_Hz: 0,
+    ...change,
+    axes: { roll: one, pitch: one, yaw: one },
+  });
 }
 
 describe('rate PID in discrete form', () => {
@@ -103,7 +118,12 @@ describe('rate PID in discrete form', () => {
 
 describe('mixer', () => {
   it('of an X layout adds an axis command to one pair and takes it from the other, with the agreed signs', () => {
-    const m = mixerMatrix(compileCraft({ ...demoBuild('sandpiper'), airframe: { ...demoBuild('sandpiper').airframe, centreOfMass_m: [0, 0, 0] } }));
+    const m = mixerMatrix(
+      compileCraft({
+        ...demoBuild('sandpiper'),
+        airframe: { ...demoBuild('sandpiper').airframe, centreOfMass_m: [0, 0, 0] },
+      }),
+    );
     const column = (c: number) => [0, 1, 2, 3].map((i) => Math.round(m[4 * i + c] * 1e9) / 1e9);
     expect(column(0)).toEqual([1, 1, 1, 1]);
     expect(column(1), 'roll: FL and RL up').toEqual([1, -1, 1, -1]);
@@ -125,13 +145,22 @@ describe('mixer', () => {
         const craft = compileCraft({
           ...build,
           airframe: { ...build.airframe, centreOfMass_m: [0, 0, 0] },
-          rotors: build.rotors.map((rotor, i) => ({ ...rotor, position_m: [...positions[i], 0] })) as typeof build.rotors,
+          rotors: build.rotors.map((rotor, i) => ({
+            ...rotor,
+            position_m: [...positions[i], 0],
+          })) as typeof build.rotors,
         });
         const m = mixerMatrix(craft);
         const moment = (column: number) => {
           const t = [0, 1, 2, 3].map((i) => m[4 * i + column]);
-          const sum = (weight: (i: number) => number) => t.reduce((total, value, i) => total + weight(i) * value, 0);
-          return [sum(() => 1), sum((i) => -positions[i][1]), sum((i) => positions[i][0]), sum((i) => -craft.spin[i])];
+          const sum = (weight: (i: number) => number) =>
+            t.reduce((total, value, i) => total + weight(i) * value, 0);
+          return [
+            sum(() => 1),
+            sum((i) => -positions[i][1]),
+            sum((i) => positions[i][0]),
+            sum((i) => -craft.spin[i]),
+          ];
         };
         for (let column = 0; column < 4; column++) {
           const got = moment(column);
@@ -150,21 +179,34 @@ describe('mixer', () => {
     for (const desaturation of ['attitude-first', 'keep-collective'] as const) {
       const mixer = new Mixer(craft, desaturation);
       fc.assert(
-        fc.property(fc.double({ min: 1070, max: 2000, noNaN: true }), axis, axis, axis, (collective, roll, pitch, yaw) => {
-          mixer.mix(collective, roll, pitch, yaw);
-          for (const command of mixer.command_us) {
-            expect(command).toBeGreaterThanOrEqual(craft.escIdle_us - 1e-9);
-            expect(command).toBeLessThanOrEqual(craft.escMax_us + 1e-9);
-          }
-          // What is left of roll is what the report says.
-          const m = mixer.matrix;
-          const applied = mixer.command_us.reduce((sum, command, i) => sum + (Math.sign(m[4 * i + 1]) * command) / 4, 0);
-          const asked = [0, 1, 2, 3].reduce(
-            (sum, i) => sum + (Math.sign(m[4 * i + 1]) * (mixer.attitudeKept * (m[4 * i + 1] * roll + m[4 * i + 2] * pitch))) / 4,
-            0,
-          );
-          if (desaturation === 'attitude-first') expect(applied).toBeCloseTo(asked, 0);
-        }),
+        fc.property(
+          fc.double({ min: 1070, max: 2000, noNaN: true }),
+          axis,
+          axis,
+          axis,
+          (collective, roll, pitch, yaw) => {
+            mixer.mix(collective, roll, pitch, yaw);
+            for (const command of mixer.command_us) {
+              expect(command).toBeGreaterThanOrEqual(craft.escIdle_us - 1e-9);
+              expect(command).toBeLessThanOrEqual(craft.escMax_us + 1e-9);
+            }
+            // What is left of roll is what the report says.
+            const m = mixer.matrix;
+            const applied = mixer.command_us.reduce(
+              (sum, command, i) => sum + (Math.sign(m[4 * i + 1]) * command) / 4,
+              0,
+            );
+            const asked = [0, 1, 2, 3].reduce(
+              (sum, i) =>
+                sum +
+                (Math.sign(m[4 * i + 1]) *
+                  (mixer.attitudeKept * (m[4 * i + 1] * roll + m[4 * i + 2] * pitch))) /
+                  4,
+              0,
+            );
+            if (desaturation === 'attitude-first') expect(applied).toBeCloseTo(asked, 0);
+          },
+        ),
       );
     }
   });

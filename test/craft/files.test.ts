@@ -63,19 +63,40 @@ describe('build file', () => {
   });
 
   it('refuses any junk without another kind of error, and never returns a number that is not finite', () => {
-    const leaf = fc.oneof(fc.constant(NaN), fc.constant(1e308), fc.constant(-Infinity), fc.string(), fc.constant(null), fc.double());
-    const paths = ['airframe.mass_kg', 'airframe.inertia_kgm2.xx', 'rotors', 'propeller.diameter_m', 'motor.kv_rpm_per_V', 'battery.charge', 'gyro.noise_dps_per_rtHz', 'esc.update_Hz', 'airframe'];
+    const leaf = fc.oneof(
+      fc.constant(NaN),
+      fc.constant(1e308),
+      fc.constant(-Infinity),
+      fc.string(),
+      fc.constant(null),
+      fc.double(),
+    );
+    const paths = [
+      'airframe.mass_kg',
+      'airframe.inertia_kgm2.xx',
+      'rotors',
+      'propeller.diameter_m',
+      'motor.kv_rpm_per_V',
+      'battery.charge',
+      'gyro.noise_dps_per_rtHz',
+      'esc.update_Hz',
+      'airframe',
+    ];
     fc.assert(
-      fc.property(fc.constantFrom(...paths), fc.oneof(leaf, fc.array(leaf), fc.dictionary(fc.string(), leaf)), (path, value) => {
-        let build: Build;
-        try {
-          build = parseBuild(changed(raw, path, value));
-        } catch (error) {
-          expect(error).toBeInstanceOf(InputError);
-          return;
-        }
-        expect(JSON.stringify(build)).not.toMatch(/null/);
-      }),
+      fc.property(
+        fc.constantFrom(...paths),
+        fc.oneof(leaf, fc.array(leaf), fc.dictionary(fc.string(), leaf)),
+        (path, value) => {
+          let build: Build;
+          try {
+            build = parseBuild(changed(raw, path, value));
+          } catch (error) {
+            expect(error).toBeInstanceOf(InputError);
+            return;
+          }
+          expect(JSON.stringify(build)).not.toMatch(/null/);
+        },
+      ),
       { numRuns: 400 },
     );
   });
@@ -99,7 +120,10 @@ describe('build file', () => {
     const own = (m2 * (load.size_m[1] ** 2 + load.size_m[2] ** 2)) / 12;
     const xx = bare.airframe.inertia_kgm2.xx + own + reduced * (d[1] ** 2 + d[2] ** 2);
     expect(xx).toBeCloseTo(loaded.airframe.inertia_kgm2.xx, 12);
-    expect(bare.airframe.inertia_kgm2.xz - reduced * d[0] * d[2]).toBeCloseTo(loaded.airframe.inertia_kgm2.xz, 12);
+    expect(bare.airframe.inertia_kgm2.xz - reduced * d[0] * d[2]).toBeCloseTo(
+      loaded.airframe.inertia_kgm2.xz,
+      12,
+    );
     expect(() => parseBuild({ ...bare, format: 'gustbench.build/1' })).not.toThrow();
   });
 });
@@ -108,7 +132,11 @@ describe('gains, wind and scene files', () => {
   const gains = rawDemo('sandpiper.gains.json');
   it.each([
     ['loop_Hz', 20, /loop_Hz: 20; allowed: a number from 50 to 8000 Hz/],
-    ['notches', [{ centre_Hz: 300, q: 3 }], /notches\[0\].centre_Hz: 300; allowed: below half the loop rate, 200 Hz/],
+    [
+      'notches',
+      [{ centre_Hz: 300, q: 3 }],
+      /notches\[0\].centre_Hz: 300; allowed: below half the loop rate, 200 Hz/,
+    ],
     ['axes.roll.p_us_per_dps', '1', /axes.roll.p_us_per_dps: "1"; allowed: a number/],
     ['axes.roll.gain', 1, /axes.roll.gain: 1; allowed: no field of this name/],
     ['derivativeOn', 'rate', /derivativeOn: "rate"; allowed: one of "error", "measurement"/],
@@ -118,7 +146,9 @@ describe('gains, wind and scene files', () => {
 
   it('wind: a gust has either a length or a rise, not both and not neither', () => {
     const wind = { format: 'gustbench.wind/1', gusts: [{ start_s: 1, peak_mps: 5, from_deg: 0 }] };
-    expect(problemOf(() => parseWind(wind)).message).toMatch(/gusts\[0\]: .*exactly one of length_m and rise_s/);
+    expect(problemOf(() => parseWind(wind)).message).toMatch(
+      /gusts\[0\]: .*exactly one of length_m and rise_s/,
+    );
   });
 
   it('scene: a wrong wind inside is named with its path', () => {
@@ -132,12 +162,18 @@ describe('gains, wind and scene files', () => {
       pilot_m: [0, 0, 0],
       wind: { format: 'gustbench.wind/1', mean_mps: 900 },
     };
-    expect(problemOf(() => parseScene(scene)).message).toMatch(/wind.mean_mps: 900; allowed: a number from 0 to 60 m\/s/);
+    expect(problemOf(() => parseScene(scene)).message).toMatch(
+      /wind.mean_mps: 900; allowed: a number from 0 to 60 m\/s/,
+    );
   });
 
   it('JSON that is cut off, too long or not JSON is said so', () => {
-    expect(problemOf(() => parseJson('{"a": 1', 'f')).message).toMatch(/f: content: .*; allowed: a complete JSON object/);
-    expect(problemOf(() => parseJson(`"${'x'.repeat(5_000_000)}"`, 'f')).message).toMatch(/at most 4000000 characters/);
+    expect(problemOf(() => parseJson('{"a": 1', 'f')).message).toMatch(
+      /f: content: .*; allowed: a complete JSON object/,
+    );
+    expect(problemOf(() => parseJson(`"${'x'.repeat(5_000_000)}"`, 'f')).message).toMatch(
+      /at most 4000000 characters/,
+    );
     expect(() => parseWith(quantity(0, 1, 'm'), 2, 'f')).toThrow(InputError);
   });
 

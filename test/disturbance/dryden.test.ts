@@ -217,10 +217,10 @@ function fly(
   });
   const record = {} as Record<Component, Float64Array>;
   for (const component of COMPONENTS) record[component] = new Float64Array(steps);
-  const level = new Float64Array([1, 0, 0, 0]);
+  const state = new Float64Array([0, 0, -height_m, airspeed_mps, 0, 0, 1, 0, 0, 0]);
   const { sample } = field;
   for (let i = 0; i < steps; i++) {
-    field.advance(i * step_s, 0, 0, -height_m, airspeed_mps, 0, 0, level, 0);
+    field.advance(i * step_s, state);
     record.u[i] = sample.north_mps;
     record.v[i] = sample.east_mps;
     record.w[i] = sample.down_mps;

@@ -37,8 +37,9 @@ interface Place {
 /** Steps `field` from `from_s` for `steps` and returns copies of the samples. */
 function run(field: WindField, steps: number, place: Place = {}, from_s = 0, step_s = STEP_S): WindSample[] {
   const { north = 0, east = 0, height = 10, velocity = [0, 0, 0], q = LEVEL } = place;
+  const state = new Float64Array([north, east, -height, ...velocity, ...q]);
   return Array.from({ length: steps }, (_, i) => {
-    field.advance(from_s + i * step_s, north, east, -height, velocity[0], velocity[1], velocity[2], q, 0);
+    field.advance(from_s + i * step_s, state);
     return { ...field.sample };
   });
 }

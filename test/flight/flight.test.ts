@@ -31,15 +31,18 @@ function setup(name: 'sandpiper' | 'wren', change: Partial<FlightSetup> = {}): F
 }
 
 describe('the demo builds with their gains', () => {
-  it.each(['sandpiper', 'wren'] as const)('%s hovers: tilt below 1.5°, drift below 0.2 m in calm air', (name) => {
-    const { record, stopped, flight } = runFlight(setup(name), 15, () => MOORED);
-    expect(stopped).toBeNull();
-    const [qx, qy] = [record.column('qx'), record.column('qy')];
-    const tilt = Math.max(...qx.map((x, k) => 2 * Math.asin(Math.hypot(x, qy[k]))));
-    expect(tilt * 57.3).toBeLessThan(1.5);
-    expect(Math.hypot(flight.state[0], flight.state[1])).toBeLessThan(0.2);
-    expect(Math.abs(flight.state[2] + 5)).toBeLessThan(0.1);
-  });
+  it.each(['sandpiper', 'wren'] as const)(
+    '%s hovers: tilt below 1.5°, drift below 0.2 m in calm air',
+    (name) => {
+      const { record, stopped, flight } = runFlight(setup(name), 15, () => MOORED);
+      expect(stopped).toBeNull();
+      const [qx, qy] = [record.column('qx'), record.column('qy')];
+      const tilt = Math.max(...qx.map((x, k) => 2 * Math.asin(Math.hypot(x, qy[k]))));
+      expect(tilt * 57.3).toBeLessThan(1.5);
+      expect(Math.hypot(flight.state[0], flight.state[1])).toBeLessThan(0.2);
+      expect(Math.abs(flight.state[2] + 5)).toBeLessThan(0.1);
+    },
+  );
 
   it.each(['sandpiper', 'wren'] as const)('%s stays upright in 7 m/s with gusts and turbulence', (name) => {
     const { record, stopped } = runFlight(setup(name, { wind: GUSTY }), 15, () => MOORED);
@@ -48,24 +51,27 @@ describe('the demo builds with their gains', () => {
     expect(Math.max(...qx.map((x, k) => 2 * Math.asin(Math.hypot(x, qy[k])))) * 57.3).toBeLessThan(35);
   });
 
-  it.each(['sandpiper', 'wren'] as const)('%s follows a rate step: within 10 %% of it after 0.4 s, overshoot below 30 %%', (name) => {
-    const sticks = { ...NEUTRAL_STICKS, armed: true, throttle: 0.5 };
-    const { record } = runFlight(
-      setup(name, { start: { kind: 'free-air', height_m: 50 } }),
-      0.6,
-      (t, flight) => {
-        const { escIdle_us, escMax_us } = flight.craft;
-        sticks.throttle = (flight.trim.command_us[0] - escIdle_us) / (escMax_us - escIdle_us);
-        sticks.roll = t > 0.1 ? 0.25 : 0;
-        return sticks;
-      },
-    );
-    const wanted = 0.25 * demoGains(name).maxRate_dps.roll;
-    const rate = record.column('rate_roll_dps');
-    const at = (t: number) => rate[Math.round(t * demoGains(name).loop_Hz)];
-    expect(Math.abs(at(0.5) / wanted - 1)).toBeLessThan(0.1);
-    expect(Math.max(...rate) / wanted).toBeLessThan(1.3);
-  });
+  it.each(['sandpiper', 'wren'] as const)(
+    '%s follows a rate step: within 10 %% of it after 0.4 s, overshoot below 30 %%',
+    (name) => {
+      const sticks = { ...NEUTRAL_STICKS, armed: true, throttle: 0.5 };
+      const { record } = runFlight(
+        setup(name, { start: { kind: 'free-air', height_m: 50 } }),
+        0.6,
+        (t, flight) => {
+          const { escIdle_us, escMax_us } = flight.craft;
+          sticks.throttle = (flight.trim.command_us[0] - escIdle_us) / (escMax_us - escIdle_us);
+          sticks.roll = t > 0.1 ? 0.25 : 0;
+          return sticks;
+        },
+      );
+      const wanted = 0.25 * demoGains(name).maxRate_dps.roll;
+      const rate = record.column('rate_roll_dps');
+      const at = (t: number) => rate[Math.round(t * demoGains(name).loop_Hz)];
+      expect(Math.abs(at(0.5) / wanted - 1)).toBeLessThan(0.1);
+      expect(Math.max(...rate) / wanted).toBeLessThan(1.3);
+    },
+  );
 });
 
 describe('the tick', () => {
@@ -180,9 +186,22 @@ describe('record', () => {
   it('has the agreed columns first and in order', () => {
     expect(RECORD_SIGNALS.slice(0, 11)).toEqual([
       ...['t_s', 'sp_roll_dps', 'sp_pitch_dps', 'sp_yaw_dps', 'throttle'],
-      ...['rate_roll_dps', 'rate_pitch_dps', 'rate_yaw_dps', 'gyro_roll_dps', 'gyro_pitch_dps', 'gyro_yaw_dps'],
+      ...[
+        'rate_roll_dps',
+        'rate_pitch_dps',
+        'rate_yaw_dps',
+        'gyro_roll_dps',
+        'gyro_pitch_dps',
+        'gyro_yaw_dps',
+      ],
     ]);
-    expect(RECORD_SIGNALS.slice(-5)).toEqual(['wind_n_mps', 'wind_e_mps', 'wind_d_mps', 'battery_V', 'current_A']);
+    expect(RECORD_SIGNALS.slice(-5)).toEqual([
+      'wind_n_mps',
+      'wind_e_mps',
+      'wind_d_mps',
+      'battery_V',
+      'current_A',
+    ]);
     expect(new Set(SIGNAL_NAMES).size).toBe(SIGNAL_NAMES.length);
   });
 });

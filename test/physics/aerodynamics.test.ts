@@ -6,8 +6,24 @@ import { GRAVITY_MPS2 } from '../../src/math/angles.ts';
 import { RungeKutta4 } from '../../src/math/integration.ts';
 import { densityAltitude_m, siteAir, standardAir } from '../../src/physics/atmosphere.ts';
 import { FlightDynamics } from '../../src/physics/dynamics.ts';
-import { axialInflowRatio, FLOW_DENSITY, FLOW_DOWN_Z, FLOW_HEIGHT, FLOW_W, groundEffect, RotorSet } from '../../src/physics/rotor.ts';
-import { ATTITUDE, CHARGE, INFLOW, POSITION, ROTOR_SPEED, STATE_SIZE, VELOCITY } from '../../src/physics/state.ts';
+import {
+  axialInflowRatio,
+  FLOW_DENSITY,
+  FLOW_DOWN_Z,
+  FLOW_HEIGHT,
+  FLOW_W,
+  groundEffect,
+  RotorSet,
+} from '../../src/physics/rotor.ts';
+import {
+  ATTITUDE,
+  CHARGE,
+  INFLOW,
+  POSITION,
+  ROTOR_SPEED,
+  STATE_SIZE,
+  VELOCITY,
+} from '../../src/physics/state.ts';
 import { findTrim, HOVER } from '../../src/physics/trim.ts';
 import { demoBuild, rawDemo, withAirframe } from './builds.ts';
 
@@ -38,8 +54,7 @@ describe('standard atmosphere (ISO 2533:1975)', () => {
 });
 
 describe('body drag', () => {
-  const craftWith = (area: [number, number, number]) =>
-    compileCraft(withAirframe({ dragArea_m2: area }));
+  const craftWith = (area: [number, number, number]) => compileCraft(withAirframe({ dragArea_m2: area }));
 
   it('lets a falling craft approach terminal speed as tanh, closed form within 1e-6', () => {
     // Propellers held still (they would windmill), level, falling along body z: v = v_t tanh(g t/v_t), h = v_t²/g ln cosh(g t/v_t).
@@ -138,7 +153,12 @@ describe('rotor', () => {
     const uiuc = compileCraft(
       parseBuild({
         ...(rawDemo('sandpiper.build.json') as object),
-        propeller: { diameter_m: 0.254, thrustCoefficient: 0.1299, powerCoefficient: 0.0531, inertia_kgm2: 4e-5 },
+        propeller: {
+          diameter_m: 0.254,
+          thrustCoefficient: 0.1299,
+          powerCoefficient: 0.0531,
+          inertia_kgm2: 4e-5,
+        },
       }),
     );
     const n = 6512 / 60;
@@ -169,7 +189,13 @@ describe('rotor', () => {
     const tabled = compileCraft(
       parseBuild({
         ...(rawDemo('sandpiper.build.json') as object),
-        propeller: { diameter_m: 0.254, thrustCoefficient: 0.12, powerCoefficient: 0.05, inertia_kgm2: 4e-5, advanceTable: table },
+        propeller: {
+          diameter_m: 0.254,
+          thrustCoefficient: 0.12,
+          powerCoefficient: 0.05,
+          inertia_kgm2: 4e-5,
+          advanceTable: table,
+        },
       }),
     );
     const n = 80;
@@ -185,7 +211,10 @@ describe('rotor', () => {
       rotors.hold(tabled.rotor, s);
       rotors.loads(tabled.rotor, tabled.rotorPosition_m, tabled.spin, s);
       expect(rotors.thrust_N[0] / (row.ct * SEA_LEVEL * n * n * 0.254 ** 4)).toBeCloseTo(1, 6);
-      expect((rotors.torque_Nm[0] * 2 * Math.PI) / (row.cp * SEA_LEVEL * n * n * 0.254 ** 5)).toBeCloseTo(1, 6);
+      expect((rotors.torque_Nm[0] * 2 * Math.PI) / (row.cp * SEA_LEVEL * n * n * 0.254 ** 5)).toBeCloseTo(
+        1,
+        6,
+      );
     }
   });
 
@@ -195,11 +224,14 @@ describe('rotor', () => {
     [1.5, 1.02857],
     [2, 1.01587],
     [3, 1.00699],
-  ])('gains T/T∞ near the ground at z/R = %d as Cheeseman & Bennett (1955), bounded below half a radius', (z, ratio) => {
-    expect(groundEffect(0.127, z * 0.127)).toBeCloseTo(ratio, 5);
-    expect(Math.abs(groundEffect(0.127, z * 0.127) * (1 - (1 / (4 * z)) ** 2) - 1)).toBeLessThan(1e-12);
-    expect(groundEffect(0.127, 0.01)).toBeCloseTo(4 / 3, 12);
-  });
+  ])(
+    'gains T/T∞ near the ground at z/R = %d as Cheeseman & Bennett (1955), bounded below half a radius',
+    (z, ratio) => {
+      expect(groundEffect(0.127, z * 0.127)).toBeCloseTo(ratio, 5);
+      expect(Math.abs(groundEffect(0.127, z * 0.127) * (1 - (1 / (4 * z)) ** 2) - 1)).toBeLessThan(1e-12);
+      expect(groundEffect(0.127, 0.01)).toBeCloseTo(4 / 3, 12);
+    },
+  );
 
   it('joins the branches of axial flow: hover 1, windmill boundary near 1 (Leishman eq. 2.96)', () => {
     expect(axialInflowRatio(0)).toBe(1);
@@ -217,7 +249,10 @@ describe('rotor', () => {
 describe('motor and battery', () => {
   it('has K_t = 60/(2π·KV): 0.013642 N·m/A for 700 rev/min per V (closed form)', () => {
     const build = demoBuild('sandpiper');
-    const craft = compileCraft({ ...build, motor: { kv_rpm_per_V: 700, resistance_ohm: 0.1, noLoadCurrent_A: 0.5 } });
+    const craft = compileCraft({
+      ...build,
+      motor: { kv_rpm_per_V: 700, resistance_ohm: 0.1, noLoadCurrent_A: 0.5 },
+    });
     expect(craft.motor.torqueConstant).toBeCloseTo(0.013642, 6);
   });
 

@@ -21,7 +21,8 @@ function flightAt(change: { scene?: typeof OPEN_FIELD; height_m?: number } = {})
     wind: CALM,
     scene: change.scene ?? OPEN_FIELD,
     seed: 3,
-    start: change.height_m === undefined ? { kind: 'ground' } : { kind: 'free-air', height_m: change.height_m },
+    start:
+      change.height_m === undefined ? { kind: 'ground' } : { kind: 'free-air', height_m: change.height_m },
   });
 }
 
@@ -52,26 +53,34 @@ describe('contact', () => {
     const angle = fc.double({ min: -Math.PI, max: Math.PI, noNaN: true });
     const speed = fc.double({ min: -4, max: 4, noNaN: true });
     fc.assert(
-      fc.property(angle, angle, speed, speed, fc.double({ min: 0, max: 6, noNaN: true }), speed, (roll, pitch, vn, ve, vd, spin) => {
-        const flight = flightAt({ height_m: 0.6 });
-        const s = flight.state;
-        s.set(quaternionFromEuler(roll, pitch / 2, 0), 6);
-        s.set([vn, ve, vd], 3);
-        s.set([spin, 2 * spin, -spin], 10);
-        s.fill(0, 13, 21);
-        let last = energy(flight);
-        const start = last;
-        for (let k = 0; k < 500; k++) {
-          flight.tick(NEUTRAL_STICKS);
-          const now = energy(flight);
-          // Windmilling propellers may give or take a little by the air; a contact must not.
-          expect(now - last, `gain in tick ${k}`).toBeLessThan(0.002 * start + 1e-3);
-          last = now;
-        }
-        expect(last).toBeLessThan(start);
-        expect(s[2], 'not through the ground').toBeLessThan(0.02);
-        expect(flight.stopped).toBeNull();
-      }),
+      fc.property(
+        angle,
+        angle,
+        speed,
+        speed,
+        fc.double({ min: 0, max: 6, noNaN: true }),
+        speed,
+        (roll, pitch, vn, ve, vd, spin) => {
+          const flight = flightAt({ height_m: 0.6 });
+          const s = flight.state;
+          s.set(quaternionFromEuler(roll, pitch / 2, 0), 6);
+          s.set([vn, ve, vd], 3);
+          s.set([spin, 2 * spin, -spin], 10);
+          s.fill(0, 13, 21);
+          let last = energy(flight);
+          const start = last;
+          for (let k = 0; k < 500; k++) {
+            flight.tick(NEUTRAL_STICKS);
+            const now = energy(flight);
+            // Windmilling propellers may give or take a little by the air; a contact must not.
+            expect(now - last, `gain in tick ${k}`).toBeLessThan(0.002 * start + 1e-3);
+            last = now;
+          }
+          expect(last).toBeLessThan(start);
+          expect(s[2], 'not through the ground').toBeLessThan(0.02);
+          expect(flight.stopped).toBeNull();
+        },
+      ),
       { numRuns: 25 },
     );
   });
@@ -107,7 +116,8 @@ describe('contact', () => {
     flight.setUpright();
     for (let k = 0; k < 1200; k++) flight.tick(NEUTRAL_STICKS);
     expect(2 * Math.asin(Math.hypot(flight.state[7], flight.state[8]))).toBeLessThan(0.1);
-    for (let k = 0; k < 800; k++) flight.tick({ ...NEUTRAL_STICKS, armed: true, levelling: true, heightHold: true, throttle: 1 });
+    for (let k = 0; k < 800; k++)
+      flight.tick({ ...NEUTRAL_STICKS, armed: true, levelling: true, heightHold: true, throttle: 1 });
     expect(flight.state[2]).toBeLessThan(-1);
   });
 

@@ -5,13 +5,7 @@ import { compileCraft } from '../../src/craft/compile.ts';
 import { RungeKutta4, type RateOfChange } from '../../src/math/integration.ts';
 import { angleBetween } from '../../src/math/quaternion.ts';
 import { FlightDynamics } from '../../src/physics/dynamics.ts';
-import {
-  FORCE_X,
-  rigidBodyRates,
-  rotationOf,
-  TORQUE_X,
-  WRENCH_SIZE,
-} from '../../src/physics/rigidBody.ts';
+import { FORCE_X, rigidBodyRates, rotationOf, TORQUE_X, WRENCH_SIZE } from '../../src/physics/rigidBody.ts';
 import { ATTITUDE, POSITION, RATES, ROTOR_SPEED, STATE_SIZE, VELOCITY } from '../../src/physics/state.ts';
 import { VACUUM_KGPM3, withAirframe } from './builds.ts';
 
@@ -59,7 +53,9 @@ describe('rigid body', () => {
       const rotation = new Float64Array(9);
       rotationOf(s, rotation);
       const w = s.subarray(RATES, RATES + 3);
-      const h = [0, 1, 2].map((row) => [0, 1, 2].reduce((sum, c) => sum + craft.inertia[3 * row + c] * w[c], 0));
+      const h = [0, 1, 2].map((row) =>
+        [0, 1, 2].reduce((sum, c) => sum + craft.inertia[3 * row + c] * w[c], 0),
+      );
       for (let i = 0; i < 4; i++) h[2] += craft.spin[i] * craft.rotor.inertia_kgm2 * s[ROTOR_SPEED + i];
       return [0, 1, 2].map((row) => [0, 1, 2].reduce((sum, c) => sum + rotation[3 * row + c] * h[c], 0));
     };
@@ -94,8 +90,14 @@ describe('rigid body', () => {
       derivative(s, d) {
         rotationOf(s, rotation);
         for (let i = 0; i < 3; i++) {
-          wrench[FORCE_X + i] = [0, 1, 2].reduce((sum, row) => sum + rotation[3 * row + i] * held.force[row], 0);
-          wrench[TORQUE_X + i] = [0, 1, 2].reduce((sum, row) => sum + rotation[3 * row + i] * held.torque[row], 0);
+          wrench[FORCE_X + i] = [0, 1, 2].reduce(
+            (sum, row) => sum + rotation[3 * row + i] * held.force[row],
+            0,
+          );
+          wrench[TORQUE_X + i] = [0, 1, 2].reduce(
+            (sum, row) => sum + rotation[3 * row + i] * held.torque[row],
+            0,
+          );
         }
         rigidBodyRates(craft, s, rotation, wrench, d);
       },

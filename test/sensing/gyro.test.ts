@@ -111,7 +111,13 @@ describe('gyro signal path', () => {
   });
 
   it('stops at full scale and rounds to the resolution', () => {
-    const gyro = new Gyro(craftWith({ noise_dps_per_rtHz: 0, fullScale_dps: 500, resolution_dps: 0.25 }), 0.0005, 0.0025, HOVER_RADPS, 1);
+    const gyro = new Gyro(
+      craftWith({ noise_dps_per_rtHz: 0, fullScale_dps: 500, resolution_dps: 0.25 }),
+      0.0005,
+      0.0025,
+      HOVER_RADPS,
+      1,
+    );
     const state = new Float64Array(STATE_SIZE);
     state[RATES] = 10;
     state[RATES + 1] = 1.03 * RAD_PER_DEG;
@@ -122,7 +128,13 @@ describe('gyro signal path', () => {
   });
 
   it('mounted 20° askew about z shows sin 20° of pitch as roll', () => {
-    const gyro = new Gyro(craftWith({ noise_dps_per_rtHz: 0, misalignment_deg: [0, 0, 20] }), 0.0005, 0.0025, HOVER_RADPS, 1);
+    const gyro = new Gyro(
+      craftWith({ noise_dps_per_rtHz: 0, misalignment_deg: [0, 0, 20] }),
+      0.0005,
+      0.0025,
+      HOVER_RADPS,
+      1,
+    );
     const state = new Float64Array(STATE_SIZE);
     state[RATES + 1] = 1;
     gyro.reset(state, RATES);
@@ -158,7 +170,12 @@ describe('accelerometer', () => {
     const build = demoBuild('sandpiper');
     const craft = compileCraft({
       ...build,
-      accelerometer: { ...build.accelerometer, noise_mps2_per_rtHz: 0.01, bandwidth_Hz: 100, resolution_mps2: 0 },
+      accelerometer: {
+        ...build.accelerometer,
+        noise_mps2_per_rtHz: 0.01,
+        bandwidth_Hz: 100,
+        resolution_mps2: 0,
+      },
     });
     const accelerometer = new Accelerometer(craft, 0.0005, 0.0025, 3);
     accelerometer.reset(new Float64Array([0, 0, -9.80665]));
