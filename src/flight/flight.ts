@@ -232,6 +232,17 @@ export class Flight {
     return this.dropped;
   }
 
+  /** Goes on where `other` is: place, motion, rotors, battery and winding heat; sensors start settled. */
+  takeOver(other: Flight): void {
+    if (other.dropped && !this.dropped) this.dropPayload();
+    this.state.set(other.state);
+    this.winding_K.set(other.winding_K);
+    for (let i = 0; i < 4; i++) this.struck[i] = this.dynamics.stopped[i] = other.struck[i];
+    this.queue.force(other.queue.active_us);
+    this.pilot.command_us.set(other.pilot.command_us);
+    this.resetSensors();
+  }
+
   /** Puts the craft upright where it is, at rest, a little over what it lies on. */
   setUpright(): void {
     const s = this.state;

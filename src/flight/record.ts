@@ -54,6 +54,18 @@ export class Recorder {
     this.used++;
   }
 
+  /** Forgets every row from `length` on. */
+  truncate(length: number): void {
+    this.used = Math.min(this.used, Math.max(0, length));
+  }
+
+  /** Forgets the oldest `count` rows. */
+  dropOldest(count: number): void {
+    const gone = Math.min(count, this.used);
+    for (const column of this.columns) column.copyWithin(0, gone, this.used);
+    this.used -= gone;
+  }
+
   /** A column by signal name, as long as the record. @throws RangeError when it was not kept. */
   column(name: string): Float64Array {
     const index = this.names.indexOf(name);
