@@ -28,7 +28,17 @@ import { findChromium, root } from '../../src/cli/setup.mjs';
 
 const SHOTS = path.join(root, 'test/browser/shots');
 const SITES = path.join(root, 'node_modules/.cache/gustbench/sites');
-const SOURCES = ['index.html', 'vite.config.ts', 'package-lock.json', 'src', 'scenes', 'public'];
+/** A page with every widget and plot, built beside the program for the tests only. */
+export const GALLERY = 'test/browser/gallery/index.html';
+const SOURCES = [
+  'index.html',
+  'vite.config.ts',
+  'package-lock.json',
+  'src',
+  'scenes',
+  'public',
+  'test/browser/gallery',
+];
 
 export interface OpenOptions {
   /** Where to go, "#/fly"; default the front. */
@@ -147,7 +157,7 @@ async function openPage(browser: Browser, url: string, options: OpenOptions): Pr
     if (request.failure()?.errorText !== 'net::ERR_ABORTED') note(`request failed: ${request.url()}`);
   });
   await page.goto(`${url}${options.at ?? ''}`);
-  await page.waitForSelector('.frame');
+  await page.waitForSelector('main');
   return {
     page,
     context,
@@ -196,7 +206,11 @@ async function builtSite(): Promise<string> {
     root,
     configFile: path.join(root, 'vite.config.ts'),
     logLevel: 'error',
-    build: { outDir: aside, emptyOutDir: true },
+    build: {
+      outDir: aside,
+      emptyOutDir: true,
+      rollupOptions: { input: [path.join(root, 'index.html'), path.join(root, GALLERY)] },
+    },
   });
   dropOldSites();
   try {

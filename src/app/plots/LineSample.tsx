@@ -1,4 +1,4 @@
-import { dashOf, type TraceAxis } from './lineStyle.ts';
+import { colourOfVariable, dashOf, type TraceAxis } from './lineStyle.ts';
 
 /** A short piece of a trace's line, for legends. */
 export function LineSample(props: { axis: TraceAxis; faded?: boolean; thin?: boolean }) {
@@ -9,10 +9,10 @@ export function LineSample(props: { axis: TraceAxis; faded?: boolean; thin?: boo
         y1="4"
         x2="24"
         y2="4"
-        stroke={`var(--${props.axis})`}
+        stroke={colourOfVariable(props.axis)}
         stroke-width={props.thin ? 1 : 2}
         stroke-dasharray={dashOf(props.axis).join(' ')}
-        opacity={props.faded ? 0.5 : 1}
+        opacity={props.faded ? 0.6 : 1}
       />
     </svg>
   );

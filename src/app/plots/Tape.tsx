@@ -94,7 +94,7 @@ export function Tape(props: TapeProps) {
               <strong>{lane.label}</strong> <span class="unit">{lane.unit}</span>
               <span class="tape-scale small faint" />
             </div>
-            <ul>
+            <ul class={lane.traces.length > 3 ? 'pairs' : undefined}>
               {lane.traces.map((trace) => (
                 <li key={trace.channel}>
                   <LineSample axis={trace.axis} faded={trace.behind} />
@@ -211,7 +211,7 @@ function placeGutter(gutter: HTMLElement, painter: TapePainter): void {
     const scale = row.querySelector('.tape-scale');
     if (scale !== null) {
       scale.textContent =
-        low === -high ? `±${readable(high, 3)}` : `${readable(low, 4)} … ${readable(high, 4)}`;
+        low === -high ? `±${readable(high, 3)}` : `${readable(low, 4)}–${readable(high, 4)}`;
     }
   });
 }

@@ -21,6 +21,11 @@ export function colourOf(axis: TraceAxis, palette: Palette): string {
   return palette[axis];
 }
 
+/** The same colour for SVG and CSS. */
+export function colourOfVariable(axis: TraceAxis): string {
+  return `var(--${axis})`;
+}
+
 /** Diagonal hatching that tiles every `HATCH_PX` device pixels. */
 export const HATCH_PX = 8;
 

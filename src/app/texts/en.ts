@@ -129,11 +129,13 @@ export const en = {
   dialog: { close: 'Close' },
   plot: {
     cursorOf: (what: string) => `${what}: cursor`,
-    keys: 'Arrow keys move the cursor, Shift for long steps, Home and End to the ends, Escape takes it off',
+    keys: 'Arrow keys move the cursor, Shift sample by sample, Home and End to the ends, Escape takes it off',
+    xyKeys:
+      'Left and right arrows run along a curve, up and down change the curve, Shift for fine steps; the wheel zooms, double-click shows all',
     noData: 'Nothing to draw yet',
     unstable: 'unstable',
     pointOf: (what: string) => `${what}: point`,
-    mapKeys: 'Arrow keys move the point, Shift for long steps, Enter picks it',
+    mapKeys: 'Arrow keys move the point, Shift for fine steps, Enter picks it',
     live: 'live',
     pausedAt: (time: string) => `at ${time}`,
     tapeKeys: 'Left and right arrows move in time, Shift for fine steps, End returns to live',

@@ -61,7 +61,7 @@ export function CornerPlan(props: { build: Build; reading: ReadonlySignal<Corner
     >
       <defs>
         <pattern id={`${id}-hatch`} width="6" height="6" patternUnits="userSpaceOnUse">
-          <path d="M-1 7 7 -1M-1 1 1 -1M5 7 7 5" stroke="var(--ink)" stroke-width="1.3" />
+          <path d="M-1 7 7 -1M-1 1 1 -1M5 7 7 5" stroke="var(--ink)" stroke-width="1" />
         </pattern>
         {plan.corners.map(({ corner, x, y, r }) => (
           <clipPath id={`${id}-${corner}`} key={corner}>
