@@ -1,4 +1,4 @@
-/** The page's start: store, theme, frame. */
+/** The page's start: kept work, store, theme, frame. */
 import { render } from 'preact';
 import './styles/tokens.css';
 import './styles/base.css';
@@ -6,16 +6,41 @@ import './styles/widgets.css';
 import './styles/plots.css';
 import './styles/shell.css';
 import { App } from './shell/App.tsx';
+import { startAutosave, type Autosave } from './storage/autosave.ts';
+import { saveArchive } from './storage/saveArchive.ts';
+import { openWork } from './storage/start.ts';
 import { BenchContext } from './store/context.ts';
-import { firstDocument } from './store/demos.ts';
 import { Store } from './store/store.ts';
 import { startTheme } from './store/theme.ts';
 
-function start(root: HTMLElement): void {
-  const store = new Store(firstDocument());
+async function start(root: HTMLElement): Promise<void> {
+  const closing: { autosave: Autosave | null } = { autosave: null };
+  const opened = await openWork({
+    onClosedForUpdate: () => {
+      closing.autosave?.stop(store.texts.save.closedForUpdate);
+      store.notices.tell('warning', store.texts.save.closedForUpdate);
+    },
+  });
+  const store = new Store(opened.document);
+  const words = store.texts.save;
   const theme = startTheme(store.settings);
+  const exportNow = () => void saveArchive(store);
+  if (opened.storage === null) {
+    store.saveState.value = { kind: 'off', reason: opened.reason };
+    store.notices.tell('warning', words.offLong(opened.reason), {
+      action: { label: words.exportNow, run: exportNow },
+    });
+  } else {
+    const autosave = startAutosave(store, opened.storage, exportNow);
+    closing.autosave = autosave;
+    document.addEventListener('visibilitychange', () => {
+      if (document.visibilityState === 'hidden') void autosave.flush();
+    });
+    window.addEventListener('pagehide', () => void autosave.flush());
+  }
+  for (const { name, reason } of opened.aside) store.notices.tell('error', words.aside(name, reason));
   render(
-    <BenchContext.Provider value={{ store, theme }}>
+    <BenchContext.Provider value={{ store, theme, storage: opened.storage, running: new Map() }}>
       <App />
     </BenchContext.Provider>,
     root,
@@ -23,4 +48,4 @@ function start(root: HTMLElement): void {
 }
 
 const root = document.getElementById('app');
-if (root !== null) start(root);
+if (root !== null) void start(root);

@@ -11,7 +11,6 @@ import {
   throttleShare,
   type StickCalibration,
   type StickDemand,
-  type StickMode,
   type StickWays,
 } from '../../control/sticks.ts';
 
@@ -73,7 +72,6 @@ export interface PadReading {
 
 /** Settings kept for a device, or what can be assumed of it; `known` is false for an uncalibrated transmitter. */
 export function settingsFor(
-  pad: PadReading,
   kept: unknown,
   standard: boolean,
 ): { settings: DeviceSettings; known: boolean } {

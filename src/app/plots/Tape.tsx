@@ -94,7 +94,7 @@ export function Tape(props: TapeProps) {
               <strong>{lane.label}</strong> <span class="unit">{lane.unit}</span>
               <span class="tape-scale small faint" />
             </div>
-            <ul class={lane.traces.length > 3 ? 'pairs' : undefined}>
+            <ul class={lane.traces.length > 1 ? 'pairs' : undefined}>
               {lane.traces.map((trace) => (
                 <li key={trace.channel}>
                   <LineSample axis={trace.axis} faded={trace.behind} />

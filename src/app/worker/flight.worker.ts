@@ -48,6 +48,9 @@ function send(): void {
   count = 0;
 }
 
+const again = new MessageChannel();
+again.port1.onmessage = () => beat();
+
 function beat(): void {
   const now_ms = performance.now();
   const more = engine.advance(now_ms);
@@ -55,7 +58,9 @@ function beat(): void {
     lastSent_ms = now_ms;
     send();
   }
-  setTimeout(beat, more ? 0 : 4);
+  // A message to itself comes at once, where a timer of 0 ms is held back to 4 ms by browsers.
+  if (more) again.port2.postMessage(null);
+  else setTimeout(beat, 3);
 }
 
 self.onmessage = ({ data }: MessageEvent<ToWorker>) => {

@@ -427,7 +427,7 @@ Object.assign(window, { measureTape, store });
 const root = document.getElementById('app');
 if (root !== null) {
   render(
-    <BenchContext.Provider value={{ store, theme }}>
+    <BenchContext.Provider value={{ store, theme, storage: null, running: new Map() }}>
       <main class="frame-free" style={{ padding: '16px', display: 'grid', gap: '16px' }}>
         <h1>Gallery</h1>
         <div style={{ display: 'flex', gap: '16px', alignItems: 'start' }}>

@@ -1,7 +1,321 @@
-import { EmptyState } from '../../widgets/states.tsx';
-import { en } from '../../texts/en.ts';
+/** Fly: the flight in the view, under the hand and on the tape. */
+import { signal } from '@preact/signals';
+import type { ComponentChildren } from 'preact';
+import { useEffect, useMemo, useRef, useState } from 'preact/hooks';
+import type { AxisName } from '../../../craft/gains.ts';
+import { AXES } from '../../../craft/gains.ts';
+import { signalIndex } from '../../../flight/signals.ts';
+import { followThumb } from '../../input/touchSticks.ts';
+import { Tape } from '../../plots/Tape.tsx';
+import { useRunning, useStore, useTheme } from '../../store/context.ts';
+import { FlightView } from '../../view3d/flightView.ts';
+import { CAMERAS } from '../../view3d/cameras.ts';
+import { Button } from '../../widgets/Button.tsx';
+import { CornerPlan, type CornerReading } from '../../widgets/CornerPlan.tsx';
+import { Dialog } from '../../widgets/Dialog.tsx';
+import type { Speed } from '../../worker/protocol.ts';
+import { GUST_CHANNEL } from '../../worker/client.ts';
+import './fly.css';
+import { flightKeys } from './keys.ts';
+import { flightLanes } from './lanes.ts';
+import { buildPanel } from './panel.ts';
+import { ReadOut } from './ReadOut.tsx';
+import { FlightSession } from './session.ts';
+import { SticksDialog } from './SticksDialog.tsx';
+import { flyTexts as words } from './texts.ts';
 
-/** Fly: not built yet; says so. */
+const SPEEDS: readonly Speed[] = [1, 0.5, 0.25, 0];
+const TAPE_SPAN_S = 8;
+const COMMAND = signalIndex('cmd_FL_us');
+const SATURATED = signalIndex('saturated_FL');
+
 export default function Fly() {
-  return <EmptyState title={en.aims.fly}>This place is not built yet.</EmptyState>;
+  const store = useStore();
+  const running = useRunning();
+  const session = useMemo(() => {
+    const kept = running.get('flight');
+    const one = kept instanceof FlightSession ? kept : new FlightSession(store);
+    running.set('flight', one);
+    return one;
+  }, [store, running]);
+  const [view, setView] = useState<FlightView | null>(null);
+  const [axis, setAxis] = useState<AxisName>('roll');
+  const [dialog, setDialog] = useState<'sticks' | 'keys' | null>(null);
+  const reading = useMemo(() => signal<CornerReading>({ command: [0, 0, 0, 0], saturated: [0, 0, 0, 0] }), []);
+  const build = store.build.value;
+  const lanes = useMemo(() => {
+    const full = build.battery.cells * 4.25;
+    const empty = build.battery.cells * 3.1;
+    return flightLanes(axis, [build.esc.min_us, build.esc.max_us], [empty, full]);
+  }, [axis, build]);
+
+  useEffect(() => {
+    session.setSpeed(session.at_s.value === null ? 1 : 0);
+    return () => session.leave();
+  }, [session]);
+  useEffect(() => {
+    const away = () => {
+      if (document.hidden) session.leave();
+    };
+    document.addEventListener('visibilitychange', away);
+    return () => document.removeEventListener('visibilitychange', away);
+  }, [session]);
+  useEffect(
+    () => flightKeys(session, () => view, dialog !== null, () => setDialog('keys')),
+    [session, view, dialog],
+  );
+
+  return (
+    <div class="fly">
+      <Toolbar session={session} view={view} axis={axis} onAxis={setAxis} />
+      <ViewPane
+        session={session}
+        onView={setView}
+        reading={reading}
+        onSticks={() => setDialog('sticks')}
+        onKeys={() => setDialog('keys')}
+      >
+        <CornerPlan build={build} reading={reading} />
+      </ViewPane>
+      <Panel session={session} view={view} />
+      <div class="fly-tape">
+        <Tape
+          label={words.tape}
+          ring={session.client.ring}
+          lanes={lanes}
+          span_s={TAPE_SPAN_S}
+          shadeChannel={GUST_CHANNEL}
+          at_s={session.at_s.value}
+          onSeek={(time_s) => session.seek(time_s)}
+          onResume={() => session.resume()}
+        />
+      </div>
+      {dialog === 'sticks' && <SticksDialog session={session} onClose={() => setDialog(null)} />}
+      {dialog === 'keys' && (
+        <Dialog title={words.keyHelp.title} onClose={() => setDialog(null)}>
+          <dl class="key-list">
+            {words.keyHelp.rows.map(([key, what]) => (
+              <div key={key}>
+                <dt>{key}</dt>
+                <dd>{what}</dd>
+              </div>
+            ))}
+          </dl>
+        </Dialog>
+      )}
+    </div>
+  );
+}
+
+function Toolbar(props: {
+  session: FlightSession;
+  view: FlightView | null;
+  axis: AxisName;
+  onAxis: (axis: AxisName) => void;
+}) {
+  const { session, axis, onAxis } = props;
+  const { speed } = session.state.value;
+  const seat = session.seat.state.value;
+  const [, redraw] = useState(0);
+  const build = useStore().build.value;
+  return (
+    <div class="fly-bar" role="toolbar" aria-label={words.view}>
+      <Button primary={!seat.armed} pressed={seat.armed} title={words.armHint} onClick={() => session.toggleArmed(performance.now())}>
+        {seat.armed ? words.disarm : words.arm}
+      </Button>
+      <Button title={words.restartHint} onClick={() => session.restart()}>
+        {words.restart}
+      </Button>
+      <Button title={words.uprightHint} onClick={() => session.client.setUpright()}>
+        {words.upright}
+      </Button>
+      {build.payload !== undefined && (
+        <Button title={words.dropHint} onClick={() => session.client.dropPayload()}>
+          {words.drop}
+        </Button>
+      )}
+      <span class="fly-group" role="group" aria-label={words.speed}>
+        {SPEEDS.map((one) => (
+          <Button key={one} quiet pressed={speed === one} onClick={() => session.setSpeed(one)}>
+            {words.speeds[one]}
+          </Button>
+        ))}
+        <Button quiet title={words.tickHint} disabled={speed !== 0} onClick={() => session.client.singleTick()}>
+          {words.tick}
+        </Button>
+      </span>
+      <span class="fly-group" role="group" aria-label={words.camera}>
+        {CAMERAS.map((one) => (
+          <Button
+            key={one}
+            quiet
+            pressed={props.view?.camera === one}
+            onClick={() => {
+              props.view?.setCamera(one);
+              redraw((n) => n + 1);
+            }}
+          >
+            {words.cameras[one]}
+          </Button>
+        ))}
+      </span>
+      <span class="fly-group" role="group" aria-label={words.termsAxis}>
+        <span class="fly-label">{words.termsAxis}</span>
+        {AXES.map((one) => (
+          <Button key={one} quiet pressed={axis === one} onClick={() => onAxis(one)}>
+            {one}
+          </Button>
+        ))}
+      </span>
+      <span class="fly-end">
+        <Button title={words.saveHint} onClick={() => void session.saveRecord()}>
+          {words.save}
+        </Button>
+      </span>
+    </div>
+  );
+}
+
+function ViewPane(props: {
+  session: FlightSession;
+  onView: (view: FlightView | null) => void;
+  reading: { value: CornerReading };
+  onSticks: () => void;
+  onKeys: () => void;
+  children: ComponentChildren;
+}) {
+  const { session, reading } = props;
+  const store = useStore();
+  const theme = useTheme();
+  const host = useRef<HTMLDivElement>(null);
+  const left = useRef<HTMLDivElement>(null);
+  const right = useRef<HTMLDivElement>(null);
+  const made = useRef<FlightView | null>(null);
+  const build = store.build.value;
+  const scene = store.scene.value;
+  const shade = theme.shown.value === 'dark' ? 'dark' : 'light';
+
+  useEffect(() => {
+    if (host.current === null) return;
+    const view = new FlightView(host.current);
+    made.current = view;
+    props.onView(view);
+    return () => {
+      made.current = null;
+      props.onView(null);
+      view.dispose();
+    };
+  }, []);
+  useEffect(() => made.current?.setContent(build, scene, shade), [build, scene, shade]);
+  useEffect(() => {
+    let frame = 0;
+    let last_ms = performance.now();
+    const command = new Float64Array(4);
+    const saturated = new Float64Array(4);
+    const beat = (now_ms: number) => {
+      frame = requestAnimationFrame(beat);
+      const dt_s = Math.min(0.1, Math.max(0, (now_ms - last_ms) / 1000));
+      last_ms = now_ms;
+      session.beat(dt_s);
+      const { client } = session;
+      const drawn = client.frame(now_ms, session.at_s.value);
+      if (drawn !== null) made.current?.render(drawn, now_ms);
+      const { esc } = store.build.value;
+      for (let i = 0; i < 4; i++) {
+        command[i] = (client.value(COMMAND + i, session.at_s.value) - esc.min_us) / (esc.max_us - esc.min_us);
+        saturated[i] = Math.abs(client.value(SATURATED + i, session.at_s.value));
+      }
+      reading.value = { command, saturated };
+    };
+    frame = requestAnimationFrame(beat);
+    return () => cancelAnimationFrame(frame);
+  }, [session]);
+  useEffect(() => {
+    if (left.current === null || right.current === null) return;
+    const ends = [
+      followThumb(left.current, session.seat.left, () => undefined),
+      followThumb(right.current, session.seat.right, () => undefined),
+    ];
+    return () => ends.forEach((end) => end());
+  }, [session]);
+
+  return (
+    <div class="fly-view">
+      <div class="fly-canvas" ref={host} role="img" aria-label={words.view} />
+      <div class="thumb left" ref={left} aria-hidden="true" />
+      <div class="thumb right" ref={right} aria-hidden="true" />
+      <div class="fly-plan">{props.children}</div>
+      <ReadOut session={session} view={() => made.current} />
+      <Hint
+        session={session}
+        canvas={made.current?.renderer === 'canvas'}
+        onSticks={props.onSticks}
+        onKeys={props.onKeys}
+      />
+    </div>
+  );
+}
+
+/** One line under the view: what to press now, or what went wrong. */
+function Hint(props: { session: FlightSession; canvas: boolean; onSticks: () => void; onKeys: () => void }) {
+  const { session } = props;
+  const { stopped } = session.state.value;
+  const seat = session.seat.state.value;
+  const [struck, setStruck] = useState('');
+  useEffect(() => {
+    const timer = setInterval(() => setStruck(session.struck().join(', ')), 200);
+    return () => clearInterval(timer);
+  }, [session]);
+  const at = session.at_s.value;
+  let text: string = seat.armed ? words.armedKeys : words.armFirst;
+  let loud = false;
+  if (stopped !== null) {
+    text = words.stopped(stopped.tick, stopped.what);
+    loud = true;
+  } else if (struck !== '') {
+    text = words.struck(struck);
+    loud = true;
+  } else if (seat.uncalibrated && seat.device !== null) {
+    text = words.uncalibrated(seat.device);
+    loud = true;
+  }
+  return (
+    <div class={loud ? 'fly-hint loud' : 'fly-hint'} role="status">
+      {at !== null ? (
+        <>
+          <Button primary title={words.reflyHint} onClick={() => session.resume()}>
+            {words.refly}
+          </Button>
+          <Button onClick={() => session.seek(null)}>{words.live}</Button>
+        </>
+      ) : (
+        <span>{text}</span>
+      )}
+      {props.canvas && <span class="faint">{words.noWebgl}</span>}
+      <span class="fly-end">
+        <Button quiet pressed={seat.levelling} title="L" onClick={() => session.setAssist('levelling')}>
+          {words.levelling}
+        </Button>
+        <Button quiet pressed={seat.heightHold} title="H" onClick={() => session.setAssist('heightHold')}>
+          {words.heightHold}
+        </Button>
+        <Button quiet onClick={props.onSticks}>
+          {words.sticksButton}
+        </Button>
+        <Button quiet onClick={props.onKeys}>
+          {words.keysButton}
+        </Button>
+      </span>
+    </div>
+  );
+}
+
+function Panel(props: { session: FlightSession; view: FlightView | null }) {
+  const store = useStore();
+  const host = useRef<HTMLDivElement>(null);
+  useEffect(() => {
+    if (host.current === null || props.view === null) return;
+    return buildPanel(host.current, store, props.session, props.view.shows);
+  }, [props.view, props.session, store.craft.value.id]);
+  return <div class="fly-panel" ref={host} />;
 }
