@@ -1,12 +1,175 @@
 import { expect, test } from 'vitest';
-import { describeInBrowser } from './harness.ts';
+import { accessibilityFaults, describeInBrowser, type Opened } from './harness.ts';
+
+const PLACES = ['measure', 'shape', 'fly', 'prove', 'match', 'carry'] as const;
+const title = (place: string) => place[0].toUpperCase() + place.slice(1);
+
+async function savedNow({ page }: Opened): Promise<void> {
+  await page.waitForSelector('.save-state[data-kind="saved"]');
+}
+
+/** Opens Work, gives `name` and `content` to its file field. */
+async function giveFile({ page }: Opened, name: string, content: string): Promise<void> {
+  await page.keyboard.press('Alt+KeyW');
+  await page
+    .locator('dialog input[type="file"]')
+    .setInputFiles({ name, mimeType: 'application/json', buffer: Buffer.from(content) });
+}
 
 describeInBrowser('The frame', (site) => {
-  test('every place opens by its link', async () => {
+  test('every place opens by its link and by its key', async () => {
     const opened = await site.open();
-    await opened.page.waitForTimeout(500);
-    await opened.shot('shell-first');
-    expect(await opened.page.title()).toContain('Gustbench');
+    const { page } = opened;
+    for (const [i, place] of PLACES.entries()) {
+      await page.keyboard.press(`Alt+Digit${i + 1}`);
+      await page.waitForFunction((wanted) => document.title.startsWith(wanted), title(place));
+      expect(await page.locator('.rail a[aria-current="page"]').innerText()).toBe(title(place));
+    }
+    for (const place of PLACES) {
+      await page.goto(`${site.url}#/${place}`);
+      await page.waitForFunction((wanted) => document.title.startsWith(wanted), title(place));
+    }
     await opened.close();
   });
+
+  test('the theme follows the system until it is chosen', async () => {
+    const opened = await site.open({ theme: 'dark' });
+    const { page } = opened;
+    const shown = () => page.evaluate(() => document.documentElement.dataset.theme);
+    expect(await shown()).toBe('dark');
+    await page.emulateMedia({ colorScheme: 'light' });
+    await expect.poll(shown).toBe('light');
+    await page.keyboard.press('Alt+KeyS');
+    await page.getByLabel('Appearance').selectOption('contrast');
+    expect(await shown()).toBe('contrast');
+    await opened.shot('shell-settings-contrast');
+    await opened.close();
+  });
+
+  test('place, craft, theme and gains come back after a reload', async () => {
+    const opened = await site.open({ at: '#/shape' });
+    const { page } = opened;
+    await page.locator('#top-craft').selectOption({ label: 'Wren' });
+    await page.keyboard.press('Alt+KeyS');
+    await page.getByLabel('Appearance').selectOption('dark');
+    await page.keyboard.press('Escape');
+    await page.keyboard.press('Alt+KeyW');
+    await page.getByRole('button', { name: 'Copy A to B' }).click();
+    await page.keyboard.press('Escape');
+    await savedNow(opened);
+    await page.goto(site.url);
+    await page.reload();
+    await page.waitForSelector('.frame');
+    expect(await page.title()).toContain('Shape');
+    expect(await page.locator('#top-craft option:checked').innerText()).toBe('Wren');
+    expect(await page.locator('[data-item="gains"] option').count()).toBe(2);
+    expect(await page.evaluate(() => document.documentElement.dataset.theme)).toBe('dark');
+    await opened.close();
+  });
+
+  test('an edit is undone and done again by key', async () => {
+    const opened = await site.open({ at: '#/carry' });
+    const { page } = opened;
+    await page.keyboard.press('Alt+KeyW');
+    const name = page.getByLabel('Rename');
+    await name.fill('Heron');
+    await name.press('Enter');
+    await page.keyboard.press('Escape');
+    const craft = () => page.locator('#top-craft option:checked').innerText();
+    expect(await craft()).toBe('Heron');
+    await page.keyboard.press('Control+KeyZ');
+    expect(await craft()).toBe('Sandpiper');
+    await page.keyboard.press('Control+Shift+KeyZ');
+    expect(await craft()).toBe('Heron');
+    await opened.close();
+  });
+
+  test('a wrong file says what is wrong and the old build stays', async () => {
+    const opened = await site.open({ at: '#/carry' });
+    const { page } = opened;
+    await giveFile(
+      opened,
+      'bad.json',
+      '{"format":"gustbench.build/1","name":"Bad","airframe":{"mass_kg":-3}}',
+    );
+    const notice = page.locator('.notice.error');
+    await notice.waitFor();
+    expect(await notice.innerText()).toContain('airframe.mass_kg');
+    await opened.shot('shell-work-refused');
+    for (const junk of [
+      '{"format":"gustbench.build/9"}',
+      '{"a":',
+      '[[[[[[[[[[[[[[[[[[[[[[[[[[[[[[',
+      'PK\u0003\u0004 no archive',
+    ]) {
+      await page.locator('dialog input[type="file"]').setInputFiles({
+        name: 'junk.json',
+        mimeType: 'application/json',
+        buffer: Buffer.from(junk),
+      });
+      await page.locator('.notice.error', { hasText: 'junk.json' }).first().waitFor();
+    }
+    await page.keyboard.press('Escape');
+    expect(await page.locator('#top-craft option').allInnerTexts()).toEqual(['Sandpiper', 'Wren']);
+    await opened.close();
+  });
+
+  test('an exported archive brings everything back under new names', async () => {
+    const opened = await site.open({ at: '#/carry' });
+    const { page } = opened;
+    await page.keyboard.press('Alt+KeyW');
+    const [download] = await Promise.all([
+      page.waitForEvent('download'),
+      page.getByRole('button', { name: 'Export everything' }).click(),
+    ]);
+    await page.locator('dialog input[type="file"]').setInputFiles(
+      await download.path().then(async (file) => {
+        const { readFile } = await import('node:fs/promises');
+        return { name: 'all.zip', mimeType: 'application/zip', buffer: await readFile(file) };
+      }),
+    );
+    await expect
+      .poll(() => page.locator('#top-craft option').allInnerTexts())
+      .toEqual(['Sandpiper', 'Wren', 'Sandpiper 2', 'Wren 2']);
+    await opened.close();
+  });
+
+  test('two windows: an edit in one arrives in the other', async () => {
+    const context = await site.newContext();
+    const one = await site.open({ context, at: '#/carry' });
+    const two = await site.open({ context, at: '#/carry' });
+    await one.page.keyboard.press('Alt+KeyW');
+    await one.page.getByLabel('Rename').fill('Heron');
+    await one.page.getByLabel('Rename').press('Enter');
+    await expect.poll(() => two.page.locator('#top-craft option').allInnerTexts()).toContain('Heron');
+    await one.close();
+    await two.close();
+    await context.close();
+  });
+
+  for (const theme of ['light', 'dark'] as const) {
+    for (const [width, height] of [
+      [1440, 900],
+      [1024, 768],
+      [768, 1024],
+    ]) {
+      test(`nothing serious by axe and nothing cut off, ${theme}, ${width} × ${height}`, async () => {
+        const opened = await site.open({ at: '#/carry', theme, width, height });
+        const { page } = opened;
+        await savedNow(opened);
+        expect(await accessibilityFaults(page)).toEqual([]);
+        await opened.shot(`shell-${theme}-${width}`);
+        for (const key of ['KeyW', 'KeyH', 'KeyS']) {
+          await page.keyboard.press(`Alt+${key}`);
+          await page.waitForSelector('dialog[open]');
+          expect(await accessibilityFaults(page)).toEqual([]);
+          await opened.shot(`shell-${theme}-${width}-${key}`);
+          await page.keyboard.press('Escape');
+        }
+        const wide = await page.evaluate(() => document.documentElement.scrollWidth - innerWidth);
+        expect(wide).toBeLessThanOrEqual(0);
+        await opened.close();
+      });
+    }
+  }
 });

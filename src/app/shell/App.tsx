@@ -9,11 +9,14 @@ import { Rail } from './Rail.tsx';
 import { hashOf, placeInHash } from './route.ts';
 import { SettingsDialog } from './SettingsDialog.tsx';
 import { TopLine, type ShellDialog } from './TopLine.tsx';
+import { useFileDrop } from './useFileDrop.ts';
+import { WorkDialog } from './WorkDialog.tsx';
 
 /** The frame that all places live in. */
 export function App() {
   const store = useStore();
   const [dialog, setDialog] = useState<ShellDialog | null>(null);
+  const fileOver = useFileDrop();
   const here = store.place.value;
   const place = PLACE_LIST.find(({ name }) => name === here) ?? PLACE_LIST[0];
 
@@ -67,6 +70,8 @@ export function App() {
         <PlaceFrame key={here} place={place} />
       </main>
       <Notices />
+      {fileOver ? <div class="aim-drop">{store.texts.drop.over}</div> : null}
+      {dialog === 'work' ? <WorkDialog onClose={close} /> : null}
       {dialog === 'help' ? <HelpDialog onClose={close} /> : null}
       {dialog === 'settings' ? <SettingsDialog onClose={close} /> : null}
     </div>

@@ -14,7 +14,6 @@ import { changedCrafts, joined, reversed, type Change, type SlotChange } from '.
 import { demoScenes } from './demos.ts';
 import {
   freeName,
-  newCraft,
   newGainSet,
   sameJson,
   type CraftWork,
@@ -52,6 +51,9 @@ export class Store {
   readonly saveState: Signal<SaveState> = signal({ kind: 'off', reason: '' });
   /** Places where something waits for the person, with what it is. */
   readonly waiting: Signal<Readonly<Partial<Record<PlaceName, string>>>> = signal({});
+
+  /** A file that came in by drop and belongs to a place; the place takes it with `takeOffered`. */
+  readonly offered: Signal<{ readonly place: PlaceName; readonly file: File } | null> = signal(null);
 
   private readonly craftList: Signal<readonly CraftWork[]>;
   private readonly deskNow: Signal<Desk>;
@@ -171,17 +173,30 @@ export class Store {
     this.editCraft(label, (craft) => ({ ...craft, sheets: { ...craft.sheets, [name]: value } }));
   }
 
-  /** A new craft on the desk; a name that is taken gets a number. */
-  addCraft(build: Build, gains: Gains, label: string): void {
-    const name = freeName(
-      build.name,
-      this.crafts.value.map((craft) => craft.build.name),
-    );
-    const after = newCraft({ ...build, name }, gains);
-    this.commit(label, [
-      { slot: 'craft', id: after.id, before: null, after },
-      { slot: 'current', before: this.craft.value.id, after: after.id },
-    ]);
+  /** New crafts, the first of them on the desk; a name that is taken gets a number. */
+  addCrafts(crafts: readonly CraftWork[], label: string): void {
+    if (crafts.length === 0) return;
+    const names = this.crafts.value.map((craft) => craft.build.name);
+    const added = crafts.map((craft): SlotChange => {
+      const name = freeName(craft.build.name, names);
+      names.push(name);
+      const after = {
+        ...craft,
+        build: { ...craft.build, name },
+        savedBuild: { ...craft.savedBuild, name },
+      };
+      return { slot: 'craft', id: craft.id, before: null, after };
+    });
+    this.commit(label, [...added, { slot: 'current', before: this.craft.value.id, after: crafts[0].id }]);
+  }
+
+  /** Gains from a file: they become the working and the saved ones of the side being edited. */
+  openGains(gains: Gains, label: string): void {
+    const side = this.side.value;
+    this.editCraft(label, (craft) => {
+      const { history } = sideOrA(craft, side);
+      return withSet(craft, side, { working: gains, saved: gains, history });
+    });
   }
 
   /** Takes a craft away; the last one stays. Returns whether it went. */
@@ -276,13 +291,24 @@ export class Store {
     this.waiting.value = Object.fromEntries(what === null ? others : [...others, [place, what]]);
   }
 
+  /** Hands a file to a place, which takes it from `offered` when it is open. */
+  offerFile(place: PlaceName, file: File): void {
+    this.offered.value = { place, file };
+    this.setWaiting(place, file.name);
+  }
+
+  /** The file offered to `place`, once. */
+  takeOffered(place: PlaceName): File | null {
+    const offer = this.offered.value;
+    if (offer?.place !== place) return null;
+    this.offered.value = null;
+    this.setWaiting(place, null);
+    return offer.file;
+  }
+
   /** Crafts as another window or an archive left them; not an edit of this window. */
   adoptCrafts(crafts: readonly CraftWork[]): void {
     if (crafts.length > 0) this.craftList.value = crafts;
-  }
-
-  adoptDesk(change: Partial<Desk>): void {
-    this.changeDesk(change);
   }
 
   /** Runs `act`; an InputError becomes a notice (unless quiet) and is returned as its problems. */

@@ -174,8 +174,11 @@ export const en = {
     dropB: 'Drop B',
     aside: 'Put aside',
     asideText: 'Records that could not be read. They are kept until you remove them.',
+    asideWhy: 'Why',
     asideSave: 'Save as file',
     asideRemove: 'Remove',
+    newBuild: (name: string, shape: string) =>
+      `${name} is on the bench with the gains that lay there; ${shape} proposes gains of its own.`,
   },
   archive: {
     opened: (count: number) =>
