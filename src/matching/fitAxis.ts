@@ -337,7 +337,7 @@ class AxisFitter {
       const covariance = inverse(last.information);
       return this.result(p, covariance, e, 0, 2 * cost, converged);
     }
-    let plant = p.slice();
+    let plant: Float64Array = p.slice();
     let information = Matrix.eye(1);
     let deviance = 2 * cost;
     for (let iteration = 0; iteration < 6; iteration++) {
