@@ -139,7 +139,11 @@ describe('flight engine', () => {
       engine.begin(
         settings({
           wind: parseWind({ format: 'gustbench.wind/1' }),
-          gains: { ...gains, axes: { roll: axis, pitch: axis, yaw: gains.axes.yaw }, derivativeLowPass_Hz: 120 },
+          gains: {
+            ...gains,
+            axes: { roll: axis, pitch: axis, yaw: gains.axes.yaw },
+            derivativeLowPass_Hz: 120,
+          },
         }),
         { kind: 'hover', height_m: 5 },
         0,

@@ -1,5 +1,10 @@
 import { describe, expect, it } from 'vitest';
-import { CalibrationWalk, GamepadSticks, settingsFor, STANDARD_DEVICE } from '../../src/app/input/gamepadSticks.ts';
+import {
+  CalibrationWalk,
+  GamepadSticks,
+  settingsFor,
+  STANDARD_DEVICE,
+} from '../../src/app/input/gamepadSticks.ts';
 import { KeyboardSticks } from '../../src/app/input/keyboardSticks.ts';
 import { Seat } from '../../src/app/input/seat.ts';
 
@@ -118,7 +123,12 @@ describe('seat', () => {
     const lost: string[] = [];
     seat.onLost = (id) => lost.push(id);
     seat.advance(0.02);
-    expect(seat.state.value).toMatchObject({ source: 'keys', levelling: true, heightHold: true, device: 'pad' });
+    expect(seat.state.value).toMatchObject({
+      source: 'keys',
+      levelling: true,
+      heightHold: true,
+      device: 'pad',
+    });
     axes = [0, 0, 0.8, 0];
     seat.advance(0.02);
     expect(seat.state.value).toMatchObject({ source: 'gamepad', levelling: false, heightHold: false });

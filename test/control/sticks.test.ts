@@ -59,7 +59,9 @@ describe('stick shaping', () => {
 
 describe('sticks file', () => {
   it('moves linearly between rows and holds at the ends', () => {
-    const track = parseSticks('# made by hand\nt_s, roll, pitch, yaw, throttle\n1, 0, 0, 0, 0.4\n2, 1, -1, 0.5, 0.6\n');
+    const track = parseSticks(
+      '# made by hand\nt_s, roll, pitch, yaw, throttle\n1, 0, 0, 0, 0.4\n2, 1, -1, 0.5, 0.6\n',
+    );
     const player = new StickPlayer(track);
     const at = (t: number) => {
       const into = { roll: 9, pitch: 9, yaw: 9, throttle: 9 };
@@ -79,7 +81,10 @@ describe('sticks file', () => {
     ['t_s,roll,pitch,yaw,throttle\n0,2,0,0,0\n', /row 1, roll: "2"; allowed: a number from -1 to 1/],
     ['t_s,roll,pitch,yaw,throttle\n0,0,0,0,NaN\n', /row 1, throttle: "NaN"/],
     ['t_s,roll,pitch,yaw,throttle\n0,0,0,0,1e308\n', /row 1, throttle: "1e308"/],
-    ['t_s,roll,pitch,yaw,throttle\n1,0,0,0,0\n0.5,0,0,0,0\n', /row 2, t_s: 0.5; allowed: a time after the row before, 1 s/],
+    [
+      't_s,roll,pitch,yaw,throttle\n1,0,0,0,0\n0.5,0,0,0,0\n',
+      /row 2, t_s: 0.5; allowed: a time after the row before, 1 s/,
+    ],
     ['t_s,roll,pitch,yaw,throttle\n0,0,0\n', /row 1, yaw: missing/],
   ])('refuses %j by row, column, value and what is allowed', (text, message) => {
     expect(() => parseSticks(text, 'sticks.csv')).toThrow(message);

@@ -71,10 +71,7 @@ export interface PadReading {
 }
 
 /** Settings kept for a device, or what can be assumed of it; `known` is false for an uncalibrated transmitter. */
-export function settingsFor(
-  kept: unknown,
-  standard: boolean,
-): { settings: DeviceSettings; known: boolean } {
+export function settingsFor(kept: unknown, standard: boolean): { settings: DeviceSettings; known: boolean } {
   const parsed = deviceSchema.safeParse(kept);
   if (parsed.success) return { settings: parsed.data, known: true };
   return { settings: STANDARD_DEVICE, known: standard };

@@ -123,7 +123,8 @@ export class Seat {
   private chooseSource(): void {
     const { source, device } = this.state.value;
     const { pad } = this;
-    const padMoves = device !== null && Math.max(Math.abs(pad.roll), Math.abs(pad.pitch), Math.abs(pad.yaw)) > WAKE;
+    const padMoves =
+      device !== null && Math.max(Math.abs(pad.roll), Math.abs(pad.pitch), Math.abs(pad.yaw)) > WAKE;
     let next: Source = source;
     if (this.left.active || this.right.active) next = 'touch';
     else if (this.keys.busy) next = 'keys';

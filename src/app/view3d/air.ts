@@ -48,7 +48,14 @@ export class AirModel {
   }
 
   /** Moves with wind `velocity` (three's axes) around the craft at `centre`. */
-  update(centre: Vector3, velocity: Vector3, reach: number, dt_s: number, streaks: boolean, arrow: boolean): void {
+  update(
+    centre: Vector3,
+    velocity: Vector3,
+    reach: number,
+    dt_s: number,
+    streaks: boolean,
+    arrow: boolean,
+  ): void {
     const speed = velocity.length();
     this.streaks.visible = streaks && speed > 0.3;
     if (this.streaks.visible) this.moveStreaks(centre, velocity, dt_s);

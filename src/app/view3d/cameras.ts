@@ -1,5 +1,6 @@
 /** Four ways to look: chase, on board, from the pilot's standing place, free. */
-import { PerspectiveCamera, Quaternion, Vector3 } from 'three';
+import type { Quaternion} from 'three';
+import { PerspectiveCamera, Vector3 } from 'three';
 import { toThree } from './axes.ts';
 
 export type CameraName = 'chase' | 'onboard' | 'pilot' | 'free';
@@ -55,7 +56,10 @@ export class CameraRig {
     let fov = FOV_DEG;
     if (this.name === 'onboard') {
       camera.up.set(0, 1, 0).applyQuaternion(attitude);
-      camera.position.copy(position).addScaledVector(forward, reach * 0.62).addScaledVector(camera.up, reach * 0.16);
+      camera.position
+        .copy(position)
+        .addScaledVector(forward, reach * 0.62)
+        .addScaledVector(camera.up, reach * 0.16);
       look.copy(camera.position).addScaledVector(forward, 10).addScaledVector(camera.up, -1);
       fov = 78;
     } else if (this.name === 'pilot') {

@@ -3,7 +3,17 @@
  * things from far to near, each thing's own faces from far to near. Faces are clipped at the near plane,
  * shaded by one sun, and faded into the sky with distance.
  */
-import { Color, LineSegments, Matrix4, Mesh, Vector3, type Material, type Object3D, type PerspectiveCamera, type Scene } from 'three';
+import {
+  Color,
+  LineSegments,
+  Matrix4,
+  Mesh,
+  Vector3,
+  type Material,
+  type Object3D,
+  type PerspectiveCamera,
+  type Scene,
+} from 'three';
 import { LAYER_FLAT, LAYER_GROUND, LAYER_THINGS } from './siteModel.ts';
 
 const SUN = new Vector3(0.45, 0.82, 0.35).normalize();
@@ -105,7 +115,8 @@ export class CanvasPainter {
     const lit = material.type === 'MeshLambertMaterial';
     const both = material.side === 2;
     for (let i = 0; i < count; i += 3) {
-      const [ia, ib, ic] = index === null ? [i, i + 1, i + 2] : [index.getX(i), index.getX(i + 1), index.getX(i + 2)];
+      const [ia, ib, ic] =
+        index === null ? [i, i + 1, i + 2] : [index.getX(i), index.getX(i + 1), index.getX(i + 2)];
       this.a.fromBufferAttribute(position, ia).applyMatrix4(this.toView);
       this.b.fromBufferAttribute(position, ib).applyMatrix4(this.toView);
       this.c.fromBufferAttribute(position, ic).applyMatrix4(this.toView);

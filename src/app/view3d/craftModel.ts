@@ -38,7 +38,9 @@ export class CraftModel {
 
   constructor(build: Build, palette: ViewPalette) {
     const com = build.airframe.centreOfMass_m;
-    const rotors = CORNERS.map((corner) => build.rotors.find((one) => one.corner === corner) ?? build.rotors[0]);
+    const rotors = CORNERS.map(
+      (corner) => build.rotors.find((one) => one.corner === corner) ?? build.rotors[0],
+    );
     this.spins = rotors.map((rotor) => (rotor.spin === 'cw' ? 1 : -1));
     const radius = build.propeller.diameter_m / 2;
     this.reach_m = Math.max(...rotors.map((r) => Math.hypot(r.position_m[0], r.position_m[1]))) + radius;
@@ -132,7 +134,13 @@ export class CraftModel {
   }
 
   /** Rotor speeds rad/s, thrusts N, flags; `dt_s` since the last call. */
-  update(speeds: ArrayLike<number>, thrusts: ArrayLike<number>, dt_s: number, arrows: boolean, loaded: boolean): void {
+  update(
+    speeds: ArrayLike<number>,
+    thrusts: ArrayLike<number>,
+    dt_s: number,
+    arrows: boolean,
+    loaded: boolean,
+  ): void {
     for (let i = 0; i < 4; i++) {
       const speed = Math.abs(speeds[i]);
       // Clockwise seen from above is a negative turn about three's y.

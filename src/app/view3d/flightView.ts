@@ -2,6 +2,8 @@
  * The view of a flight: scene, craft, air, cameras and one of two renderers. With WebGL (also in software) the
  * resolution adapts so that the rate holds; without any WebGL a 2D canvas draws the same scene.
  */
+import type {
+  Group} from 'three';
 import {
   BufferAttribute,
   BufferGeometry,
@@ -9,7 +11,6 @@ import {
   Color,
   DirectionalLight,
   Fog,
-  Group,
   HemisphereLight,
   LineBasicMaterial,
   LineSegments,

@@ -46,7 +46,14 @@ export function paletteOf(theme: ViewTheme, tone: Scene['ground']['tone']): View
         wind: 0x35586b,
         shadow: 0x1b2427,
         pole: 0x1b2427,
-        solids: { wall: 0xc2b9a6, pier: 0xa9a294, deck: 0x8f8a7e, rock: 0xb5a993, water: 0x9fb8c2, floor: 0xbda67d },
+        solids: {
+          wall: 0xc2b9a6,
+          pier: 0xa9a294,
+          deck: 0x8f8a7e,
+          rock: 0xb5a993,
+          water: 0x9fb8c2,
+          floor: 0xbda67d,
+        },
         sun: 0xffffff,
         shade: 0xb9c0b4,
       }
@@ -65,7 +72,14 @@ export function paletteOf(theme: ViewTheme, tone: Scene['ground']['tone']): View
         wind: 0x9db9c4,
         shadow: 0x000000,
         pole: 0xe6e2d6,
-        solids: { wall: 0x59605f, pier: 0x666a66, deck: 0x4c5455, rock: 0x5b564d, water: 0x24404b, floor: 0x54493a },
+        solids: {
+          wall: 0x59605f,
+          pier: 0x666a66,
+          deck: 0x4c5455,
+          rock: 0x5b564d,
+          water: 0x24404b,
+          floor: 0x54493a,
+        },
         sun: 0xfff6e6,
         shade: 0x4a5a60,
       };

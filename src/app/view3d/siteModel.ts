@@ -1,4 +1,6 @@
 /** The site: ground with a grid that fades, solids with quiet edges, the pilot's place. */
+import type {
+  Vector3} from 'three';
 import {
   BoxGeometry,
   BufferAttribute,
@@ -11,8 +13,7 @@ import {
   Mesh,
   MeshBasicMaterial,
   MeshLambertMaterial,
-  PlaneGeometry,
-  Vector3,
+  PlaneGeometry
 } from 'three';
 import type { Scene } from '../../craft/scene.ts';
 import { toThree } from './axes.ts';
@@ -51,7 +52,10 @@ export function siteModel(scene: Scene, palette: ViewPalette): Group {
     mesh.userData.layer = water ? LAYER_FLAT : LAYER_THINGS;
     group.add(mesh);
     if (!water) {
-      const edges = new LineSegments(new EdgesGeometry(geometry), new LineBasicMaterial({ color: palette.edge }));
+      const edges = new LineSegments(
+        new EdgesGeometry(geometry),
+        new LineBasicMaterial({ color: palette.edge }),
+      );
       mesh.add(edges);
     }
   }

@@ -4,7 +4,14 @@ import type { Problem } from '../../craft/problem.ts';
 import type { Start, Stopped } from '../../flight/flight.ts';
 import type { Sticks } from '../../flight/pilot.ts';
 import { SIGNAL_NAMES, signalIndex } from '../../flight/signals.ts';
-import { createRing, firstRowAfter, oldestRow, pushRow, truncateRing, type SignalRing } from '../plots/ring.ts';
+import {
+  createRing,
+  firstRowAfter,
+  oldestRow,
+  pushRow,
+  truncateRing,
+  type SignalRing,
+} from '../plots/ring.ts';
 import type { ViewFrame } from '../view3d/flightView.ts';
 import type { FlightSettings, FromWorker, Speed, TickStats, ToWorker } from './protocol.ts';
 

@@ -65,7 +65,12 @@ export function ReadOut(props: { session: FlightSession; view: () => FlightView 
   return (
     <dl class="fly-read" ref={host}>
       {CELLS.map(([name, unit]) => (
-        <div key={name} title={name === 'activity' ? flyTexts.activityHint : name === 'heat' ? flyTexts.heatHint : undefined}>
+        <div
+          key={name}
+          title={
+            name === 'activity' ? flyTexts.activityHint : name === 'heat' ? flyTexts.heatHint : undefined
+          }
+        >
           <dt>{words[name]}</dt>
           <dd>
             <b>—</b> <span class="unit">{imperial ? unit.replace(/^m/, 'ft') : unit}</span>

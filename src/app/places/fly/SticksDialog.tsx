@@ -134,7 +134,11 @@ function DeviceFields(props: { settings: DeviceSettings; keep: (settings: Device
           }
         />
       ))}
-      <Toggle label={words.stays} on={settings.throttleStays} onChange={(throttleStays) => keep({ ...settings, throttleStays })} />
+      <Toggle
+        label={words.stays}
+        on={settings.throttleStays}
+        onChange={(throttleStays) => keep({ ...settings, throttleStays })}
+      />
     </div>
   );
 }

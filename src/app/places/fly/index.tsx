@@ -41,7 +41,10 @@ export default function Fly() {
   const [view, setView] = useState<FlightView | null>(null);
   const [axis, setAxis] = useState<AxisName>('roll');
   const [dialog, setDialog] = useState<'sticks' | 'keys' | null>(null);
-  const reading = useMemo(() => signal<CornerReading>({ command: [0, 0, 0, 0], saturated: [0, 0, 0, 0] }), []);
+  const reading = useMemo(
+    () => signal<CornerReading>({ command: [0, 0, 0, 0], saturated: [0, 0, 0, 0] }),
+    [],
+  );
   const build = store.build.value;
   const lanes = useMemo(() => {
     const full = build.battery.cells * 4.25;
@@ -61,7 +64,13 @@ export default function Fly() {
     return () => document.removeEventListener('visibilitychange', away);
   }, [session]);
   useEffect(
-    () => flightKeys(session, () => view, dialog !== null, () => setDialog('keys')),
+    () =>
+      flightKeys(
+        session,
+        () => view,
+        dialog !== null,
+        () => setDialog('keys'),
+      ),
     [session, view, dialog],
   );
 
@@ -120,7 +129,12 @@ function Toolbar(props: {
   const build = useStore().build.value;
   return (
     <div class="fly-bar" role="toolbar" aria-label={words.view}>
-      <Button primary={!seat.armed} pressed={seat.armed} title={words.armHint} onClick={() => session.toggleArmed(performance.now())}>
+      <Button
+        primary={!seat.armed}
+        pressed={seat.armed}
+        title={words.armHint}
+        onClick={() => session.toggleArmed(performance.now())}
+      >
         {seat.armed ? words.disarm : words.arm}
       </Button>
       <Button title={words.restartHint} onClick={() => session.restart()}>
@@ -140,7 +154,12 @@ function Toolbar(props: {
             {words.speeds[one]}
           </Button>
         ))}
-        <Button quiet title={words.tickHint} disabled={speed !== 0} onClick={() => session.client.singleTick()}>
+        <Button
+          quiet
+          title={words.tickHint}
+          disabled={speed !== 0}
+          onClick={() => session.client.singleTick()}
+        >
           {words.tick}
         </Button>
       </span>

@@ -21,7 +21,11 @@ function rateLane(axis: AxisName): TapeLane {
 }
 
 /** All lanes, with the terms of `axis`. */
-export function flightLanes(axis: AxisName, escRange: readonly [number, number], volts: readonly [number, number]): TapeLane[] {
+export function flightLanes(
+  axis: AxisName,
+  escRange: readonly [number, number],
+  volts: readonly [number, number],
+): TapeLane[] {
   return [
     rateLane('roll'),
     rateLane('pitch'),

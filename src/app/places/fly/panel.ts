@@ -17,7 +17,12 @@ const GAIN_KEYS = [
 ] as const;
 
 /** Builds the panel in `host`; returns the end of it. */
-export function buildPanel(host: HTMLElement, store: Store, session: FlightSession, shows: ViewShows): () => void {
+export function buildPanel(
+  host: HTMLElement,
+  store: Store,
+  session: FlightSession,
+  shows: ViewShows,
+): () => void {
   const gui = new GUI({ container: host, title: words.title, width: host.clientWidth });
   const ends = [
     ...AXES.map((axis) => gainsFolder(gui, store, axis)),
@@ -47,7 +52,10 @@ function gainsFolder(gui: GUI, store: Store, axis: AxisName): () => void {
     values[key] = store.gains.value.axes[axis][key];
     const saved = store.savedGains.value.axes[axis][key];
     // A slider from nothing to four times what is saved; the field takes anything the file allows.
-    const top = Math.max(4 * Math.abs(saved), { p_us_per_dps: 2, i_us_per_deg: 10, d_us_per_dps2: 0.05, feedforward_us_per_dps: 1 }[key]);
+    const top = Math.max(
+      4 * Math.abs(saved),
+      { p_us_per_dps: 2, i_us_per_deg: 10, d_us_per_dps2: 0.05, feedforward_us_per_dps: 1 }[key],
+    );
     folder
       .add(values, key, 0, top)
       .name(name)
@@ -80,14 +88,24 @@ function filtersFolder(gui: GUI, store: Store): () => void {
     };
   };
   const values = read();
-  const set = (change: Partial<Gains>, label: string) => store.setGains((gains) => ({ ...gains, ...change }), label);
-  folder.add(values, 'dCut', 0, 400, 1).name(words.dCut).onChange((v: number) => set({ derivativeLowPass_Hz: v }, words.dCut));
-  folder.add(values, 'gyroCut', 0, 400, 1).name(words.gyroCut).onChange((v: number) => set({ gyroLowPass_Hz: v }, words.gyroCut));
+  const set = (change: Partial<Gains>, label: string) =>
+    store.setGains((gains) => ({ ...gains, ...change }), label);
+  folder
+    .add(values, 'dCut', 0, 400, 1)
+    .name(words.dCut)
+    .onChange((v: number) => set({ derivativeLowPass_Hz: v }, words.dCut));
+  folder
+    .add(values, 'gyroCut', 0, 400, 1)
+    .name(words.gyroCut)
+    .onChange((v: number) => set({ gyroLowPass_Hz: v }, words.gyroCut));
   folder
     .add(values, 'loop', [125, 250, 400, 500, 1000, 2000, 4000, 8000])
     .name(words.loop)
     .onChange((v: number) => set({ loop_Hz: v }, words.loop));
-  folder.add(values, 'delay', 0, 10, 0.1).name(words.delay).onChange((v: number) => set({ computeDelay_s: v / 1000 }, words.delay));
+  folder
+    .add(values, 'delay', 0, 10, 0.1)
+    .name(words.delay)
+    .onChange((v: number) => set({ computeDelay_s: v / 1000 }, words.delay));
   folder
     .add(values, 'on', ['measurement', 'error'])
     .name(words.on)
@@ -98,7 +116,11 @@ function filtersFolder(gui: GUI, store: Store): () => void {
 
 function airFolder(gui: GUI, store: Store, session: FlightSession): () => void {
   const folder = gui.addFolder(words.air);
-  const gust = { peak: 6, now: () => session.gustNow(gust.peak), siteWind: () => store.setWind(store.scene.value.wind, words.siteWind) };
+  const gust = {
+    peak: 6,
+    now: () => session.gustNow(gust.peak),
+    siteWind: () => store.setWind(store.scene.value.wind, words.siteWind),
+  };
   const read = () => {
     const wind = store.wind.value;
     return {
@@ -148,7 +170,10 @@ function airFolder(gui: GUI, store: Store, session: FlightSession): () => void {
     .add(values, 'w20', 0, 23, 0.1)
     .name(words.w20)
     .onChange((v: number) =>
-      store.setWind((wind) => ({ ...wind, turbulence: { ...wind.turbulence, windAt20ft_mps: v } }), words.w20),
+      store.setWind(
+        (wind) => ({ ...wind, turbulence: { ...wind.turbulence, windAt20ft_mps: v } }),
+        words.w20,
+      ),
     );
   folder.add(gust, 'peak', 0, 20, 0.5).name(words.gust);
   folder.add(gust, 'now').name(words.gustNow);
@@ -161,7 +186,10 @@ function noiseFolder(gui: GUI, session: FlightSession): () => void {
   const set = (key: keyof typeof values) => (value: unknown) => session.change({ [key]: value });
   folder.add(values, 'noiseScale', 0, 10, 0.1).name(words.noiseScale).onChange(set('noiseScale'));
   folder.add(values, 'vibrationScale', 0, 10, 0.1).name(words.vibration).onChange(set('vibrationScale'));
-  folder.add(values, 'weakCorner', ['none', ...CORNERS]).name(words.weak).onChange(set('weakCorner'));
+  folder
+    .add(values, 'weakCorner', ['none', ...CORNERS])
+    .name(words.weak)
+    .onChange(set('weakCorner'));
   folder.add(values, 'weakShare', 0.5, 1, 0.01).name(words.weakShare).onChange(set('weakShare'));
   folder.add(values, 'late_ms', 0, 20, 0.1).name(words.late).onChange(set('late_ms'));
   folder.add(values, 'seed', 0, 9999, 1).name(words.seed).onFinishChange(set('seed'));

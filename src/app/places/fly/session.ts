@@ -62,7 +62,8 @@ export class FlightSession {
         topic: 'fly:refused',
       });
     };
-    this.client.onStalled = (away_s) => store.notices.tell('info', flyTexts.stalled(away_s), { topic: 'fly:stalled' });
+    this.client.onStalled = (away_s) =>
+      store.notices.tell('info', flyTexts.stalled(away_s), { topic: 'fly:stalled' });
     this.client.onBegan = () => {
       this.at_s.value = null;
     };

@@ -57,9 +57,11 @@ export const flyTexts = {
   },
   termsAxis: 'terms',
   armFirst: 'Space arms the motors. Then hold W to lift.',
-  armedKeys: 'W S climb and sink · arrows tilt · A D turn · Shift harder · Space stops the motors on the ground',
+  armedKeys:
+    'W S climb and sink · arrows tilt · A D turn · Shift harder · Space stops the motors on the ground',
   disarmInAir: 'Press Space again to stop the motors in the air.',
-  struck: (corners: string) => `Propeller struck at ${corners}: that motor is off. U sets the craft upright, Backspace restarts.`,
+  struck: (corners: string) =>
+    `Propeller struck at ${corners}: that motor is off. U sets the craft upright, Backspace restarts.`,
   batteryLow: 'Battery below its cut-off under load: land.',
   lost: (id: string) => `${id} was unplugged: sticks neutral, throttle held, keys fly.`,
   uncalibrated: (id: string) => `${id} is not calibrated here: open Sticks before you rely on it.`,
