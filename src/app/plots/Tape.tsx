@@ -227,7 +227,7 @@ function writeValues(
   let n = 0;
   for (const lane of lanes) {
     for (const trace of lane.traces) {
-      const value = row < 0 || ring.written === 0 ? NaN : ring.channels[trace.channel][row % ring.capacity];
+      const value = row < ring.first ? NaN : ring.channels[trace.channel][row % ring.capacity];
       cells[n++].textContent = readable(value, Math.abs(value) >= 100 ? 4 : 3);
     }
   }

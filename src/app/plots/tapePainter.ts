@@ -5,7 +5,7 @@
  */
 import type { Palette } from '../store/theme.ts';
 import { colourOf, dashOf, HATCH_PX, hatchPattern, type TraceAxis } from './lineStyle.ts';
-import { firstRowAfter, newestTime_s, oldestRow, type SignalRing } from './ring.ts';
+import { firstRowAfter, newestTime_s, type SignalRing } from './ring.ts';
 
 export interface TapeTrace {
   readonly label: string;
@@ -240,7 +240,7 @@ export class TapePainter {
   private columnIsOn(ring: SignalRing, channels: readonly number[], k: number): boolean {
     const first = this.starts[k];
     // A bin without a row of its own shows the row before it.
-    const from = this.starts[k + 1] > first ? first : Math.max(oldestRow(ring), first - 1);
+    const from = this.starts[k + 1] > first ? first : Math.max(ring.first, first - 1);
     const to = Math.min(ring.written, Math.max(this.starts[k + 1], from + 1));
     if (first >= ring.written && this.starts[k + 1] >= ring.written && to <= from) return false;
     for (let row = from; row < to; row++) {
@@ -321,7 +321,7 @@ export class TapePainter {
 
   /** Value at `time_s`, between row − 1 and `row`; NaN outside what is kept. */
   private valueAt(ring: SignalRing, values: Float32Array, row: number, time_s: number): number {
-    if (row >= ring.written || row <= oldestRow(ring)) return NaN;
+    if (row >= ring.written || row <= ring.first) return NaN;
     const before = (row - 1) % ring.capacity;
     const after = row % ring.capacity;
     const t0 = ring.time_s[before];

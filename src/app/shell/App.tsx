@@ -1,9 +1,9 @@
 import { useEffect, useState } from 'preact/hooks';
 import { PLACE_LIST } from '../places/registry.ts';
 import { useStore } from '../store/context.ts';
+import { NoticeStack } from '../widgets/NoticeStack.tsx';
 import { HelpDialog } from './HelpDialog.tsx';
 import { handleKey } from './keys.ts';
-import { Notices } from './Notices.tsx';
 import { PlaceFrame } from './PlaceFrame.tsx';
 import { Rail } from './Rail.tsx';
 import { hashOf, placeInHash } from './route.ts';
@@ -69,7 +69,7 @@ export function App() {
       <main class="place" id="place" tabIndex={-1} aria-label={store.texts.places[here]}>
         <PlaceFrame key={here} place={place} />
       </main>
-      <Notices />
+      <NoticeStack />
       {fileOver ? <div class="aim-drop">{store.texts.drop.over}</div> : null}
       {dialog === 'work' ? <WorkDialog onClose={close} /> : null}
       {dialog === 'help' ? <HelpDialog onClose={close} /> : null}

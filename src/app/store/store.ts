@@ -28,6 +28,9 @@ import { JobList } from './jobs.ts';
 import { NoticeList } from './notices.ts';
 import { UndoHistory } from './undo.ts';
 
+/** Problems of a file shown at once. */
+const MOST_PROBLEMS = 5;
+
 /** Saved gain sets kept a craft and side. */
 const MOST_VERSIONS = 100;
 
@@ -324,8 +327,12 @@ export class Store {
   }
 
   tellInputError(error: InputError): void {
+    const lines = error.problems
+      .slice(0, MOST_PROBLEMS)
+      .map((problem) => describeProblem(error.file, problem));
+    const more = error.problems.length - lines.length;
     this.notices.tell('error', this.texts.notices.refused(error.file), {
-      details: error.problems.slice(0, 8).map((problem) => describeProblem(error.file, problem)),
+      details: more > 0 ? [...lines, this.texts.notices.more(more)] : lines,
       topic: `input:${error.file}`,
     });
   }

@@ -41,6 +41,12 @@ export const en = {
     redoShort: 'Redo',
     unnamed: 'unnamed',
   },
+  offline: {
+    failed: 'This browser did not keep Gustbench for offline use; it works while the network is there.',
+    newVersion: 'A new version of Gustbench is ready.',
+    take: 'Take it now',
+    afterLanding: 'Motors are armed: take the new version after landing.',
+  },
   save: {
     pending: 'saving …',
     saved: 'saved',

@@ -2,6 +2,7 @@ import type { ComponentChildren } from 'preact';
 import { useEffect, useId, useRef } from 'preact/hooks';
 import { en } from '../texts/en.ts';
 import { Button } from './Button.tsx';
+import { NoticeStack } from './NoticeStack.tsx';
 
 /** A modal sheet over the page; Escape or Close ends it, focus goes back to where it was. */
 export function Dialog(props: {
@@ -37,7 +38,10 @@ export function Dialog(props: {
           {en.dialog.close}
         </Button>
       </header>
-      <div class="dialog-body">{props.children}</div>
+      <div class="dialog-body">
+        <NoticeStack />
+        {props.children}
+      </div>
     </dialog>
   );
 }

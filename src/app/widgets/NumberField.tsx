@@ -28,6 +28,7 @@ export interface NumberFieldProps {
 
 const SLIDER_STEPS = 1000;
 const FINE = 0.1;
+const DIGITS = 6;
 
 /**
  * A number that a person sets: slider, field and arrow keys together, unit in lighter ink, limits said.
@@ -43,7 +44,8 @@ export function NumberField(props: NumberFieldProps) {
   const { unit, factor } = shownUnit(props.unit ?? '', store.settings.value.units);
   const range = sliderRange(props);
   const step = props.step ?? niceStep((range.high - range.low) / 100);
-  const limits = words.limits(readable(min * factor), readable(max * factor), unit);
+  const ends = [min, max].map((end) => ({ kept: end, shown: readable(end * factor, DIGITS) }));
+  const limits = words.limits(ends[0].shown, ends[1].shown, unit);
 
   const set = (next: number): void => {
     const refusal = props.onChange(Math.min(max, Math.max(min, next)));
@@ -52,18 +54,16 @@ export function NumberField(props: NumberFieldProps) {
   };
   const settle = (text: string): void => {
     const shown = parseNumber(text);
-    if (shown === null) setMessage(words.notNumber(text, limits));
-    else if (
-      shown / factor < min * (1 - 1e-12 * Math.sign(min)) ||
-      shown / factor > max * (1 + 1e-12 * Math.sign(max))
-    ) {
-      setMessage(words.outside(readable(shown), limits));
-    } else {
-      store.sealEdit();
-      set(shown / factor);
-      return;
-    }
+    // The limits as said are taken, though rounding may put them a hair outside.
+    const end = ends.find((one) => parseNumber(one.shown) === shown);
+    const next = shown === null ? null : (end?.kept ?? shown / factor);
     setTyped(null);
+    if (next === null) setMessage(words.notNumber(text, limits));
+    else if (next < min || next > max) setMessage(words.outside(text.trim(), limits));
+    else {
+      store.sealEdit();
+      set(next);
+    }
   };
   const nudge = (direction: number, fine: boolean): void => {
     const by = (fine ? step * FINE : step) * direction;
@@ -95,7 +95,7 @@ export function NumberField(props: NumberFieldProps) {
   const hint = [
     props.hint,
     limits,
-    saved === undefined ? null : words.saved(readable(saved * factor, 6)),
+    saved === undefined ? null : words.saved(readable(saved * factor, DIGITS)),
     words.fine,
   ]
     .filter((line) => line)
@@ -110,7 +110,7 @@ export function NumberField(props: NumberFieldProps) {
         <input
           type="range"
           aria-label={props.label}
-          aria-valuetext={`${readable(value * factor, 6)} ${unit}`}
+          aria-valuetext={`${readable(value * factor, DIGITS)} ${unit}`}
           min={0}
           max={SLIDER_STEPS}
           step="any"
@@ -132,7 +132,7 @@ export function NumberField(props: NumberFieldProps) {
           inputMode="decimal"
           autocomplete="off"
           spellcheck={false}
-          value={typed ?? readable(value * factor, 6)}
+          value={typed ?? readable(value * factor, DIGITS)}
           disabled={props.disabled}
           aria-invalid={message !== null}
           aria-describedby={message === null ? undefined : `${id}-message`}

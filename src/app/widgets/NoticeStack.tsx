@@ -1,8 +1,8 @@
 import { useStore } from '../store/context.ts';
-import { NoticeBox } from '../widgets/Notice.tsx';
+import { NoticeBox } from './Notice.tsx';
 
-/** The stack of messages in the corner; read aloud as they come. */
-export function Notices() {
+/** The messages of the moment; read aloud as they come. In the page's corner, or inside the open dialog. */
+export function NoticeStack() {
   const store = useStore();
   return (
     <div class="notices" role="log" aria-live="polite" aria-label={store.texts.notices.label}>
