@@ -4,7 +4,11 @@
  * that was put in between its neighbours.
  */
 
-/** Plant of one axis: rate/u = K e^(−sTd)/(s(τs+1)). */
+/**
+ * Plant of one axis, rate/u = K e^(−sTd)/(s(τs+1)), with two terms that are 0 unless the log asks for them:
+ * K e^(−sTd) (1 + lead·s)/((s + damping)(τs+1)). The lead is the rotors' own reaction about yaw, the damping
+ * that of the rotors' inflow in roll and pitch.
+ */
 export interface PlantParameters {
   /** K, deg/s² per µs of axis command. */
   readonly gain_dps2_per_us: number;
@@ -12,6 +16,8 @@ export interface PlantParameters {
   readonly lag_s: number;
   /** Td, s. */
   readonly delay_s: number;
+  readonly lead_s?: number;
+  readonly damping_per_s?: number;
 }
 
 export interface AxisPiece {

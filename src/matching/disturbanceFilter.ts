@@ -6,7 +6,7 @@
  * ed., 13.4; for the likelihood, Schweppe 1965).
  *
  * States: rate w, disturbance d, constant acceleration b, and a, the acceleration caused by the error of
- * commands that were put in for lost rows:  w' = d + b + a,  d' = −λ d + noise q,  b' = 0,  a' = −a/τ.
+ * commands that were put in for lost rows:  w' = −c w + d + b + a (c: damping),  d' = −λ d + noise q,  b' = 0,  a' = −a/τ.
  */
 import type { AxisPiece } from './axisData.ts';
 
@@ -17,6 +17,14 @@ export interface NoiseParameters {
   readonly drive: number;
   /** λ, 1/s: how fast the disturbance forgets. */
   readonly decay_per_s: number;
+}
+
+/** What of the plant the filter needs: damping for all that acts on the rate, the rest for put-in commands. */
+export interface FilterPlant {
+  readonly gain: number;
+  readonly lag_s: number;
+  readonly delay_s: number;
+  readonly damping_per_s: number;
 }
 
 const START_RATE_DPS = 1e4;
@@ -33,7 +41,8 @@ export class DisturbanceFilter {
   private readonly gainD: Float64Array;
   private readonly gainB: Float64Array;
   private readonly gainA: Float64Array;
-  private readonly step: Float64Array;
+  private readonly keepW: Float64Array;
+  private readonly throughB: Float64Array;
   private readonly throughD: Float64Array;
   private readonly keepD: Float64Array;
   private readonly throughA: Float64Array;
@@ -49,7 +58,8 @@ export class DisturbanceFilter {
     this.gainD = column();
     this.gainB = column();
     this.gainA = column();
-    this.step = column();
+    this.keepW = column();
+    this.throughB = column();
     this.throughD = column();
     this.keepD = column();
     this.throughA = column();
@@ -58,8 +68,9 @@ export class DisturbanceFilter {
   }
 
   /** Riccati recursion along the piece: fills gains and variances for these parameters. */
-  prepare(noise: NoiseParameters, gain: number, lag_s: number, delay_s: number): void {
-    this.placeErrors(delay_s);
+  prepare(noise: NoiseParameters, plant: FilterPlant): void {
+    const { gain, lag_s, damping_per_s } = plant;
+    this.placeErrors(plant.delay_s);
     const { t_s, y_dps } = this.piece;
     const felt_us = this.felt_us;
     const { gyroVariance: R, drive: q, decay_per_s: lambda } = noise;
@@ -75,6 +86,8 @@ export class DisturbanceFilter {
     let pba = 0;
     let paa = 0;
     let h = -1;
+    let kept = 1;
+    let through = 0;
     let c = 0;
     let e = 1;
     let ca = 0;
@@ -90,6 +103,8 @@ export class DisturbanceFilter {
           const x = lambda * h;
           e = Math.exp(-x);
           c = x < 1e-5 ? h * (1 - x / 2) : (1 - e) / lambda;
+          kept = Math.exp(-damping_per_s * h);
+          through = h * (1 - (damping_per_s * h) / 2);
           ea = Math.exp(-h / lag_s);
           ca = lag_s * (1 - ea);
           if (x < SERIES_BELOW) {
@@ -103,12 +118,13 @@ export class DisturbanceFilter {
             qdd = (q * squared) / (2 * lambda);
           }
         }
-        // F P Fᵀ + Q with F: w += c d + h b + ca a, d *= e, a *= ea.
-        const rw = pww + c * pwd + h * pwb + ca * pwa;
-        const rd = pwd + c * pdd + h * pdb + ca * pda;
-        const rb = pwb + c * pdb + h * pbb + ca * pba;
-        const ra = pwa + c * pda + h * pba + ca * paa;
-        pww = rw + c * rd + h * rb + ca * ra + qww;
+        // F P Fᵀ + Q with F: w = kept w + c d + through b + ca a, d *= e, a *= ea. Damping acts little within a
+        // step: it is left out of c, ca and Q.
+        const rw = kept * pww + c * pwd + through * pwb + ca * pwa;
+        const rd = kept * pwd + c * pdd + through * pdb + ca * pda;
+        const rb = kept * pwb + c * pdb + through * pbb + ca * pba;
+        const ra = kept * pwa + c * pda + through * pba + ca * paa;
+        pww = kept * rw + c * rd + through * rb + ca * ra + qww;
         pwd = e * rd + qwd;
         pwb = rb;
         pwa = ea * ra;
@@ -124,7 +140,8 @@ export class DisturbanceFilter {
           paa += kick * kick;
         }
       }
-      this.step[k] = h;
+      this.keepW[k] = kept;
+      this.throughB[k] = through;
       this.throughD[k] = c;
       this.keepD[k] = e;
       this.throughA[k] = ca;
@@ -177,7 +194,8 @@ export class DisturbanceFilter {
    * Linear in the residual, so derivatives of the residual go through it as well.
    */
   innovations(residual: Float64Array, out: Float64Array): void {
-    const { gainW, gainD, gainB, gainA, step, throughD, keepD, throughA, keepA, variance } = this;
+    const { gainW, gainD, gainB, gainA, variance } = this;
+    const { keepW, throughB, throughD, keepD, throughA, keepA } = this;
     const n = residual.length;
     let w = 0;
     let d = 0;
@@ -185,7 +203,7 @@ export class DisturbanceFilter {
     let a = 0;
     for (let k = 0; k < n; k++) {
       if (k > 0) {
-        w += throughD[k] * d + step[k] * b + throughA[k] * a;
+        w = keepW[k] * w + throughD[k] * d + throughB[k] * b + throughA[k] * a;
         d *= keepD[k];
         a *= keepA[k];
       }
