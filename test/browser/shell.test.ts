@@ -92,7 +92,7 @@ describeInBrowser('The frame', (site) => {
       'bad.json',
       '{"format":"gustbench.build/1","name":"Bad","airframe":{"mass_kg":-3}}',
     );
-    const notice = page.locator('.notice.error');
+    const notice = page.locator('dialog .notice.error');
     await notice.waitFor();
     expect(await notice.innerText()).toContain('airframe.mass_kg');
     await opened.shot('shell-work-refused');
@@ -107,7 +107,7 @@ describeInBrowser('The frame', (site) => {
         mimeType: 'application/json',
         buffer: Buffer.from(junk),
       });
-      await page.locator('.notice.error', { hasText: 'junk.json' }).first().waitFor();
+      await page.locator('dialog .notice.error', { hasText: 'junk.json' }).waitFor();
     }
     await page.keyboard.press('Escape');
     expect(await page.locator('#top-craft option').allInnerTexts()).toEqual(['Sandpiper', 'Wren']);
@@ -147,7 +147,52 @@ describeInBrowser('The frame', (site) => {
     await context.close();
   });
 
+  test('a place that cannot be loaded says so, the others go on, and it loads later', async () => {
+    const opened = await site.open({
+      at: '#/measure',
+      expectedErrors: /carry-.*\.js|Failed to load resource/,
+    });
+    const { page } = opened;
+    await page.route('**/assets/carry-*.js', (route) => route.abort('failed'));
+    await page.keyboard.press('Alt+Digit6');
+    await page.getByRole('heading', { name: 'Carry could not be loaded' }).waitFor();
+    await opened.shot('shell-place-failed');
+    await page.keyboard.press('Alt+Digit2');
+    await page.waitForFunction(() => document.title.startsWith('Shape'));
+    await page.unroute('**/assets/carry-*.js');
+    await page.keyboard.press('Alt+Digit6');
+    await page.waitForFunction(() => document.querySelector('.state.failed') === null);
+    await opened.close();
+  });
+
+  test('an error that nothing caught becomes a message and the page goes on', async () => {
+    const opened = await site.open({ at: '#/carry', expectedErrors: /made up for this test/ });
+    const { page } = opened;
+    await page.evaluate(() => {
+      setTimeout(() => {
+        throw new Error('made up for this test');
+      });
+    });
+    await page.locator('.notice.error', { hasText: 'made up for this test' }).waitFor();
+    await page.keyboard.press('Alt+Digit2');
+    await page.waitForFunction(() => document.title.startsWith('Shape'));
+    await opened.close();
+  });
+
   for (const theme of ['light', 'dark'] as const) {
+    test(`nothing serious by axe in any place, ${theme}`, async () => {
+      const opened = await site.open({ theme });
+      const { page } = opened;
+      for (const [i, place] of PLACES.entries()) {
+        await page.keyboard.press(`Alt+Digit${i + 1}`);
+        await page.waitForFunction((wanted) => document.title.startsWith(wanted), title(place));
+        await page.waitForTimeout(700);
+        expect(await accessibilityFaults(page), place).toEqual([]);
+        await opened.shot(`place-${place}-${theme}`);
+      }
+      await opened.close();
+    });
+
     for (const [width, height] of [
       [1440, 900],
       [1024, 768],

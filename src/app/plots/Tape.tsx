@@ -166,6 +166,7 @@ function runTape(
   const paper = canvas.parentElement ?? host;
   let sized = false;
   let last = '';
+  let unread = true;
   let readOutAt_ms = 0;
   let frame = 0;
   const size = () => {
@@ -184,10 +185,13 @@ function runTape(
     const { ring, span_s, at_s } = latest.current;
     const end_s = endOf(latest.current);
     const state = `${end_s} ${span_s} ${ring.written} ${ring.epoch} ${hover_s.current}`;
-    if (state === last) return;
-    last = state;
-    if (painter.draw(ring, { end_s, span_s }, hover_s.current)) placeGutter(gutter, painter);
-    if (now_ms - readOutAt_ms < READ_OUT_MS) return;
+    if (state !== last) {
+      last = state;
+      unread = true;
+      if (painter.draw(ring, { end_s, span_s }, hover_s.current)) placeGutter(gutter, painter);
+    }
+    if (!unread || now_ms - readOutAt_ms < READ_OUT_MS) return;
+    unread = false;
     readOutAt_ms = now_ms;
     writeValues(gutter, lanes, ring, hover_s.current ?? end_s);
     paper.setAttribute('aria-valuemin', (oldestTime_s(ring) ?? 0).toFixed(2));

@@ -10,12 +10,14 @@ import { hashOf, placeInHash } from './route.ts';
 import { SettingsDialog } from './SettingsDialog.tsx';
 import { TopLine, type ShellDialog } from './TopLine.tsx';
 import { useFileDrop } from './useFileDrop.ts';
+import { useUncaught } from './useUncaught.ts';
 import { WorkDialog } from './WorkDialog.tsx';
 
 /** The frame that all places live in. */
 export function App() {
   const store = useStore();
   const [dialog, setDialog] = useState<ShellDialog | null>(null);
+  useUncaught();
   const fileOver = useFileDrop();
   const here = store.place.value;
   const place = PLACE_LIST.find(({ name }) => name === here) ?? PLACE_LIST[0];

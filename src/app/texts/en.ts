@@ -105,6 +105,7 @@ export const en = {
     failedLoadText: 'The page may be offline, or a newer version was put in its place. Your work is kept.',
     tryAgain: 'Try again',
     reload: 'Reload the page',
+    uncaught: 'Something went wrong inside the page. Your work is kept; if things look odd, reload.',
     copyError: 'Copy the error',
     copied: 'Copied',
     stale: 'Out of date',
