@@ -5,6 +5,7 @@ import { act } from 'preact/test-utils';
 import { afterEach, beforeEach, describe, expect, test, vi } from 'vitest';
 import { handleKey, type KeyActions } from '../../src/app/shell/keys.ts';
 import { PlaceFrame } from '../../src/app/shell/PlaceFrame.tsx';
+import { TopLine } from '../../src/app/shell/TopLine.tsx';
 import { BenchContext } from '../../src/app/store/context.ts';
 import { firstDocument } from '../../src/app/store/demos.ts';
 import { Store } from '../../src/app/store/store.ts';
@@ -74,6 +75,50 @@ describe('a place that fails', () => {
     expect(root.textContent).toContain('could not be loaded');
     await press('Try again');
     expect(root.textContent).toBe('all is well');
+  });
+});
+
+describe('the top line', () => {
+  test('shows what is on the bench, marks unsaved gains, and stops background work', async () => {
+    const root = document.createElement('div');
+    const store = new Store(firstDocument());
+    const bench = {
+      store,
+      theme: startTheme(store.settings),
+      storage: null,
+      running: new Map<string, unknown>(),
+    };
+    await act(() => {
+      render(
+        <BenchContext.Provider value={bench}>
+          <TopLine open={() => undefined} />
+        </BenchContext.Provider>,
+        root,
+      );
+    });
+    const item = (name: string) => root.querySelector(`[data-item="${name}"]`)?.textContent;
+    expect([item('wind'), item('loop'), item('gains')]).toEqual([
+      'Windcalm',
+      'Loop400 Hz',
+      'GainsSandpiper first set',
+    ]);
+    let stopped = 0;
+    await act(() => {
+      store.setGains((g) => ({ ...g, loop_Hz: 500 }), 'loop');
+      store.setWind((w) => ({ ...w, mean_mps: 7 }), 'wind');
+      store.jobs.start('map', () => stopped++).progress(0.25);
+    });
+    expect([item('wind'), item('loop'), item('gains')]).toEqual([
+      'Wind7\u00a0m/s',
+      'Loop500 Hz',
+      'GainsSandpiper first set●',
+    ]);
+    expect(root.querySelector('.job')?.textContent).toContain('25 %');
+    const stop = root.querySelector('[aria-label="Stop: map"]');
+    if (!(stop instanceof HTMLButtonElement)) throw new Error('no stop');
+    await act(() => stop.click());
+    expect(stopped).toBe(1);
+    render(null, root);
   });
 });
 

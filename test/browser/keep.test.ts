@@ -4,7 +4,7 @@ import { RandomStream } from '../../src/math/random.ts';
 import { describeInBrowser } from './harness.ts';
 
 /** Rounds of edit, kill, reload; the full thousand by GUSTBENCH_ROUNDS=1000. */
-const ROUNDS = Number(process.env.GUSTBENCH_ROUNDS ?? 12);
+const ROUNDS = Number(process.env.GUSTBENCH_ROUNDS ?? 8);
 /** A save follows an edit within 300 ms: kills fall before, during and after it. */
 const LONGEST_WAIT_MS = 400;
 

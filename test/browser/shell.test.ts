@@ -204,7 +204,8 @@ describeInBrowser('The frame', (site) => {
         await savedNow(opened);
         expect(await accessibilityFaults(page)).toEqual([]);
         await opened.shot(`shell-${theme}-${width}`);
-        for (const key of ['KeyW', 'KeyH', 'KeyS']) {
+        // The dialogs are one column: the widest and the narrowest screen tell all.
+        for (const key of width === 1024 ? [] : ['KeyW', 'KeyH', 'KeyS']) {
           await page.keyboard.press(`Alt+${key}`);
           await page.waitForSelector('dialog[open]');
           expect(await accessibilityFaults(page)).toEqual([]);
