@@ -1,0 +1,253 @@
+/**
+ * The discrete rate loop of one axis: exact sampled plant, the gyro's own filters and the PID exactly as
+ * control/ratePid.ts computes them. One description serves the frequency response (each factor evaluated at
+ * z = e^{jωT}), the poles (transition matrix found by running the linear loop on unit states), the step and
+ * the noise.
+ */
+import { Matrix } from 'ml-matrix';
+import { biquadNotch, lowPass, type BiquadCoefficients } from '../control/filters.ts';
+import type { AxisName, Gains } from '../craft/gains.ts';
+import { complex, over, plus, polynomialAt, scaled, times, unit, type Complex } from './complex.ts';
+import { sampled, type ContinuousSystem, type SampledSystem } from './continuous.ts';
+
+export interface RateLoop {
+  readonly tick_s: number;
+  readonly plant: SampledSystem;
+  readonly p: number;
+  readonly i: number;
+  readonly d: number;
+  readonly ff: number;
+  readonly setpointWeight: number;
+  readonly derivativeOnError: boolean;
+  readonly gyroFilters: readonly BiquadCoefficients[];
+  readonly derivativeFilters: readonly BiquadCoefficients[];
+  /** Where each state of the closed loop stands. */
+  readonly layout: Layout;
+}
+
+interface Layout {
+  readonly size: number;
+  readonly plant: number;
+  readonly pastCommands: number;
+  readonly pastCommandCount: number;
+  readonly integral: number;
+  readonly lastError: number;
+  readonly lastDerivativeInput: number;
+  readonly gyroFilters: number;
+  readonly derivativeFilters: number;
+}
+
+/**
+ * The loop of `axis` around `system` (rate or gyro, deg/s, from axis command, µs). The gains' compute delay is
+ * added to the system's own.
+ */
+export function rateLoop(system: ContinuousSystem, gains: Gains, axis: AxisName): RateLoop {
+  const tick_s = 1 / gains.loop_Hz;
+  const plant = sampled({ ...system, delay_s: system.delay_s + gains.computeDelay_s }, tick_s);
+  const gyroLow = lowPass(gains.gyroLowPass_Hz, gains.gyroLowPassKind ?? 'first-order', gains.loop_Hz);
+  const notches = gains.notches.map((one) => biquadNotch(one.centre_Hz, one.q, gains.loop_Hz));
+  const derivativeLow = lowPass(
+    gains.derivativeLowPass_Hz,
+    gains.derivativeLowPassKind ?? 'first-order',
+    gains.loop_Hz,
+  );
+  const one = gains.axes[axis];
+  const loop = {
+    tick_s,
+    plant,
+    p: one.p_us_per_dps,
+    i: one.i_us_per_deg,
+    d: one.d_us_per_dps2,
+    ff: one.feedforward_us_per_dps,
+    setpointWeight: one.setpointWeight ?? 1,
+    derivativeOnError: gains.derivativeOn === 'error',
+    gyroFilters: gyroLow === null ? notches : [gyroLow, ...notches],
+    derivativeFilters: derivativeLow === null ? [] : [derivativeLow],
+  };
+  return { ...loop, layout: layoutOf(loop) };
+}
+
+function layoutOf(loop: Omit<RateLoop, 'layout'>): Layout {
+  const plant = 0;
+  const pastCommands = loop.plant.states;
+  const pastCommandCount = loop.plant.wholeTicks + 1;
+  const integral = pastCommands + pastCommandCount;
+  const gyroFilters = integral + 3;
+  const derivativeFilters = gyroFilters + 2 * loop.gyroFilters.length;
+  return {
+    size: derivativeFilters + 2 * loop.derivativeFilters.length,
+    plant,
+    pastCommands,
+    pastCommandCount,
+    integral,
+    lastError: integral + 1,
+    lastDerivativeInput: integral + 2,
+    gyroFilters,
+    derivativeFilters,
+  };
+}
+
+// --- Frequency response ---------------------------------------------------------------------------------
+
+function filterAt(filters: readonly BiquadCoefficients[], z: Complex): Complex {
+  let value = complex(1);
+  for (const f of filters) {
+    value = times(value, over(polynomialAt([f.b0, f.b1, f.b2], z), polynomialAt([1, f.a1, f.a2], z)));
+  }
+  return value;
+}
+
+/** A place on the unit circle: z, w = z − 1 (without cancellation near 1) and 1/z. */
+interface CirclePoint {
+  readonly theta: number;
+  readonly z: Complex;
+  readonly w: Complex;
+}
+
+function onCircle(theta: number): CirclePoint {
+  const half = Math.sin(theta / 2);
+  return { theta, z: unit(theta), w: complex(-2 * half * half, Math.sin(theta)) };
+}
+
+/** Coefficients lowest power first at `w`. */
+function risingAt(coefficients: Float64Array, w: Complex): Complex {
+  let re = 0;
+  let im = 0;
+  for (let k = coefficients.length - 1; k >= 0; k--) {
+    const next = re * w.re - im * w.im + coefficients[k];
+    im = re * w.im + im * w.re;
+    re = next;
+  }
+  return complex(re, im);
+}
+
+/** Plant output over command: (n0(w) + n1(w)/z) z^{−m} / d(w). */
+function plantAt(plant: SampledSystem, at: CirclePoint): Complex {
+  const now = risingAt(plant.numeratorNow, at.w);
+  const before = times(risingAt(plant.numeratorBefore, at.w), unit(-at.theta));
+  const ratio = over(plus(now, before), risingAt(plant.denominator, at.w));
+  return plant.wholeTicks === 0 ? ratio : times(ratio, unit(-at.theta * plant.wholeTicks));
+}
+
+/** Transfer of the controller from filtered rate to −u: P + I (T/2)(z+1)/(z−1) + D (z−1)/(zT) · low-pass. */
+function controllerAt(loop: RateLoop, at: CirclePoint): Complex {
+  const proportional = plus(complex(loop.p), derivativeAt(loop, at));
+  if (loop.i === 0) return proportional;
+  const integral = scaled(over(plus(at.z, complex(1)), at.w), (loop.i * loop.tick_s) / 2);
+  return plus(proportional, integral);
+}
+
+function derivativeAt(loop: RateLoop, at: CirclePoint): Complex {
+  if (loop.d === 0) return complex(0);
+  const difference = scaled(times(at.w, unit(-at.theta)), loop.d / loop.tick_s);
+  return times(difference, filterAt(loop.derivativeFilters, at.z));
+}
+
+/** Loop transfer L at `omega` rad/s, 0 < ω ≤ π/T. */
+export function openLoopAt(loop: RateLoop, omega: number): Complex {
+  const at = onCircle(omega * loop.tick_s);
+  return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
+}
+
+/** Setpoint to plant output at `omega`. */
+export function closedLoopAt(loop: RateLoop, omega: number): Complex {
+  const at = onCircle(omega * loop.tick_s);
+  const L = openLoopAt(loop, omega);
+  const onMeasurement = loop.derivativeOnError ? complex(0) : scaled(derivativeAt(loop, at), -1);
+  const forward = plus(
+    plus(controllerAt(loop, at), onMeasurement),
+    complex(loop.p * (loop.setpointWeight - 1) + loop.ff),
+  );
+  return over(times(plantAt(loop.plant, at), forward), plus(complex(1), L));
+}
+
+// --- Time domain ------------------------------------------------------------------------------------------
+
+/** Result of one linear tick besides the next state. */
+export interface TickOutput {
+  /** Plant output before the tick, deg/s. */
+  y: number;
+  /** Axis command, µs. */
+  u: number;
+}
+
+/** One tick of the unlimited loop: `state` to `next`, with setpoint and additive noise on the measured rate. */
+export function linearTick(
+  loop: RateLoop,
+  state: Float64Array,
+  setpoint: number,
+  noise: number,
+  next: Float64Array,
+  out: TickOutput,
+): void {
+  const { layout: at, plant, tick_s } = loop;
+  const n = plant.states;
+  let y = 0;
+  for (let j = 0; j < n; j++) y += plant.C[j] * state[at.plant + j];
+  const measured = runFilters(loop.gyroFilters, state, next, at.gyroFilters, y + noise);
+  const error = setpoint - measured;
+  const integral = state[at.integral] + loop.i * (tick_s / 2) * (error + state[at.lastError]);
+  const input = loop.derivativeOnError ? error : -measured;
+  const rawDerivative = (loop.d * (input - state[at.lastDerivativeInput])) / tick_s;
+  const derivative = runFilters(loop.derivativeFilters, state, next, at.derivativeFilters, rawDerivative);
+  const u = loop.p * (loop.setpointWeight * setpoint - measured) + integral + derivative + loop.ff * setpoint;
+  // Past commands, newest first: u_{k−1}, u_{k−2}, …; the plant takes u_{k−m} and u_{k−m−1}.
+  const m = plant.wholeTicks;
+  const newer = m === 0 ? u : state[at.pastCommands + m - 1];
+  const older = state[at.pastCommands + m];
+  for (let i = 0; i < n; i++) {
+    let sum = plant.now[i] * newer + plant.before[i] * older;
+    for (let j = 0; j < n; j++) sum += plant.transition[i * n + j] * state[at.plant + j];
+    next[at.plant + i] = sum;
+  }
+  for (let k = at.pastCommandCount - 1; k > 0; k--) next[at.pastCommands + k] = state[at.pastCommands + k - 1];
+  next[at.pastCommands] = u;
+  // Without integral gain there is no integrator, and no pole of its own at z = 1.
+  next[at.integral] = loop.i === 0 ? 0 : integral;
+  next[at.lastError] = error;
+  next[at.lastDerivativeInput] = input;
+  out.y = y;
+  out.u = u;
+}
+
+function runFilters(
+  filters: readonly BiquadCoefficients[],
+  state: Float64Array,
+  next: Float64Array,
+  at: number,
+  input: number,
+): number {
+  let x = input;
+  filters.forEach((f, k) => {
+    const y = f.b0 * x + state[at + 2 * k];
+    next[at + 2 * k] = f.b1 * x - f.a1 * y + state[at + 2 * k + 1];
+    next[at + 2 * k + 1] = f.b2 * x - f.a2 * y;
+    x = y;
+  });
+  return x;
+}
+
+/** Transition matrix of the closed loop, and its columns for noise: next state and command. */
+export function closedLoopMatrices(loop: RateLoop): {
+  A: Matrix;
+  noiseIn: Matrix;
+  commandOut: Matrix;
+  noiseToCommand: number;
+} {
+  const n = loop.layout.size;
+  const A = Matrix.zeros(n, n);
+  const commandOut = Matrix.zeros(1, n);
+  const state = new Float64Array(n);
+  const next = new Float64Array(n);
+  const out: TickOutput = { y: 0, u: 0 };
+  for (let j = 0; j < n; j++) {
+    state.fill(0);
+    state[j] = 1;
+    linearTick(loop, state, 0, 0, next, out);
+    for (let i = 0; i < n; i++) A.set(i, j, next[i]);
+    commandOut.set(0, j, out.u);
+  }
+  state.fill(0);
+  linearTick(loop, state, 0, 1, next, out);
+  return { A, noiseIn: Matrix.columnVector(Array.from(next)), commandOut, noiseToCommand: out.u };
+}
