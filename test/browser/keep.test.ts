@@ -6,7 +6,7 @@ import { describeInBrowser } from './harness.ts';
 /** Rounds of edit, kill, reload; the full thousand by GUSTBENCH_ROUNDS=1000. */
 const ROUNDS = Number(process.env.GUSTBENCH_ROUNDS ?? 8);
 /** A save follows an edit within 300 ms: kills fall before, during and after it. */
-const LONGEST_WAIT_MS = 400;
+const LONGEST_WAIT_MS = 220;
 
 async function renameCraft(page: Page, name: string): Promise<void> {
   await page.keyboard.press('Alt+KeyW');
