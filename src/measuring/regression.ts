@@ -69,3 +69,14 @@ export function robustLine(x: readonly number[], y: readonly number[]): { a: num
   const b = slopes.length === 0 ? 0 : median(slopes);
   return { a: median(x.map((value, i) => y[i] - b * value)), b };
 }
+
+/** Smallest and largest of any number of values; [Infinity, -Infinity] for none, NaN passed over. */
+export function extent(values: Iterable<number>): [number, number] {
+  let low = Infinity;
+  let high = -Infinity;
+  for (const value of values) {
+    if (value < low) low = value;
+    if (value > high) high = value;
+  }
+  return [low, high];
+}
