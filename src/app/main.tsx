@@ -6,6 +6,7 @@ import './styles/widgets.css';
 import './styles/plots.css';
 import './styles/shell.css';
 import { App } from './shell/App.tsx';
+import { startOffline } from './shell/offline.ts';
 import { startAutosave, type Autosave } from './storage/autosave.ts';
 import { saveArchive } from './storage/saveArchive.ts';
 import { openWork } from './storage/start.ts';
@@ -39,8 +40,10 @@ async function start(root: HTMLElement): Promise<void> {
     window.addEventListener('pagehide', () => void autosave.flush());
   }
   for (const { name, reason } of opened.aside) store.notices.tell('error', words.aside(name, reason));
+  const running = new Map<string, unknown>();
+  startOffline(store, () => running.get('armed') === true);
   render(
-    <BenchContext.Provider value={{ store, theme, storage: opened.storage, running: new Map() }}>
+    <BenchContext.Provider value={{ store, theme, storage: opened.storage, running }}>
       <App />
     </BenchContext.Provider>,
     root,

@@ -3,6 +3,7 @@ import { Command, CommanderError } from 'commander';
 import { VERSION } from '../flight/record.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
+import { addShapeCommand } from './shape.ts';
 
 const program = new Command('gustbench')
   .description('Will these gains hold this craft? The flight bench from the shell.')
@@ -10,7 +11,7 @@ const program = new Command('gustbench')
   .exitOverride()
   .configureOutput({ outputError: (text, write) => write(text.replace(/^error: /, 'command line: ')) });
 
-for (const add of [addFlyCommand]) add(program);
+for (const add of [addFlyCommand, addShapeCommand]) add(program);
 for (const command of program.commands) command.exitOverride();
 
 try {

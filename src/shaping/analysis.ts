@@ -45,7 +45,10 @@ export function closedLoopPoles(loop: RateLoop): { re: number; im: number }[] {
  * @param noiseCorrelation of neighbouring samples (first-order), 0 for white
  */
 export function analyse(loop: RateLoop, noise_dps: number, noiseCorrelation = 0): AxisAnalysis {
-  const polesMaxRadius = closedLoopPoles(loop).reduce((most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)), 0);
+  const polesMaxRadius = closedLoopPoles(loop).reduce(
+    (most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)),
+    0,
+  );
   const stable = polesMaxRadius < 1 - ON_CIRCLE;
   const nyquist = Math.PI / loop.tick_s;
   const margins = marginsOf({
@@ -60,7 +63,9 @@ export function analyse(loop: RateLoop, noise_dps: number, noiseCorrelation = 0)
     conditionallyStable,
     polesMaxRadius,
     margins,
-    step: stable ? stepMetrics(stepResponse(loop, polesMaxRadius), loop) : { rise_s: null, overshoot_pct: null, settle_s: null },
+    step: stable
+      ? stepMetrics(stepResponse(loop, polesMaxRadius), loop)
+      : { rise_s: null, overshoot_pct: null, settle_s: null },
     noiseAtMotor_us_rms: stable ? noiseAtMotor(loop, noise_dps, noiseCorrelation) : null,
     statement: statementOf(stable, conditionallyStable, margins),
   };

@@ -92,7 +92,9 @@ function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
     array[index] = kept;
     return high.map((value, i) => (value - low[i]) / (2 * step));
   };
-  const states = Array.from({ length: STATE_SIZE }, (_, j) => column(s, j, j >= ROTOR_SPEED && j < INFLOW ? 0.05 : 1e-4));
+  const states = Array.from({ length: STATE_SIZE }, (_, j) =>
+    column(s, j, j >= ROTOR_SPEED && j < INFLOW ? 0.05 : 1e-4),
+  );
   const duties = [0, 1, 2, 3].map((motor) => column(duty, motor, 1e-5));
   return { state: (i, j) => states[j][i], duty: (i, motor) => duties[motor][i] };
 }
@@ -106,12 +108,15 @@ function axisModel(craft: Craft, jacobian: Jacobian, axis: AxisName): AxisModel 
   // Deviations along the pattern in, their share along the pattern out.
   const along = (from: number, to: number) =>
     pattern.reduce(
-      (sum, pi, a) => sum + pattern.reduce((part, pj, b) => part + pi * pj * jacobian.state(from + a, to + b), 0),
+      (sum, pi, a) =>
+        sum + pattern.reduce((part, pj, b) => part + pi * pj * jacobian.state(from + a, to + b), 0),
       0,
     ) / square;
   const rate = RATES + k;
-  const sumOver = (row: number, from: number) => pattern.reduce((sum, p, a) => sum + p * jacobian.state(row, from + a), 0);
-  const meanOf = (from: number, column: number) => pattern.reduce((sum, p, a) => sum + p * jacobian.state(from + a, column), 0) / square;
+  const sumOver = (row: number, from: number) =>
+    pattern.reduce((sum, p, a) => sum + p * jacobian.state(row, from + a), 0);
+  const meanOf = (from: number, column: number) =>
+    pattern.reduce((sum, p, a) => sum + p * jacobian.state(from + a, column), 0) / square;
   const A = new Matrix([
     [jacobian.state(rate, rate), sumOver(rate, ROTOR_SPEED), sumOver(rate, INFLOW)],
     [meanOf(ROTOR_SPEED, rate), along(ROTOR_SPEED, ROTOR_SPEED), along(ROTOR_SPEED, INFLOW)],
@@ -119,7 +124,12 @@ function axisModel(craft: Craft, jacobian: Jacobian, axis: AxisName): AxisModel 
   ]);
   const perUs = 1 / (craft.escMax_us - craft.escMin_us);
   const dutyIn = (row: number) => pattern.reduce((sum, p, a) => sum + p * jacobian.duty(row, a), 0) * perUs;
-  const rotorIn = pattern.reduce((sum, p, a) => sum + p * pattern.reduce((part, q, b) => part + q * jacobian.duty(ROTOR_SPEED + a, b), 0), 0) / square;
+  const rotorIn =
+    pattern.reduce(
+      (sum, p, a) =>
+        sum + p * pattern.reduce((part, q, b) => part + q * jacobian.duty(ROTOR_SPEED + a, b), 0),
+      0,
+    ) / square;
   const B = new Matrix([[dutyIn(rate)], [rotorIn * perUs], [0]]);
   const system: ContinuousSystem = { A, B, C: new Matrix([[DEG_PER_RAD, 0, 0]]), delay_s: 0 };
   const { gyro } = craft.build;
@@ -155,7 +165,8 @@ export function responseAt(system: ContinuousSystem, omega: number): Complex {
     x[k] = over(complex(re, im), rows[k][k]);
   }
   let y = complex(0);
-  for (let k = 0; k < n; k++) y = complex(y.re + x[k].re * system.C.get(0, k), y.im + x[k].im * system.C.get(0, k));
+  for (let k = 0; k < n; k++)
+    y = complex(y.re + x[k].re * system.C.get(0, k), y.im + x[k].im * system.C.get(0, k));
   return times(y, unit(-omega * system.delay_s));
 }
 

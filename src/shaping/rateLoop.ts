@@ -200,7 +200,8 @@ export function linearTick(
     for (let j = 0; j < n; j++) sum += plant.transition[i * n + j] * state[at.plant + j];
     next[at.plant + i] = sum;
   }
-  for (let k = at.pastCommandCount - 1; k > 0; k--) next[at.pastCommands + k] = state[at.pastCommands + k - 1];
+  for (let k = at.pastCommandCount - 1; k > 0; k--)
+    next[at.pastCommands + k] = state[at.pastCommands + k - 1];
   next[at.pastCommands] = u;
   // Without integral gain there is no integrator, and no pole of its own at z = 1.
   next[at.integral] = loop.i === 0 ? 0 : integral;

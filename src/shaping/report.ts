@@ -47,7 +47,11 @@ export function gyroNoise(density: number, bandwidth_Hz: number, loop_Hz: number
 }
 
 /** Each axis around the same plant. */
-export function reportForPlant(plant: Plant, gains: Gains, density = DEFAULT_NOISE_DPS_PER_RTHZ): ShapeReport {
+export function reportForPlant(
+  plant: Plant,
+  gains: Gains,
+  density = DEFAULT_NOISE_DPS_PER_RTHZ,
+): ShapeReport {
   const noise = gyroNoise(density, 0, gains.loop_Hz);
   return perAxis((axis) => axisReport(plantSystem(plant), plant, gains, axis, noise, null));
 }

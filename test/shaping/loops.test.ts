@@ -36,7 +36,9 @@ interface Case {
     noise?: number;
   };
 }
-const cases = JSON.parse(readFileSync(new URL('../reference/shaping/loops.json', import.meta.url), 'utf8')) as Case[];
+const cases = JSON.parse(
+  readFileSync(new URL('../reference/shaping/loops.json', import.meta.url), 'utf8'),
+) as Case[];
 
 function gainsOf(c: Case): Gains {
   const axis = { p_us_per_dps: c.p, i_us_per_deg: c.i, d_us_per_dps2: c.d, feedforward_us_per_dps: 0 };
@@ -52,7 +54,9 @@ function gainsOf(c: Case): Gains {
 }
 
 const near = (found: number | null | undefined, wanted: number, share: number, floor = 0) =>
-  expect(Math.abs((found ?? NaN) - wanted), `${found} for ${wanted}`).toBeLessThan(share * Math.abs(wanted) + floor);
+  expect(Math.abs((found ?? NaN) - wanted), `${found} for ${wanted}`).toBeLessThan(
+    share * Math.abs(wanted) + floor,
+  );
 
 describe('70 loops from 250 Hz to 8 kHz against SciPy (test/reference/shaping/loops.py)', () => {
   it('has unstable and conditionally stable ones among them', () => {
@@ -61,28 +65,36 @@ describe('70 loops from 250 Hz to 8 kHz against SciPy (test/reference/shaping/lo
     expect(cases.filter((c) => c.expected.stable && c.expected.gr_dB !== null).length).toBeGreaterThan(2);
   });
 
-  it.each(cases.map((c, index) => [index, c.loop_Hz, c] as const))('loop %d at %d Hz: poles, margins within 0.1 % and 0.05°, step, noise', (_index, _rate, c) => {
-    const loop = rateLoop(plantSystem({ gain_dps2_per_us: c.K, lag_s: c.tau, delay_s: c.Td }), gainsOf(c), 'roll');
-    const found = analyse(loop, gyroNoise(c.noise, 0, c.loop_Hz).sigma_dps);
-    const wanted = c.expected;
-    expect(found.stable).toBe(wanted.stable);
-    if (wanted.radius !== null) near(found.polesMaxRadius, wanted.radius, 1e-5);
-    near(found.margins.maxSensitivity, wanted.ms, 1e-3);
-    if (wanted.gm_dB === null) expect(found.margins.gainMargin_dB).toBeNull();
-    else near(found.margins.gainMargin_dB, wanted.gm_dB, 1e-3, 1e-4);
-    if (wanted.gr_dB === null) expect(found.margins.gainReduction_dB).toBeNull();
-    else near(found.margins.gainReduction_dB, wanted.gr_dB, 1e-3, 1e-4);
-    if (wanted.pm !== undefined && wanted.wc !== undefined && wanted.dm !== undefined) {
-      near(found.margins.phaseMargin_deg, wanted.pm, 0, 0.05);
-      near((found.margins.crossover_Hz ?? NaN) * 2 * Math.PI, wanted.wc, 1e-3);
-      near(found.margins.delayMargin_ms, wanted.dm, 1e-3);
-    }
-    if (!wanted.stable) return;
-    if (wanted.rise !== undefined) near(found.step.rise_s, wanted.rise, 1e-3);
-    if (wanted.overshoot !== undefined) near(found.step.overshoot_pct, wanted.overshoot, 1e-3, 1e-3);
-    if (wanted.settle !== undefined && wanted.settle !== null) near(found.step.settle_s, wanted.settle, 1e-3);
-    if (wanted.noise !== undefined) near(found.noiseAtMotor_us_rms, wanted.noise, 1e-3);
-  });
+  it.each(cases.map((c, index) => [index, c.loop_Hz, c] as const))(
+    'loop %d at %d Hz: poles, margins within 0.1 % and 0.05°, step, noise',
+    (_index, _rate, c) => {
+      const loop = rateLoop(
+        plantSystem({ gain_dps2_per_us: c.K, lag_s: c.tau, delay_s: c.Td }),
+        gainsOf(c),
+        'roll',
+      );
+      const found = analyse(loop, gyroNoise(c.noise, 0, c.loop_Hz).sigma_dps);
+      const wanted = c.expected;
+      expect(found.stable).toBe(wanted.stable);
+      if (wanted.radius !== null) near(found.polesMaxRadius, wanted.radius, 1e-5);
+      near(found.margins.maxSensitivity, wanted.ms, 1e-3);
+      if (wanted.gm_dB === null) expect(found.margins.gainMargin_dB).toBeNull();
+      else near(found.margins.gainMargin_dB, wanted.gm_dB, 1e-3, 1e-4);
+      if (wanted.gr_dB === null) expect(found.margins.gainReduction_dB).toBeNull();
+      else near(found.margins.gainReduction_dB, wanted.gr_dB, 1e-3, 1e-4);
+      if (wanted.pm !== undefined && wanted.wc !== undefined && wanted.dm !== undefined) {
+        near(found.margins.phaseMargin_deg, wanted.pm, 0, 0.05);
+        near((found.margins.crossover_Hz ?? NaN) * 2 * Math.PI, wanted.wc, 1e-3);
+        near(found.margins.delayMargin_ms, wanted.dm, 1e-3);
+      }
+      if (!wanted.stable) return;
+      if (wanted.rise !== undefined) near(found.step.rise_s, wanted.rise, 1e-3);
+      if (wanted.overshoot !== undefined) near(found.step.overshoot_pct, wanted.overshoot, 1e-3, 1e-3);
+      if (wanted.settle !== undefined && wanted.settle !== null)
+        near(found.step.settle_s, wanted.settle, 1e-3);
+      if (wanted.noise !== undefined) near(found.noiseAtMotor_us_rms, wanted.noise, 1e-3);
+    },
+  );
 });
 
 describe('textbook loops through the same margin code', () => {

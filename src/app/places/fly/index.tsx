@@ -56,6 +56,8 @@ export default function Fly() {
     session.setSpeed(session.at_s.value === null ? 1 : 0);
     return () => session.leave();
   }, [session]);
+  const armed = session.seat.state.value.armed;
+  useEffect(() => void running.set('armed', armed), [running, armed]);
   useEffect(() => {
     const away = () => {
       if (document.hidden) session.leave();
