@@ -21,6 +21,8 @@ export interface AxisFit {
   /** Present when they were free in the fit. */
   readonly lead_s?: Estimate;
   readonly damping_per_s?: Estimate;
+  /** Covariance of gain, lag, delay and then the terms present, lead before damping. */
+  readonly covariance: readonly (readonly number[])[];
   readonly noise: NoiseParameters;
   /** Order of the autoregressive whitening that was needed; 0 when the noise model alone was enough. */
   readonly whiteningOrder: number;
@@ -496,6 +498,7 @@ export class AxisFitter {
   ): AxisFit {
     const whiteness = whitenessScore(white, WHITENESS_LAGS, order);
     const widened = whiteness > NOT_WHITE ? NOT_WHITE_FACTOR : 1;
+    const plantPlaces = this.active.filter((place) => place < VARIANCE);
     // Plant parameters come first in the covariance, in the order of `active`, with and without whitening.
     const estimate = (place: number): Estimate => {
       const a = this.active.indexOf(place);
@@ -507,6 +510,9 @@ export class AxisFitter {
       delay_s: estimate(DELAY),
       ...(this.active.includes(LEAD) ? { lead_s: estimate(LEAD) } : {}),
       ...(this.active.includes(DAMPING) ? { damping_per_s: estimate(DAMPING) } : {}),
+      covariance: plantPlaces.map((_, a) =>
+        plantPlaces.map((_unused, b) => widened * widened * covariance.get(a, b)),
+      ),
       noise: noiseOf(p),
       whiteningOrder: order,
       whiteness,

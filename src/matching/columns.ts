@@ -10,7 +10,8 @@ import { refuse } from '../craft/problem.ts';
 import { DEG_PER_RAD, RPM_PER_RAD_PER_S } from '../math/angles.ts';
 
 /** What a signal measures; each kind has its own units. */
-export type SignalKind = 'time' | 'rate' | 'share' | 'command' | 'axisCommand' | 'speed' | 'angle' | 'velocity';
+export type SignalKind =
+  'time' | 'rate' | 'share' | 'command' | 'axisCommand' | 'speed' | 'angle' | 'velocity';
 
 /** Units of each kind with their factor to the one used inside (the first). `range` scales by the ESC's span. */
 export const UNITS: Readonly<Record<SignalKind, Readonly<Record<string, number | 'range'>>>> = {
@@ -85,7 +86,10 @@ export function missingSignals(columns: Columns): { signal: string; allowed: str
   if (!has('t')) missing.push({ signal: 't', allowed: 'the column of the time' });
   const measured = AXES.filter((axis) => has(`gyro_${axis}`));
   if (measured.length === 0) {
-    missing.push({ signal: 'gyro_roll', allowed: 'the column of at least one of gyro_roll, gyro_pitch, gyro_yaw' });
+    missing.push({
+      signal: 'gyro_roll',
+      allowed: 'the column of at least one of gyro_roll, gyro_pitch, gyro_yaw',
+    });
   }
   const motors = CORNERS.filter((corner) => has(`cmd_${corner}`));
   const uncommanded = measured.find((axis) => !has(`u_${axis}`));

@@ -219,4 +219,34 @@ export class DisturbanceFilter {
       a += gainA[k] * innovation;
     }
   }
+
+  /**
+   * What the residual is expected to be, `horizon` rows at a time, from what is known at each horizon's start.
+   * Rows before `first` are NaN.
+   */
+  forecast(residual: Float64Array, first: number, horizon: number, out: Float64Array): void {
+    const { gainW, gainD, gainB, gainA, variance } = this;
+    const { keepW, throughB, throughD, keepD, throughA, keepA } = this;
+    const known = { w: 0, d: 0, b: 0, a: 0 };
+    const ahead = { w: 0, d: 0, b: 0, a: 0 };
+    const step = (s: typeof known, k: number) => {
+      s.w = keepW[k] * s.w + throughD[k] * s.d + throughB[k] * s.b + throughA[k] * s.a;
+      s.d *= keepD[k];
+      s.a *= keepA[k];
+    };
+    for (let k = 0; k < residual.length; k++) {
+      if (k > 0) {
+        step(known, k);
+        step(ahead, k);
+      }
+      if (k >= first && (k - first) % horizon === 0) Object.assign(ahead, known);
+      out[k] = k >= first ? ahead.w : NaN;
+      if (variance[k] === 0) continue;
+      const innovation = residual[k] - known.w;
+      known.w += gainW[k] * innovation;
+      known.d += gainD[k] * innovation;
+      known.b += gainB[k] * innovation;
+      known.a += gainA[k] * innovation;
+    }
+  }
 }

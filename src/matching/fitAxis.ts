@@ -9,6 +9,7 @@
  */
 import type { AxisPiece, PlantParameters } from './axisData.ts';
 import { AxisFitter, type AxisFit, type OptionalTerm } from './axisFitter.ts';
+import type { NoiseParameters } from './disturbanceFilter.ts';
 
 /**
  * Drop of the deviance that an optional term must bring. For a term that is not there the drop is χ² with one
@@ -19,17 +20,45 @@ const WORTH_A_TERM = 15;
 /**
  * Fits the plant to all pieces together; a lead or a damping is added where the log clearly asks for it.
  * @param start where the search begins
+ * @param other a second place to begin from, with its lead (a build's own plant)
  */
 export function fitAxis(
   pieces: readonly AxisPiece[],
   start: PlantParameters,
-  offered: readonly OptionalTerm[] = ['damping_per_s', 'lead_s'],
+  offered: readonly OptionalTerm[] = [],
+  other?: PlantParameters,
+): AxisFit {
+  return withTerms(pieces, fitPlain(pieces, start), offered, other);
+}
+
+/** Gain, lag and delay alone. */
+export function fitPlain(
+  pieces: readonly AxisPiece[],
+  start: PlantParameters,
+  noise?: NoiseParameters,
+): AxisFit {
+  return new AxisFitter(pieces, start, [], noise).run();
+}
+
+/**
+ * Tries the offered terms one after the other on top of a plain fit.
+ * @param other a second place to begin from, with its lead (a build's own plant)
+ */
+export function withTerms(
+  pieces: readonly AxisPiece[],
+  plain: AxisFit,
+  offered: readonly OptionalTerm[],
+  other?: PlantParameters,
 ): AxisFit {
   let free: readonly OptionalTerm[] = [];
-  let best = new AxisFitter(pieces, start, free).run();
+  let best = plain;
   for (const term of offered) {
     const more = [...free, term];
-    const fit = new AxisFitter(pieces, plantOf(best), more, best.noise).run();
+    const trials = [new AxisFitter(pieces, plantOf(best), more, best.noise).run()];
+    if (term === 'lead_s' && (other?.lead_s ?? 0) > 0 && other !== undefined) {
+      trials.push(new AxisFitter(pieces, other, more).run());
+    }
+    const fit = trials.reduce((a, b) => (b.deviance < a.deviance ? b : a));
     if (fit.deviance < best.deviance - WORTH_A_TERM) {
       best = fit;
       free = more;

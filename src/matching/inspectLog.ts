@@ -84,7 +84,12 @@ function readForm(head: Uint8Array, file: string): { form: LogForm; sample: numb
   const rows = lines.filter((line) => line.trim() !== '' && !line.startsWith('#'));
   if (rows.length === 0) throw refuse(file, '', 'no rows', 'column heads and rows of numbers');
   if (rows[0].length > LONGEST_LINE) {
-    throw refuse(file, 'line 1', `${rows[0].length} characters`, `lines of at most ${LONGEST_LINE} characters`);
+    throw refuse(
+      file,
+      'line 1',
+      `${rows[0].length} characters`,
+      `lines of at most ${LONGEST_LINE} characters`,
+    );
   }
   return rows[0].trimStart().startsWith('{')
     ? readJsonForm(rows, comments, file)
@@ -251,7 +256,11 @@ function unitOf(signal: string, found: RecognisedHead, values: readonly number[]
   if (kind === 'rate') {
     // 12 rad/s is 690 deg/s: beyond what the first rows of a log hold; 12 deg/s is a craft held still.
     return largest > 12
-      ? { unit: 'deg/s', because: `values up to ${most} are too large for rad/s in ordinary flight`, sure: false }
+      ? {
+          unit: 'deg/s',
+          because: `values up to ${most} are too large for rad/s in ordinary flight`,
+          sure: false,
+        }
       : { unit: 'rad/s', because: `values up to ${most}; small for deg/s`, sure: false };
   }
   if (kind === 'angle') {

@@ -105,7 +105,10 @@ export async function readLog(
   const places = wanted.map((one) => one.place);
   const reader =
     form.kind === 'json-lines'
-      ? new JsonLineReader(places.map((place) => form.heads[place]), table)
+      ? new JsonLineReader(
+          places.map((place) => form.heads[place]),
+          table,
+        )
       : new NumberScanner(places, form.delimiter.charCodeAt(0), form.decimal.charCodeAt(0), table);
   let bytes = 0;
   for await (const chunk of source.open()) {
@@ -114,7 +117,12 @@ export async function readLog(
     bytes += chunk.length;
     if (source.size_bytes === null) refuseHuge(source.name, bytes);
     if (reader.waiting > LONGEST_LINE_BYTES) {
-      throw refuse(source.name, `byte ${bytes}`, 'no line end', `lines of at most ${LONGEST_LINE_BYTES} bytes`);
+      throw refuse(
+        source.name,
+        `byte ${bytes}`,
+        'no line end',
+        `lines of at most ${LONGEST_LINE_BYTES} bytes`,
+      );
     }
     if (table.problem !== null) throw refuse(source.name, '', table.problem, TOO_MANY_ROWS);
     options.onProgress?.(source.size_bytes === null ? bytes : bytes / source.size_bytes);
@@ -145,7 +153,12 @@ function wantedColumns(form: LogForm, columns: Columns, file: string): Wanted[] 
     }
     const twin = wanted.find((one) => one.place === place);
     if (twin !== undefined) {
-      throw refuse(file, `${signal}.column`, column, `a column of its own; ${twin.signal} is read from it already`);
+      throw refuse(
+        file,
+        `${signal}.column`,
+        column,
+        `a column of its own; ${twin.signal} is read from it already`,
+      );
     }
     wanted.push({ signal, place });
   }
@@ -281,7 +294,8 @@ function assemble(
       `at least ${LEAST_ROWS} rows with numbers, and numbers in at least 80 % of the rows`,
     );
   }
-  if (table.bad > 0) remarks.push(`${table.bad} of ${all} rows had no number in a needed column and were left out.`);
+  if (table.bad > 0)
+    remarks.push(`${table.bad} of ${all} rows had no number in a needed column and were left out.`);
   const t = columns.t;
   const unit_s = t === undefined ? 1 : conversion('t', t, range).scale;
   const times = risingTimes(table.time.subarray(0, table.rows), unit_s, file);

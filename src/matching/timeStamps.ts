@@ -36,7 +36,9 @@ export function risingTimes(raw: Float64Array, unit_s: number, file: string): Ri
     throw refuse(
       file,
       't',
-      repeated === n - 1 ? `${raw[0]} in every row` : `${repeated} of ${n} rows with the time of the row before`,
+      repeated === n - 1
+        ? `${raw[0]} in every row`
+        : `${repeated} of ${n} rows with the time of the row before`,
       'a time that rises from row to row',
     );
   }

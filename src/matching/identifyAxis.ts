@@ -1,0 +1,199 @@
+/** One axis of a log: is it excited, what is its plant, how far can that be trusted. */
+import type { Build } from '../craft/build.ts';
+import type { AxisName } from '../craft/gains.ts';
+import type { TimeBase } from './align.ts';
+import type { AxisPiece, PlantParameters } from './axisData.ts';
+import type { AxisFit, Estimate, OptionalTerm } from './axisFitter.ts';
+import { axisPiece } from './axisPieces.ts';
+import { fitPlain, plantOf, withTerms } from './fitAxis.ts';
+import { describeFit, reasonsOf } from './axisNote.ts';
+import { excitedParts, FITTED_SHARE, LEAST_USABLE_S, type ExcitedParts } from './excited.ts';
+import type { Column, FlightLog } from './log.ts';
+import { reducedEstimates, type ReducedEstimates } from './reducedEstimates.ts';
+import type { MeasuredResponse } from './spectra.ts';
+import { plantFromResponse } from './startValues.ts';
+import { suspectAxis, type Offer } from './suspicions.ts';
+import { spanSeconds, splitSpans, type LeftOut, type Span, type UsableRows } from './usable.ts';
+import { explainedShare, residualOf, validate, type Residual, type Validation } from './validation.ts';
+
+/** Estimates less certain than these are no numbers. */
+const LARGEST_GAIN_ERROR = 0.15;
+const LARGEST_LAG_ERROR = 0.6;
+const LARGEST_DELAY_ERROR_S = 0.006;
+/** Without a moving setpoint the model must explain this much of the rate's power between 0.7 and 10 Hz. */
+const LEAST_EXPLAINED = 0.75;
+
+export interface AxisContext {
+  readonly log: FlightLog;
+  readonly build: Build;
+  readonly base: TimeBase;
+  readonly usable: UsableRows;
+  /** Null while it is not known which times are better. */
+  readonly times: 'as logged' | 'regular' | null;
+  readonly rotor_Hz: number | null;
+}
+
+export interface AxisResult {
+  /** The plant K e^(−sTd)/(s(τs+1)); null when the axis has no numbers. */
+  readonly estimates: ReducedEstimates | null;
+  readonly fit: AxisFit | null;
+  /** Share of the held-back piece that is foretold over 0.3 s; null without one. */
+  readonly fit_pct: number | null;
+  readonly usable_s: number;
+  /** Sentences: what was used, how good it is, where the model fails; or why there are no numbers. */
+  readonly note: string;
+  readonly response: MeasuredResponse | null;
+  readonly validation: Validation | null;
+  readonly residual: Residual | null;
+  readonly leftOut: readonly LeftOut[];
+  readonly offers: readonly Offer[];
+  readonly timesUsed: 'as logged' | 'regular' | null;
+}
+
+const NOTHING = {
+  estimates: null,
+  fit: null,
+  fit_pct: null,
+  usable_s: 0,
+  response: null,
+  validation: null,
+  residual: null,
+  leftOut: [],
+  offers: [],
+  timesUsed: null,
+} as const;
+
+/** Identifies one axis. */
+export function identifyAxis(
+  axis: AxisName,
+  context: AxisContext,
+  u_us: Column | null,
+  model: PlantParameters,
+): AxisResult {
+  const y_dps = context.log.gyro_dps[axis];
+  if (y_dps === undefined) return { ...NOTHING, note: `The log has no gyro_${axis}.` };
+  if (u_us === null) {
+    return { ...NOTHING, note: `The log has neither u_${axis} nor all four motor commands.` };
+  }
+  const { usable } = context;
+  if (usable.usable_s < LEAST_USABLE_S) {
+    const why = `Only ${usable.usable_s.toFixed(1)} s of the log can be used (${reasonsOf(usable.leftOut)}); ${LEAST_USABLE_S} s are the least.`;
+    return { ...NOTHING, note: why };
+  }
+  const setpoint = context.log.setpoint_dps[axis] ?? null;
+  const parts = excitedParts(axis, usable, context.base.period_s, setpoint, u_us, y_dps);
+  const { response, spectra } = parts;
+  const offers = suspectAxis(axis, response, spectra, model);
+  const partial = { ...NOTHING, response, offers };
+  if (offers.length > 0) {
+    return {
+      ...partial,
+      note: `No numbers until this is settled: ${offers.map((one) => one.because).join(' ')}`,
+    };
+  }
+  if (parts.refusal !== null) return { ...partial, note: parts.refusal };
+  return fitParts(axis, context, u_us, y_dps, model, parts, response);
+}
+
+// --- Fit ----------------------------------------------------------------------------------------------------
+
+function fitParts(
+  axis: AxisName,
+  context: AxisContext,
+  u_us: Column,
+  y_dps: Column,
+  model: PlantParameters,
+  parts: ExcitedParts,
+  response: MeasuredResponse,
+): AxisResult {
+  const { base, build } = context;
+  const { first, rest } = splitSpans(parts.spans, FITTED_SHARE);
+  const piecesOf = (spans: readonly Span[], times: 'as logged' | 'regular') =>
+    spans.map((span) => {
+      const stamps = times === 'regular' ? span.stretch.regular_s : span.stretch.logged_s;
+      return axisPiece(span.stretch, stamps, span.begin, span.end, u_us, y_dps);
+    });
+  const start = plantFromResponse(response) ?? model;
+  const positive = start.gain_dps2_per_us > 0 ? start : model;
+  const chosen = bestTimes(context, positive, (times) => piecesOf(first, times));
+  // The rotors' reaction about yaw is a lead; the inflow damps roll and pitch.
+  const terms: OptionalTerm[] = axis === 'yaw' ? ['lead_s', 'damping_per_s'] : ['damping_per_s'];
+  const fit = withTerms(chosen.pieces, chosen.fit, terms, model);
+  const plant = plantOf(fit);
+  const held = piecesOf(rest, chosen.times);
+  const partial = { ...NOTHING, response, leftOut: parts.leftOut, timesUsed: chosen.times };
+  const estimates = reducedEstimates(fit);
+  const weak = weakness(axis, fit, estimates, parts, chosen.pieces, held, base.period_s);
+  if (weak !== null) return { ...partial, note: weak };
+  const validation = validate(held, plant, fit);
+  const residual = residualOf(
+    [...chosen.pieces, ...held],
+    plant,
+    fit,
+    base.period_s,
+    context.rotor_Hz,
+    build,
+  );
+  const fitted_s = first.reduce((sum, span) => sum + spanSeconds(span), 0);
+  const held_s = rest.reduce((sum, span) => sum + spanSeconds(span), 0);
+  return {
+    ...partial,
+    estimates,
+    fit,
+    fit_pct: validation?.fit_pct ?? null,
+    usable_s: fitted_s + held_s,
+    note: describeFit(context, fit, estimates, validation, residual, fitted_s),
+    validation,
+    residual,
+  };
+}
+
+/** Fits with the stamps as logged and, if they jitter, on the regular tick; the likelihood decides. */
+function bestTimes(
+  context: AxisContext,
+  start: PlantParameters,
+  piecesOf: (times: 'as logged' | 'regular') => AxisPiece[],
+): { times: 'as logged' | 'regular'; fit: AxisFit; pieces: AxisPiece[] } {
+  const { base } = context;
+  const attempt = (times: 'as logged' | 'regular', from?: AxisFit) => {
+    const pieces = piecesOf(times);
+    const fit = fitPlain(pieces, from === undefined ? start : plantOf(from), from?.noise);
+    return { times, fit, pieces };
+  };
+  if (context.times !== null) return attempt(context.times);
+  const regular = base.irregular ? null : attempt('regular');
+  if (regular !== null && base.jitter_s < 0.01 * base.period_s) return regular;
+  const logged = attempt('as logged', regular?.fit);
+  return regular !== null && regular.fit.deviance < logged.fit.deviance ? regular : logged;
+}
+
+/** Why a fit is no number, or null. */
+function weakness(
+  axis: AxisName,
+  fit: AxisFit,
+  estimates: ReducedEstimates,
+  parts: ExcitedParts,
+  fitted: readonly AxisPiece[],
+  held: readonly AxisPiece[],
+  period_s: number,
+): string | null {
+  const { gain_dps2_per_us: gain, lag_s, delay_s } = estimates;
+  if (!(gain.value > 0)) {
+    return `No numbers: the fit found the ${axis} rate going against the command. Is a sign turned, or are motors at other corners than the columns say?`;
+  }
+  if (
+    !(relative(gain) < LARGEST_GAIN_ERROR) ||
+    !(lag_s.sigma < Math.max(0.01, LARGEST_LAG_ERROR * lag_s.value)) ||
+    !(delay_s.sigma < LARGEST_DELAY_ERROR_S)
+  ) {
+    return `Not excited enough: what ${axis} movement there is leaves the gain uncertain by ${(100 * relative(gain)).toFixed(0)} %, the lag by ${(1000 * lag_s.sigma).toFixed(0)} ms and the delay by ${(1000 * delay_s.sigma).toFixed(0)} ms. Fly larger or longer ${axis} doublets or a sweep.`;
+  }
+  if (parts.bySetpoint) return null;
+  const explained = explainedShare([...fitted, ...held], fit, period_s);
+  if (explained >= LEAST_EXPLAINED) return null;
+  return `Not excited: the ${axis} setpoint does not move, and the command explains too little of the rate to be a manoeuvre (it answers noise and gusts). Fly ${axis} doublets or a sweep.`;
+}
+
+function relative(estimate: Estimate): number {
+  return estimate.sigma / Math.abs(estimate.value);
+}

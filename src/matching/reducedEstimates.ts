@@ -1,0 +1,65 @@
+/**
+ * The numbers of an axis in the one form all places share, K e^(−sTd)/(s(τs+1)), with their standard errors. A
+ * fit that needed a lead or a damping is told in that form over the band where rate loops cross over.
+ */
+import type { AxisFit, Estimate } from './axisFitter.ts';
+import { plantOf } from './fitAxis.ts';
+import { reducePlant, responseOf } from './reducedPlant.ts';
+
+export interface ReducedEstimates {
+  readonly gain_dps2_per_us: Estimate;
+  readonly lag_s: Estimate;
+  readonly delay_s: Estimate;
+  /** How far the three numbers are from the fit over 2 … 25 Hz; 0 when they are the fit itself. */
+  readonly error_dB: number;
+  readonly error_deg: number;
+  /** The fit found a delay below zero; 0 stands in its place. */
+  readonly delayBelowZero_s: number | null;
+}
+
+/** Step of the differentiation, in standard errors. */
+const STEP = 0.3;
+
+export function reducedEstimates(fit: AxisFit): ReducedEstimates {
+  if (fit.lead_s === undefined && fit.damping_per_s === undefined) {
+    const below = fit.delay_s.value < 0;
+    return {
+      gain_dps2_per_us: fit.gain_dps2_per_us,
+      lag_s: fit.lag_s,
+      delay_s: below ? { ...fit.delay_s, value: 0 } : fit.delay_s,
+      error_dB: 0,
+      error_deg: 0,
+      delayBelowZero_s: below ? fit.delay_s.value : null,
+    };
+  }
+  const places = ['gain_dps2_per_us', 'lag_s', 'delay_s', 'lead_s', 'damping_per_s'] as const;
+  const present = places.filter((place) => fit[place] !== undefined);
+  const centre = plantOf(fit);
+  const { plant, error_dB, error_deg } = reducePlant(responseOf(centre));
+  const keys = ['gain_dps2_per_us', 'lag_s', 'delay_s'] as const;
+  const slopes = present.map((place) => {
+    const step = STEP * (fit[place]?.sigma ?? 0);
+    if (step === 0) return [0, 0, 0];
+    const high = reducePlant(responseOf({ ...centre, [place]: (centre[place] ?? 0) + step })).plant;
+    const low = reducePlant(responseOf({ ...centre, [place]: (centre[place] ?? 0) - step })).plant;
+    return keys.map((key) => (high[key] - low[key]) / (2 * step));
+  });
+  // J C Jᵀ, its diagonal.
+  const sigma = keys.map((_, i) => {
+    let variance = 0;
+    present.forEach((_a, a) => {
+      present.forEach((_b, b) => {
+        variance += slopes[a][i] * fit.covariance[a][b] * slopes[b][i];
+      });
+    });
+    return Math.sqrt(Math.max(0, variance));
+  });
+  return {
+    gain_dps2_per_us: { value: plant.gain_dps2_per_us, sigma: sigma[0] },
+    lag_s: { value: plant.lag_s, sigma: sigma[1] },
+    delay_s: { value: plant.delay_s, sigma: sigma[2] },
+    error_dB,
+    error_deg,
+    delayBelowZero_s: null,
+  };
+}
