@@ -3,21 +3,27 @@ import { Command, CommanderError } from 'commander';
 import { VERSION } from '../flight/record.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
+import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
+import { serveTrialsIfWorker } from './trialPool.ts';
 
-const program = new Command('gustbench')
-  .description('Will these gains hold this craft? The flight bench from the shell.')
-  .version(VERSION)
-  .exitOverride()
-  .configureOutput({ outputError: (text, write) => write(text.replace(/^error: /, 'command line: ')) });
+const VERBS = [addShapeCommand, addFlyCommand, addProveCommand];
 
-for (const add of [addFlyCommand, addShapeCommand]) add(program);
-for (const command of program.commands) command.exitOverride();
-
-try {
-  await program.parseAsync();
-} catch (error) {
-  if (!(error instanceof CommanderError)) throw error;
-  // commander has printed its line already; help and version end well.
-  process.exitCode = error.exitCode === 0 ? 0 : BAD_INPUT;
+async function main(): Promise<void> {
+  const program = new Command('gustbench')
+    .description('Will these gains hold this craft? The flight bench from the shell.')
+    .version(VERSION)
+    .exitOverride()
+    .configureOutput({ outputError: (text, write) => write(text.replace(/^error: /, 'command line: ')) });
+  for (const add of VERBS) add(program);
+  for (const command of program.commands) command.exitOverride();
+  try {
+    await program.parseAsync();
+  } catch (error) {
+    if (!(error instanceof CommanderError)) throw error;
+    // commander has printed its line already; help and version end well.
+    process.exitCode = error.exitCode === 0 ? 0 : BAD_INPUT;
+  }
 }
+
+if (!serveTrialsIfWorker()) await main();

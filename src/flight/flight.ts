@@ -140,7 +140,8 @@ export class Flight {
       span_m: this.currentCraft.span_m,
     });
     this.contact = this.newContact();
-    this.pilot = new Pilot(this.currentCraft, setup.gains, this.trim.duty[0]);
+    // The controller knows the craft as built, not its faults.
+    this.pilot = new Pilot(sound, setup.gains, this.trim.duty[0]);
     this.applyEffects();
     this.begin(setup.start ?? { kind: 'ground' });
   }
