@@ -3,11 +3,12 @@ import { Command, CommanderError } from 'commander';
 import { VERSION } from '../flight/record.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
+import { addMeasureCommand } from './measure.ts';
 import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
 import { serveTrialsIfWorker } from './trialPool.ts';
 
-const VERBS = [addShapeCommand, addFlyCommand, addProveCommand];
+const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand];
 
 async function main(): Promise<void> {
   const program = new Command('gustbench')

@@ -5,11 +5,9 @@
  */
 import Papa from 'papaparse';
 import { refuse } from '../craft/problem.ts';
-import { DIMENSIONS, recogniseHead, type AxisName, type Quantity, type RecognisedHead } from './heads.ts';
+import type { AxisName } from '../craft/gains.ts';
+import { DIMENSIONS, recogniseHead, type Quantity, type RecognisedHead } from './heads.ts';
 import { unitFor, unitsOf, unitMeanings } from './units.ts';
-
-export { recogniseHead } from './heads.ts';
-export type { RecognisedHead } from './heads.ts';
 
 export interface OddCell {
   /** Row of numbers, counted from 1. */

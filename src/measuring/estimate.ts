@@ -5,7 +5,7 @@
  * One rule holds for every sigma given out by this folder: value ± 1.96 sigma is the 95 % interval. Where
  * sigma comes from few repeats it is widened by Student's t (GUM annex G) so that the rule stays true.
  */
-import type { AxisName } from './heads.ts';
+import type { AxisName } from '../craft/gains.ts';
 
 export interface Estimate {
   readonly value: number;

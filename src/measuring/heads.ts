@@ -3,6 +3,7 @@
  * the quantity, its unit, and where the head says so the axis or corner.
  */
 import { CORNERS, type Corner } from '../craft/build.ts';
+import type { AxisName } from '../craft/gains.ts';
 import { SI_UNIT, unitFor, unitMeanings, type Dimension, type Unit } from './units.ts';
 
 export type Quantity =
@@ -28,7 +29,6 @@ export type Quantity =
   | 'airspeed'
   | 'efficiency'
   | 'count';
-export type AxisName = 'roll' | 'pitch' | 'yaw';
 
 export interface RecognisedHead {
   readonly quantity: Quantity;
@@ -86,7 +86,8 @@ const RULES: readonly Rule[] = [
   ['airspeed', /\b(airspeed|air speed|wind speed)\b/, 0],
   ['shaftPower', /\b(shaft power|mechanical power|mech power|p mech|power mech|power out)\b/, 0],
   ['acceleration', /\b(acc|accel|accelerometer|acceleration|accelerations|beschleunigung)\b/, 0],
-  ['gyro', /\b(gyro|gyr|gyroscope|body rate|angular rate|angular velocity|rate|rates|drehrate)\b/, 0],
+  ['gyro', /\b(gyro|gyr|gyroscope)\b/, 0],
+  ['gyro', /\b(body rate|angular rate|angular velocity|rate|rates|drehrate)\b/, 1],
   ['time', /\b(time|t|timestamp|timestamps|zeit|elapsed|clock|tick|ticks)\b/, 0],
   ['speed', /\b(optical speed|rotor speed|prop speed|propeller speed|motor speed)\b/, 0],
   ['speed', /\b(speed|rpm|omega|drehzahl|revs|revolutions|rotation)\b/, 1],

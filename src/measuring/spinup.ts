@@ -39,13 +39,20 @@ export interface SpinupStep {
   readonly fit: { readonly onset_s: number; readonly start_radps: number; readonly change_radps: number };
 }
 
+interface SpinupSampling {
+  readonly rate_Hz: number;
+  readonly jitter_s: number;
+  readonly lost: number;
+  readonly rows: number;
+}
+
 export interface SpinupResult {
   readonly measurement: 'spinup';
   readonly quantities: Partial<Record<'lag' | 'lagDown' | 'delay' | 'topSpeed' | 'speedNoise', Quantified>>;
   /** As the build file's lagged motor takes it. */
   readonly motor: { readonly lag_s?: number; readonly lagDown_s?: number; readonly maxSpeed_rpm: number };
   readonly steps: readonly SpinupStep[];
-  readonly sampling: { readonly rate_Hz: number; readonly jitter_s: number; readonly lost: number };
+  readonly sampling: SpinupSampling;
   readonly notes: readonly string[];
 }
 
@@ -93,7 +100,8 @@ export function analyseSpinup(table: Table, options: SpinupOptions = {}): Spinup
     );
   }
   notes.push(...stepNotes(steps, base, byCommand.length > 0));
-  return resultOf(steps, base, top, noise, notes);
+  const sampling = { rate_Hz: base.rate_Hz, jitter_s: base.jitter_s, lost: base.lost, rows: table.rows };
+  return resultOf(steps, sampling, RPM * noise, notes);
 }
 
 function speedOf(table: Table, mapping: ColumnMapping, poles: number | undefined): Float64Array {
@@ -409,11 +417,25 @@ function stepNotes(steps: readonly SpinupStep[], base: TimeBase, fromCommand: bo
   return notes;
 }
 
+/** Joins recordings of the same motor: the steps of all of them. */
+export function joinSpinup(results: readonly SpinupResult[]): SpinupResult {
+  if (results.length === 1) return results[0];
+  const noise = Math.max(...results.map((one) => one.quantities.speedNoise?.value ?? 0));
+  const slowest = results.reduce((least, one) =>
+    one.sampling.rate_Hz < least.sampling.rate_Hz ? one : least,
+  );
+  return resultOf(
+    results.flatMap((one) => one.steps),
+    slowest.sampling,
+    noise,
+    [...new Set(results.flatMap((one) => one.notes))],
+  );
+}
+
 function resultOf(
   steps: readonly SpinupStep[],
-  base: TimeBase,
-  top: number,
-  noise: number,
+  sampling: SpinupSampling,
+  noise_rpm: number,
   notes: string[],
 ): SpinupResult {
   const quantities: Partial<Record<keyof SpinupResult['quantities'], Quantified>> = {};
@@ -435,7 +457,7 @@ function resultOf(
   if (delays.length > 0) {
     const parts = joinEstimates(delays);
     // When inside the interval the command changed is the same doubt in every step; it does not average out.
-    const joined = { ...parts, sigma: Math.hypot(parts.sigma, stepSigma(base.interval_s)) };
+    const joined = { ...parts, sigma: Math.hypot(parts.sigma, stepSigma(1 / sampling.rate_Hz)) };
     quantities.delay = quantified(
       joined,
       `ESC, wire and speed reading together; ±${(1960 * joined.sigma).toFixed(1)} ms (95 %) is ±${(1.96 * 360 * joined.sigma * 5).toFixed(1)}° of phase at a 5 Hz crossover.`,
@@ -450,7 +472,7 @@ function resultOf(
     'The highest steady speed of this recording; it is the motor’s top speed only if the step went to full command on a full pack.',
   );
   quantities.speedNoise = quantified(
-    { value: RPM * noise, sigma: (RPM * noise) / Math.sqrt(2 * base.time_s.length), unit: 'rev/min' },
+    { value: noise_rpm, sigma: noise_rpm / Math.sqrt(2 * sampling.rows), unit: 'rev/min' },
     'Noise of the speed reading; it limits the lag, not the craft.',
   );
   return {
@@ -459,10 +481,10 @@ function resultOf(
     motor: {
       ...(quantities.lag === undefined ? {} : { lag_s: quantities.lag.value }),
       ...(quantities.lagDown === undefined ? {} : { lagDown_s: quantities.lagDown.value }),
-      maxSpeed_rpm: Math.min(highest, RPM * top),
+      maxSpeed_rpm: highest,
     },
     steps,
-    sampling: { rate_Hz: base.rate_Hz, jitter_s: base.jitter_s, lost: base.lost },
+    sampling,
     notes,
   };
 }

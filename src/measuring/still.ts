@@ -6,11 +6,11 @@
  * deviation at τ = 1 s (IEEE Std 952), is N/√2 of that density.
  */
 import { refuse } from '../craft/problem.ts';
-import { AXES } from '../craft/gains.ts';
+import { AXES, type AxisName } from '../craft/gains.ts';
 import { allanDeviation, allanTerms, type AllanCurve } from './allan.ts';
 import { columnInSI, proposeMapping, type ColumnKey, type ColumnMapping, type Table } from './columns.ts';
 import { NORMAL_95, percent, quantified, type Estimate, type Quantified } from './estimate.ts';
-import { recogniseHead, type AxisName } from './heads.ts';
+import { recogniseHead } from './heads.ts';
 import { extent, robustScale } from './regression.ts';
 import { doubtRateUnit, resolutionOf, type RateUnitDoubt } from './resolution.ts';
 import { timeBase, type TimeBase } from './sampling.ts';
@@ -117,7 +117,7 @@ export function analyseStill(table: Table, options: StillOptions = {}): StillRes
   const blades = options.blades ?? 2;
   const peaks = new Map(measured.map((one) => [one.axis, findPeaks(one.spectrum, 4)]));
   const rotor =
-    rotorOf(table, base, options) ?? estimatedRotor([...peaks.values()].flat(), blades, base, segment, notes);
+    rotorOf(table, base, options) ?? estimatedRotor(measured, peaks, blades, base, segment, notes);
   const axes: Partial<Record<AxisName, StillAxis>> = {};
   const turning = options.rotorsTurning ?? 4;
   for (const one of measured) {
@@ -272,14 +272,22 @@ function rotorOf(table: Table, base: TimeBase, options: StillOptions): RotorSpee
   };
 }
 
+/** Lines below this share of the noise's rms are mains hum or chance, not turning rotors. */
+const LEAST_LINE_SHARE = 0.5;
+
 function estimatedRotor(
-  peaks: readonly { frequency_Hz: number; amplitude: number }[],
+  measured: readonly (Measured & { readonly axis: AxisName })[],
+  peaks: ReadonlyMap<AxisName, readonly { frequency_Hz: number; amplitude: number }[]>,
   blades: number,
   base: TimeBase,
   segment: number,
   notes: string[],
 ): RotorSpeed | null {
-  const rotor = estimateSpeed(peaks, blades, base.rate_Hz, base.rate_Hz / segment);
+  const strong = measured.flatMap((one) => {
+    const rms = one.noise.density * Math.sqrt(base.rate_Hz / 2);
+    return (peaks.get(one.axis) ?? []).filter((peak) => peak.amplitude > LEAST_LINE_SHARE * rms);
+  });
+  const rotor = estimateSpeed(strong, blades, base.rate_Hz, base.rate_Hz / segment);
   if (rotor !== null) {
     notes.push(
       `Rotor speed estimated from the lines: ${(60 * rotor.speed_Hz).toFixed(0)} rev/min. Give it if it is known.`,

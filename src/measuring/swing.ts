@@ -20,7 +20,7 @@ import {
   type Input,
   type Quantified,
 } from './estimate.ts';
-import type { AxisName } from './heads.ts';
+import type { AxisName } from '../craft/gains.ts';
 import type { BifilarTest, CompoundTest, SwingFile, SwingTest, SwingTools, Timing } from './swingFile.ts';
 
 /** Spread of one hand-stopped timing, start and stop together; common practice, no source. */
