@@ -4,6 +4,8 @@ import { VERSION } from '../flight/record.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
 import { addMeasureCommand } from './measure.ts';
+import { addMatchCommand } from './match.ts';
+import { addMeasureCommand } from './measure.ts';
 import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
 import { serveTrialsIfWorker } from './trialPool.ts';

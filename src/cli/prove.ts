@@ -10,7 +10,18 @@ import { TRIALS, trialByName } from '../trials/registry.ts';
 import type { TrialTask } from '../trials/runTrial.ts';
 import { axisValue, cellsInOrder, cellTask, parseSweep } from '../trials/sweep.ts';
 import type { TrialResult } from '../trials/trial.ts';
-import { DONE, numberOption, OUTSIDE_BAND, printJson, readBuild, readGains, readJson, readWind, runVerb, writeText } from './io.ts';
+import {
+  DONE,
+  numberOption,
+  OUTSIDE_BAND,
+  printJson,
+  readBuild,
+  readGains,
+  readJson,
+  readWind,
+  runVerb,
+  writeText,
+} from './io.ts';
 import { threadWorker } from './trialPool.ts';
 
 interface ProveOptions {
@@ -33,7 +44,10 @@ const runSchema = z.strictObject({
   format: formatTag('gustbench.run/1'),
   trials: z.array(z.string()).max(200),
   bands: z
-    .record(z.string(), z.record(z.string(), z.strictObject({ least: z.number().optional(), most: z.number().optional() })))
+    .record(
+      z.string(),
+      z.record(z.string(), z.strictObject({ least: z.number().optional(), most: z.number().optional() })),
+    )
     .default({}),
   notes: z.string().max(4000).default(''),
 });
@@ -81,14 +95,23 @@ async function proveTrials(options: ProveOptions, seed: number, workers: number)
   await overPool(
     workers,
     names.length,
-    (index): TrialTask => ({ trial: names[index], build, gains, seed, ...(wind === undefined ? {} : { wind }), ...(run?.bands[names[index]] === undefined ? {} : { bands: run.bands[names[index]] }) }),
+    (index): TrialTask => ({
+      trial: names[index],
+      build,
+      gains,
+      seed,
+      ...(wind === undefined ? {} : { wind }),
+      ...(run?.bands[names[index]] === undefined ? {} : { bands: run.bands[names[index]] }),
+    }),
     (index, answer) => {
       results[index] = resultOf(answer);
     },
   );
   const pass = results.every((result) => result.pass);
   if (options.html !== undefined) {
-    writeText(options.html, [reportHtml({ build, gains, results, notes: options.notes ?? run?.notes ?? '', seed })]);
+    writeText(options.html, [
+      reportHtml({ build, gains, results, notes: options.notes ?? run?.notes ?? '', seed }),
+    ]);
   }
   if (options.json === true) printJson({ pass, seed, trials: results });
   else describe(results);
@@ -113,7 +136,13 @@ async function proveSweep(options: ProveOptions, workers: number): Promise<numbe
   const rows = sweep.y?.count ?? 1;
   const order = cellsInOrder(sweep.x.count, rows);
   const names = trialByName(sweep.trial).scores.map((score) => score.name);
-  const cells = new Array<{ x: number; y: number | null; scores: Record<string, number | null> | null; pass: boolean; refused?: string }>(order.length);
+  const cells = new Array<{
+    x: number;
+    y: number | null;
+    scores: Record<string, number | null> | null;
+    pass: boolean;
+    refused?: string;
+  }>(order.length);
   let shown = 0;
   await overPool(
     workers,
@@ -121,13 +150,19 @@ async function proveSweep(options: ProveOptions, workers: number): Promise<numbe
     (index) => cellTask(sweep, subject, order[index]),
     (index, answer) => {
       const cell = order[index];
-      const at = { x: axisValue(sweep.x, cell.column), y: sweep.y === undefined ? null : axisValue(sweep.y, cell.row) };
+      const at = {
+        x: axisValue(sweep.x, cell.column),
+        y: sweep.y === undefined ? null : axisValue(sweep.y, cell.row),
+      };
       const place = cell.row * sweep.x.count + cell.column;
       if (answer.kind === 'done') {
         const scores = Object.fromEntries(answer.result.scores.map((score) => [score.name, score.value]));
         cells[place] = { ...at, scores, pass: answer.result.pass };
       } else {
-        const why = answer.kind === 'refused' ? `${answer.problems[0]?.path}: ${answer.problems[0]?.allowed}` : answer.reason;
+        const why =
+          answer.kind === 'refused'
+            ? `${answer.problems[0]?.path}: ${answer.problems[0]?.allowed}`
+            : answer.reason;
         cells[place] = { ...at, scores: null, pass: false, refused: why };
       }
       shown++;
@@ -139,7 +174,9 @@ async function proveSweep(options: ProveOptions, workers: number): Promise<numbe
   else {
     process.stdout.write(`${[sweep.x.path, sweep.y?.path ?? '', ...names, 'pass'].join('\t')}\n`);
     for (const cell of cells) {
-      process.stdout.write(`${[cell.x, cell.y ?? '', ...names.map((name) => cell.scores?.[name] ?? ''), cell.pass ? 'within' : 'OUTSIDE'].join('\t')}\n`);
+      process.stdout.write(
+        `${[cell.x, cell.y ?? '', ...names.map((name) => cell.scores?.[name] ?? ''), cell.pass ? 'within' : 'OUTSIDE'].join('\t')}\n`,
+      );
     }
   }
   return pass ? DONE : OUTSIDE_BAND;
@@ -153,7 +190,9 @@ async function overPool(
 ): Promise<void> {
   const entry = new URL(import.meta.url);
   const workers: TrialWorker[] =
-    count === 1 ? [inPlaceWorker()] : Array.from({ length: Math.min(count, tasks) }, () => threadWorker(entry));
+    count === 1
+      ? [inPlaceWorker()]
+      : Array.from({ length: Math.min(count, tasks) }, () => threadWorker(entry));
   let problem: unknown = null;
   const run = runPool(workers, tasks, taskAt, (index, answer) => {
     try {
@@ -170,10 +209,15 @@ async function overPool(
 
 function describe(results: readonly TrialResult[]): void {
   for (const result of results) {
-    process.stdout.write(`${result.pass ? 'within ' : 'OUTSIDE'} ${result.title}${result.stopped === null ? '' : ` (${result.stopped})`}\n`);
+    process.stdout.write(
+      `${result.pass ? 'within ' : 'OUTSIDE'} ${result.title}${result.stopped === null ? '' : ` (${result.stopped})`}\n`,
+    );
     for (const score of result.scores) {
-      const value = score.value === null ? 'not reached' : `${Number(score.value.toPrecision(3))} ${score.unit}`;
-      process.stdout.write(`        ${score.name.padEnd(18)}${value.padEnd(20)}${bandText(score.band, score.unit)}${score.pass ? '' : '   OUTSIDE'}\n`);
+      const value =
+        score.value === null ? 'not reached' : `${Number(score.value.toPrecision(3))} ${score.unit}`;
+      process.stdout.write(
+        `        ${score.name.padEnd(18)}${value.padEnd(20)}${bandText(score.band, score.unit)}${score.pass ? '' : '   OUTSIDE'}\n`,
+      );
     }
   }
   process.stdout.write('A simulated pass is no clearance to fly.\n');

@@ -43,8 +43,14 @@ export function closedLoopPoles(loop: RateLoop): { re: number; im: number }[] {
 /**
  * @param noise_dps standard deviation of the gyro's noise at a sample, deg/s
  * @param noiseCorrelation of neighbouring samples (first-order), 0 for white
+ * @param coarse a quarter of the frequencies and no step: for maps
  */
-export function analyse(loop: RateLoop, noise_dps: number, noiseCorrelation = 0): AxisAnalysis {
+export function analyse(
+  loop: RateLoop,
+  noise_dps: number,
+  noiseCorrelation = 0,
+  coarse = false,
+): AxisAnalysis {
   const polesMaxRadius = closedLoopPoles(loop).reduce(
     (most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)),
     0,
@@ -56,6 +62,7 @@ export function analyse(loop: RateLoop, noise_dps: number, noiseCorrelation = 0)
     low: nyquist * LOW_SHARE,
     high: nyquist,
     sampled: true,
+    coarse,
   });
   const conditionallyStable = stable && margins.gainReduction_dB !== null;
   return {
@@ -63,9 +70,10 @@ export function analyse(loop: RateLoop, noise_dps: number, noiseCorrelation = 0)
     conditionallyStable,
     polesMaxRadius,
     margins,
-    step: stable
-      ? stepMetrics(stepResponse(loop, polesMaxRadius), loop)
-      : { rise_s: null, overshoot_pct: null, settle_s: null },
+    step:
+      stable && !coarse
+        ? stepMetrics(stepResponse(loop, polesMaxRadius), loop)
+        : { rise_s: null, overshoot_pct: null, settle_s: null },
     noiseAtMotor_us_rms: stable ? noiseAtMotor(loop, noise_dps, noiseCorrelation) : null,
     statement: statementOf(stable, conditionallyStable, margins),
   };

@@ -149,6 +149,12 @@ export function openLoopAt(loop: RateLoop, omega: number): Complex {
   return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
 }
 
+/** Measured rate to −u: gyro filters and controller. */
+export function feedbackAt(loop: RateLoop, omega: number): Complex {
+  const at = onCircle(omega * loop.tick_s);
+  return times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at));
+}
+
 /** Setpoint to plant output at `omega`. */
 export function closedLoopAt(loop: RateLoop, omega: number): Complex {
   const at = onCircle(omega * loop.tick_s);

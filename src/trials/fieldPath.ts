@@ -31,7 +31,12 @@ export function withField(subject: Subject, path: string, value: number, file = 
     at = Object.hasOwn(Object(at), key) ? (at as Record<string, unknown>)[key] : undefined;
   }
   if (last === undefined || typeof at !== 'object' || at === null || !Object.hasOwn(at, last)) {
-    throw refuse(file, 'path', path, 'the path of a number in build, gains or wind, such as gains.axes.roll.d_us_per_dps2');
+    throw refuse(
+      file,
+      'path',
+      path,
+      'the path of a number in build, gains or wind, such as gains.axes.roll.d_us_per_dps2',
+    );
   }
   const place = at as Record<string, unknown>;
   if (typeof place[last] !== 'number') {

@@ -165,6 +165,12 @@ export function stepScores(
 }
 
 /** Step metrics of a rate record of one axis. */
-export function axisStepScores(record: Recorder, axis: AxisName, start_s: number, end_s: number, size: number): StepScores {
+export function axisStepScores(
+  record: Recorder,
+  axis: AxisName,
+  start_s: number,
+  end_s: number,
+  size: number,
+): StepScores {
   return stepScores(record.column('t_s'), record.column(`rate_${axis}_dps`), start_s, end_s, size);
 }

@@ -9,7 +9,12 @@ import type { TrialResult } from './trial.ts';
 
 export type TaskAnswer =
   | { readonly id: number; readonly kind: 'done'; readonly result: TrialResult }
-  | { readonly id: number; readonly kind: 'refused'; readonly file: string; readonly problems: readonly Problem[] }
+  | {
+      readonly id: number;
+      readonly kind: 'refused';
+      readonly file: string;
+      readonly problems: readonly Problem[];
+    }
   | { readonly id: number; readonly kind: 'failed'; readonly reason: string };
 
 export interface TaskMessage {
@@ -22,7 +27,8 @@ export function answerTask({ id, task }: TaskMessage): TaskAnswer {
   try {
     return { id, kind: 'done', result: runTrial(task) };
   } catch (error) {
-    if (error instanceof InputError) return { id, kind: 'refused', file: error.file, problems: error.problems };
+    if (error instanceof InputError)
+      return { id, kind: 'refused', file: error.file, problems: error.problems };
     return { id, kind: 'failed', reason: error instanceof Error ? error.message : String(error) };
   }
 }

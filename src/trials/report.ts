@@ -29,10 +29,18 @@ export function reportHtml(content: ReportContent): string {
   const { results, baseline } = content;
   const rows = results.flatMap((result) => {
     const before = baseline?.results.find((one) => one.trial === result.trial);
-    return result.scores.map((score, i) => scoreRow(result, score, before?.scores[i] ?? null, i === 0, baseline !== undefined));
+    return result.scores.map((score, i) =>
+      scoreRow(result, score, before?.scores[i] ?? null, i === 0, baseline !== undefined),
+    );
   });
   const failed = results.filter((result) => !result.pass);
-  const repeat = { version: VERSION, seed: content.seed, build: content.build, gains: content.gains, ...(baseline === undefined ? {} : { baselineGains: baseline.gains }) };
+  const repeat = {
+    version: VERSION,
+    seed: content.seed,
+    build: content.build,
+    gains: content.gains,
+    ...(baseline === undefined ? {} : { baselineGains: baseline.gains }),
+  };
   return `<!doctype html><html lang="en"><head><meta charset="utf-8"><title>Trials: ${escape(content.build.name)}</title><style>
 body{font:14px/1.45 system-ui,sans-serif;max-width:1000px;margin:24px auto;padding:0 16px;color:#1b2427;background:#fff;font-variant-numeric:tabular-nums}
 table{border-collapse:collapse;width:100%}th,td{text-align:left;padding:2px 10px 2px 0;border-bottom:1px solid #c9c4b6;vertical-align:top}
@@ -46,7 +54,13 @@ ${content.notes === '' ? '' : `<p>${escape(content.notes)}</p>`}
 `;
 }
 
-function scoreRow(result: TrialResult, score: Score, before: Score | null, first: boolean, compared: boolean): string {
+function scoreRow(
+  result: TrialResult,
+  score: Score,
+  before: Score | null,
+  first: boolean,
+  compared: boolean,
+): string {
   const difference = before?.value == null || score.value === null ? '—' : shown(score.value - before.value);
   const cells = [
     first ? `${escape(result.title)}${result.stopped === null ? '' : ` (${escape(result.stopped)})`}` : '',

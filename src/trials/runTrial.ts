@@ -46,11 +46,19 @@ export function runTrial(task: TrialTask): TrialResult {
 
 /** A score that was never reached is outside every band. */
 function within(value: number | null, band: Band): boolean {
-  return value !== null && (band.least === undefined || value >= band.least) && (band.most === undefined || value <= band.most);
+  return (
+    value !== null &&
+    (band.least === undefined || value >= band.least) &&
+    (band.most === undefined || value <= band.most)
+  );
 }
 
 /** The flight of a trial with its record: for plots and for flying it again. */
-export function flyTrial(trial: Trial, task: Pick<TrialTask, 'build' | 'gains' | 'seed' | 'wind'>, signals: readonly string[] = TRIAL_SIGNALS): TrialRun {
+export function flyTrial(
+  trial: Trial,
+  task: Pick<TrialTask, 'build' | 'gains' | 'seed' | 'wind'>,
+  signals: readonly string[] = TRIAL_SIGNALS,
+): TrialRun {
   const { gains, seed } = task;
   const setup = trial.setup({ build: task.build, gains, wind: task.wind ?? null });
   const flight = newFlight(task.build, { ...setup, gains, seed, start: trial.start });

@@ -50,7 +50,8 @@ export function parseSweep(raw: unknown, subject: Subject, file = 'sweep'): Swee
   const sweep = parseWith(sweepSchema, raw, file);
   trialByName(sweep.trial);
   const cells = sweep.x.count * (sweep.y?.count ?? 1);
-  if (cells > MOST_CELLS) throw refuse(file, 'x.count', `${cells} cells`, `at most ${MOST_CELLS} cells in all`);
+  if (cells > MOST_CELLS)
+    throw refuse(file, 'x.count', `${cells} cells`, `at most ${MOST_CELLS} cells in all`);
   for (const axis of [sweep.x, sweep.y]) {
     if (axis === undefined) continue;
     if (axis.logarithmic && !(axis.from > 0 && axis.to > 0)) {
@@ -64,7 +65,9 @@ export function parseSweep(raw: unknown, subject: Subject, file = 'sweep'): Swee
 
 export function axisValue(axis: SweepAxis, index: number): number {
   const share = axis.count === 1 ? 0 : index / (axis.count - 1);
-  const value = axis.logarithmic ? axis.from * (axis.to / axis.from) ** share : axis.from + share * (axis.to - axis.from);
+  const value = axis.logarithmic
+    ? axis.from * (axis.to / axis.from) ** share
+    : axis.from + share * (axis.to - axis.from);
   return Number(value.toPrecision(12));
 }
 
@@ -95,11 +98,19 @@ export function cellsInOrder(columns: number, rows: number): Cell[] {
 /** The task of one cell. @throws InputError when the cell's values are not allowed together. */
 export function cellTask(sweep: Sweep, subject: Subject, cell: Cell): TrialTask {
   let at = subject;
-  for (const path of [sweep.x.path, ...sweep.x.also]) at = withField(at, path, axisValue(sweep.x, cell.column));
+  for (const path of [sweep.x.path, ...sweep.x.also])
+    at = withField(at, path, axisValue(sweep.x, cell.column));
   if (sweep.y !== undefined) {
-    for (const path of [sweep.y.path, ...sweep.y.also]) at = withField(at, path, axisValue(sweep.y, cell.row));
+    for (const path of [sweep.y.path, ...sweep.y.also])
+      at = withField(at, path, axisValue(sweep.y, cell.row));
   }
-  return { trial: sweep.trial, build: at.build, gains: at.gains, seed: sweep.seed, ...(at.wind === null ? {} : { wind: at.wind }) };
+  return {
+    trial: sweep.trial,
+    build: at.build,
+    gains: at.gains,
+    seed: sweep.seed,
+    ...(at.wind === null ? {} : { wind: at.wind }),
+  };
 }
 
 /** The map of derivative gain against D cutoff, roll and pitch together, around the gains given. */
@@ -111,8 +122,22 @@ export function derivativeMap(subject: Subject, cells = 24): Sweep {
     format: SWEEP_FORMAT,
     name: 'D against its cutoff',
     trial: 'gust-and-noise',
-    x: { path: 'gains.axes.roll.d_us_per_dps2', also: ['gains.axes.pitch.d_us_per_dps2'], from: 0, to: Number((4 * d).toPrecision(3)), count: cells, logarithmic: false },
-    y: { path: 'gains.derivativeLowPass_Hz', also: [], from: 10, to: Math.round(Math.min(0.9 * nyquist, 250)), count: cells, logarithmic: true },
+    x: {
+      path: 'gains.axes.roll.d_us_per_dps2',
+      also: ['gains.axes.pitch.d_us_per_dps2'],
+      from: 0,
+      to: Number((4 * d).toPrecision(3)),
+      count: cells,
+      logarithmic: false,
+    },
+    y: {
+      path: 'gains.derivativeLowPass_Hz',
+      also: [],
+      from: 10,
+      to: Math.round(Math.min(0.9 * nyquist, 250)),
+      count: cells,
+      logarithmic: true,
+    },
     seed: 1,
   };
 }

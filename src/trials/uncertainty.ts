@@ -15,15 +15,28 @@ export interface Spread {
 
 const inertia = (subject: Subject, factor: number): Subject => {
   const I = subject.build.airframe.inertia_kgm2;
-  const scaled = { xx: I.xx * factor, yy: I.yy * factor, zz: I.zz * factor, xy: I.xy * factor, xz: I.xz * factor, yz: I.yz * factor };
-  return { ...subject, build: { ...subject.build, airframe: { ...subject.build.airframe, inertia_kgm2: scaled } } };
+  const scaled = {
+    xx: I.xx * factor,
+    yy: I.yy * factor,
+    zz: I.zz * factor,
+    xy: I.xy * factor,
+    xz: I.xz * factor,
+    yz: I.yz * factor,
+  };
+  return {
+    ...subject,
+    build: { ...subject.build, airframe: { ...subject.build.airframe, inertia_kgm2: scaled } },
+  };
 };
 
 export const SPREADS: readonly Spread[] = [
   {
     name: 'mass',
     share: 0.03,
-    apply: (s, f) => ({ ...s, build: { ...s.build, airframe: { ...s.build.airframe, mass_kg: s.build.airframe.mass_kg * f } } }),
+    apply: (s, f) => ({
+      ...s,
+      build: { ...s.build, airframe: { ...s.build.airframe, mass_kg: s.build.airframe.mass_kg * f } },
+    }),
   },
   { name: 'inertia', share: 0.1, apply: inertia },
   {
@@ -49,17 +62,32 @@ export const SPREADS: readonly Spread[] = [
   {
     name: 'voltage',
     share: 0.25,
-    apply: (s, f) => ({ ...s, build: { ...s.build, battery: { ...s.build.battery, charge: Math.max(0.05, Math.min(1, 0.65 * f)) } } }),
+    apply: (s, f) => ({
+      ...s,
+      build: { ...s.build, battery: { ...s.build.battery, charge: Math.max(0.05, Math.min(1, 0.65 * f)) } },
+    }),
   },
   {
     name: 'delay',
     share: 0.3,
-    apply: (s, f) => ({ ...s, gains: { ...s.gains, computeDelay_s: Math.max(0, Math.min(0.05, (s.gains.computeDelay_s + 0.0005) * f)) } }),
+    apply: (s, f) => ({
+      ...s,
+      gains: {
+        ...s.gains,
+        computeDelay_s: Math.max(0, Math.min(0.05, (s.gains.computeDelay_s + 0.0005) * f)),
+      },
+    }),
   },
   {
     name: 'noise',
     share: 0.3,
-    apply: (s, f) => ({ ...s, build: { ...s.build, gyro: { ...s.build.gyro, noise_dps_per_rtHz: s.build.gyro.noise_dps_per_rtHz * Math.max(0, f) } } }),
+    apply: (s, f) => ({
+      ...s,
+      build: {
+        ...s.build,
+        gyro: { ...s.build.gyro, noise_dps_per_rtHz: s.build.gyro.noise_dps_per_rtHz * Math.max(0, f) },
+      },
+    }),
   },
 ];
 
@@ -128,7 +156,8 @@ export function whatMatters(
 ): { readonly name: string; readonly correlation: number }[] {
   return spreads
     .map((spread, i) => {
-      const correlation = values.length < 3 ? 0 : sampleRankCorrelation(Array.from(factors[i]), values.slice());
+      const correlation =
+        values.length < 3 ? 0 : sampleRankCorrelation(Array.from(factors[i]), values.slice());
       return { name: spread.name, correlation: Number.isFinite(correlation) ? correlation : 0 };
     })
     .sort((a, b) => Math.abs(b.correlation) - Math.abs(a.correlation));

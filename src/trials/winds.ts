@@ -4,7 +4,11 @@ import { CALM, parseWind, WIND_FORMAT, type Wind } from '../craft/wind.ts';
 const KNOT_MPS = 0.514444;
 
 /** MIL-F-8785C levels by wind at 20 ft: 15, 30, 45 kn. */
-export const TURBULENCE_LEVELS_MPS = { light: 15 * KNOT_MPS, moderate: 30 * KNOT_MPS, severe: 45 * KNOT_MPS } as const;
+export const TURBULENCE_LEVELS_MPS = {
+  light: 15 * KNOT_MPS,
+  moderate: 30 * KNOT_MPS,
+  severe: 45 * KNOT_MPS,
+} as const;
 export type TurbulenceLevel = keyof typeof TURBULENCE_LEVELS_MPS;
 
 /** Turbulence of a level with a mean wind of half its wind at 20 ft, times `scale`. */

@@ -1,7 +1,18 @@
 /** The craft itself: noise floor, throttle, battery, payload, faults, recovery. */
 import { CALM } from '../../craft/wind.ts';
 import type { Fault } from '../../disturbance/faults.ts';
-import { energy_kJ_per_min, motorActivity_us, peakDrift_m, peakHeightError_m, peakTilt_deg, rateError_dps, rms, rowsBetween, saturation_pct, windingHeat_W } from '../measures.ts';
+import {
+  energy_kJ_per_min,
+  motorActivity_us,
+  peakDrift_m,
+  peakHeightError_m,
+  peakTilt_deg,
+  rateError_dps,
+  rms,
+  rowsBetween,
+  saturation_pct,
+  windingHeat_W,
+} from '../measures.ts';
 import { COMMON, type ScoreDefinition, type Trial, type TrialRun } from '../trial.ts';
 import { gustWind, turbulenceWind } from '../winds.ts';
 import { hoverThrottle } from './hoverThrottle.ts';
@@ -73,7 +84,12 @@ const heldScores = (tilt: number, drift: number): ScoreDefinition[] => [
 
 function heldValues({ record }: TrialRun, from_s: number, to_s: number): number[] {
   const [from, to] = rowsBetween(record, from_s, to_s);
-  return [peakTilt_deg(record, from, to), peakDrift_m(record, from, to), peakHeightError_m(record, from, to), saturation_pct(record, from, to)];
+  return [
+    peakTilt_deg(record, from, to),
+    peakDrift_m(record, from, to),
+    peakHeightError_m(record, from, to),
+    saturation_pct(record, from, to),
+  ];
 }
 
 export const lowBattery: Trial = {
@@ -128,7 +144,9 @@ function faulty(
     setup: ({ build, wind }) => ({
       build,
       wind: wind ?? gustWind(6, 0, 2, 0.6),
-      faults: faults(Math.max(...build.rotors.map((rotor) => Math.hypot(rotor.position_m[0], rotor.position_m[1])))),
+      faults: faults(
+        Math.max(...build.rotors.map((rotor) => Math.hypot(rotor.position_m[0], rotor.position_m[1]))),
+      ),
       sticks: moored,
     }),
     score: (run) => heldValues(run, 0.2, 6),

@@ -37,7 +37,13 @@ export function rateStep(axis: AxisName, size: 'small' | 'large'): Trial {
     score: ({ record, gains }) => {
       const step = axisStepScores(record, axis, START_S, START_S + hold_s, share * gains.maxRate_dps[axis]);
       const [from, to] = rowsBetween(record, START_S, START_S + hold_s);
-      return [step.rise_s, step.overshoot_pct, step.settle_s, step.steadyError_pct, saturation_pct(record, from, to)];
+      return [
+        step.rise_s,
+        step.overshoot_pct,
+        step.settle_s,
+        step.steadyError_pct,
+        saturation_pct(record, from, to),
+      ];
     },
   };
 }

@@ -1,0 +1,69 @@
+/** Curves of one loop for plots, as typed arrays: Bode, Nyquist, sensitivity, step, poles, noise spectrum. */
+import { argument, complex, magnitude, plus } from './complex.ts';
+import { closedLoopPoles, stepResponse, type StepResponse } from './analysis.ts';
+import { feedbackAt, openLoopAt, type RateLoop } from './rateLoop.ts';
+
+export interface LoopCurves {
+  readonly f_Hz: Float64Array;
+  readonly gain_dB: Float64Array;
+  /** Unwrapped, deg. */
+  readonly phase_deg: Float64Array;
+  readonly nyquistRe: Float64Array;
+  readonly nyquistIm: Float64Array;
+  /** |1/(1+L)|, dB. */
+  readonly sensitivity_dB: Float64Array;
+  /** Axis command's noise density, µs/√Hz, for gyro noise of `density` deg/s per √Hz. */
+  readonly noise_us_per_rtHz: Float64Array;
+  readonly poles: readonly { readonly re: number; readonly im: number }[];
+  readonly step: StepResponse | null;
+}
+
+const POINTS = 260;
+
+/**
+ * @param density gyro noise density
+ * @param low_Hz lowest frequency drawn
+ */
+export function loopCurves(loop: RateLoop, density: number, low_Hz = 0.2): LoopCurves {
+  const nyquist_Hz = 0.5 / loop.tick_s;
+  const f_Hz = Float64Array.from(
+    { length: POINTS },
+    (_, i) => low_Hz * (nyquist_Hz / low_Hz) ** (i / (POINTS - 1)),
+  );
+  const gain_dB = new Float64Array(POINTS);
+  const phase_deg = new Float64Array(POINTS);
+  const nyquistRe = new Float64Array(POINTS);
+  const nyquistIm = new Float64Array(POINTS);
+  const sensitivity_dB = new Float64Array(POINTS);
+  const noise_us_per_rtHz = new Float64Array(POINTS);
+  let last = 0;
+  for (let i = 0; i < POINTS; i++) {
+    const omega = 2 * Math.PI * f_Hz[i];
+    const L = openLoopAt(loop, omega);
+    const one = plus(L, complex(1));
+    gain_dB[i] = 20 * Math.log10(magnitude(L));
+    let phase = (argument(L) * 180) / Math.PI;
+    // Continuous from the low end, where a rate loop stands between −180° and 0.
+    if (i === 0) phase = phase > 90 ? phase - 360 : phase;
+    else phase -= 360 * Math.round((phase - last) / 360);
+    last = phase;
+    phase_deg[i] = phase;
+    nyquistRe[i] = L.re;
+    nyquistIm[i] = L.im;
+    sensitivity_dB[i] = -20 * Math.log10(magnitude(one));
+    noise_us_per_rtHz[i] = (density * magnitude(feedbackAt(loop, omega))) / magnitude(one);
+  }
+  const poles = closedLoopPoles(loop);
+  const radius = poles.reduce((most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)), 0);
+  return {
+    f_Hz,
+    gain_dB,
+    phase_deg,
+    nyquistRe,
+    nyquistIm,
+    sensitivity_dB,
+    noise_us_per_rtHz,
+    poles,
+    step: radius < 1 ? stepResponse(loop, radius) : null,
+  };
+}
