@@ -3,14 +3,13 @@ import { Command, CommanderError } from 'commander';
 import { VERSION } from '../flight/record.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
-import { addMeasureCommand } from './measure.ts';
 import { addMatchCommand } from './match.ts';
 import { addMeasureCommand } from './measure.ts';
 import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
 import { serveTrialsIfWorker } from './trialPool.ts';
 
-const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand];
+const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand, addMatchCommand];
 
 async function main(): Promise<void> {
   const program = new Command('gustbench')
@@ -19,7 +18,10 @@ async function main(): Promise<void> {
     .exitOverride()
     .configureOutput({ outputError: (text, write) => write(text.replace(/^error: /, 'command line: ')) });
   for (const add of VERBS) add(program);
-  for (const command of program.commands) command.exitOverride();
+  for (const command of program.commands) {
+    command.exitOverride();
+    for (const inner of command.commands) inner.exitOverride();
+  }
   try {
     await program.parseAsync();
   } catch (error) {
