@@ -1,6 +1,7 @@
 /** The command line: six verbs over the same core as the page. */
 import { Command, CommanderError } from 'commander';
 import { VERSION } from '../flight/record.ts';
+import { addCarryCommand } from './carry.ts';
 import { addFlyCommand } from './fly.ts';
 import { BAD_INPUT } from './io.ts';
 import { addMatchCommand } from './match.ts';
@@ -9,7 +10,7 @@ import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
 import { serveTrialsIfWorker } from './trialPool.ts';
 
-const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand, addMatchCommand];
+const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand, addMatchCommand, addCarryCommand];
 
 async function main(): Promise<void> {
   const program = new Command('gustbench')
