@@ -37,8 +37,8 @@ const SAME_SPEED = 0.01;
 /** More rows than this are gathered in bins. */
 const MOST_SINGLE_ROWS = 40;
 const BINS = 20;
-/** Relative scatter below which nothing is called an outlier. */
-const LEAST_SCATTER = 0.004;
+/** Scatter a stand may have at least before a row is called an outlier: 1 % of full scale is a good stand. */
+const LEAST_SCATTER = 0.01;
 /** A point of the table with a sigma beyond this share says nothing. */
 const WORST_POINT = 0.15;
 

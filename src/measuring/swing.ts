@@ -95,6 +95,7 @@ export function joinSwings(tests: readonly AxisSwing[]): SwingResult {
     );
   }
   notes.push(...triangleNotes(quantities));
+  notes.push(...tests.flatMap((test) => test.notes.map((note) => `${test.axis}: ${note}`)));
   return { measurement: 'swing', quantities, tests, notes };
 }
 
