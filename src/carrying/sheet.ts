@@ -179,11 +179,17 @@ function margins(rows: readonly SheetMargins[]): string {
   );
 }
 
+/** One row a trial; what is outside its band is marked where it stands. */
 function scores(rows: readonly SheetScore[]): string {
   if (rows.length === 0) return '<p>No trial was run.</p>';
+  const trials = [...new Set(rows.map((row) => row.trial))];
   return table(
-    ['trial', 'score', 'value', 'band', ''],
-    rows.map((row) => [row.trial, row.score, row.value, row.band, row.pass ? 'within' : 'OUTSIDE']),
+    ['trial', 'scores (band)', ''],
+    trials.map((trial) => {
+      const own = rows.filter((row) => row.trial === trial);
+      const text = own.map((row) => `${row.score} ${row.value} (${row.band})${row.pass ? '' : ' OUTSIDE'}`).join(';  ');
+      return [trial, text, own.every((row) => row.pass) ? 'within' : 'OUTSIDE'];
+    }),
   );
 }
 
