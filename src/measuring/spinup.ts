@@ -15,8 +15,9 @@ import { joinEstimates } from './swing.ts';
 const RPM = 30 / Math.PI;
 /** A change of command by this share of its range is a step. */
 const COMMAND_STEP = 0.08;
-/** A change of speed below this share of the top speed is no step. */
+/** A change of speed below this share of the top speed is no step: without a command, and with one. */
 const SPEED_STEP = 0.04;
+const COMMANDED_STEP = 0.01;
 /** Fitted span after the onset, in lags. */
 const SPAN_LAGS = 8;
 const LEAST_POINTS = 6;
@@ -72,7 +73,8 @@ export function analyseSpinup(table: Table, options: SpinupOptions = {}): Spinup
   const command = commandOf(table, mapping);
   const noise = noiseOf(speed);
   const top = extent(speed)[1];
-  const least = Math.max(SPEED_STEP * top, 8 * noise);
+  const byCommand = command === null ? [] : commandEdges(base.time_s, command);
+  const least = Math.max((byCommand.length > 0 ? COMMANDED_STEP : SPEED_STEP) * top, 8 * noise);
   const spread = extent(speed);
   if (!(spread[1] - spread[0] > least)) {
     throw refuse(
@@ -82,7 +84,6 @@ export function analyseSpinup(table: Table, options: SpinupOptions = {}): Spinup
       'a recording in which the speed steps up or down and settles',
     );
   }
-  const byCommand = command === null ? [] : commandEdges(base.time_s, command);
   const edges = byCommand.length > 0 ? byCommand : speedEdges(base, speed, noise, least);
   if (command !== null && byCommand.length === 0)
     notes.push('The command makes no steps; they were looked for in the speed.');
