@@ -31,6 +31,22 @@ const solid = z.strictObject(
   { error: 'a solid' },
 );
 
+/** Lines on the ground, drawn only: courts, paths, roads. */
+const marking = z.strictObject(
+  {
+    tone: z.enum(['paint', 'path'], { error: 'one of "paint", "path"' }),
+    width_m: positive(50, 'm'),
+    /** Places north, east along the middle of the line. */
+    line_m: z
+      .array(z.tuple([quantity(-5000, 5000, 'm'), quantity(-5000, 5000, 'm')]), {
+        error: 'a list of [north, east]',
+      })
+      .min(2, { error: 'at least 2 places' })
+      .max(200, { error: 'at most 200 places' }),
+  },
+  { error: 'an object with tone, width_m, line_m' },
+);
+
 export const sceneSchema = z.strictObject(
   {
     format: formatTag(SCENE_FORMAT),
@@ -50,6 +66,10 @@ export const sceneSchema = z.strictObject(
       restitution: quantity(0, 0.9, '').default(0.2),
     }),
     solids: z.array(solid).max(200, { error: 'at most 200 solids' }).default([]),
+    markings: z
+      .array(marking, { error: 'a list of markings' })
+      .max(100, { error: 'at most 100 markings' })
+      .default([]),
     start: z.strictObject({
       position_m: vector(-5000, 5000, 'm'),
       heading_deg: quantity(-360, 360, 'deg').default(0),
@@ -62,6 +82,7 @@ export const sceneSchema = z.strictObject(
 
 export type Scene = z.output<typeof sceneSchema>;
 export type Solid = Scene['solids'][number];
+export type Marking = Scene['markings'][number];
 
 /**
  * Validates a scene object, its wind included.

@@ -177,6 +177,30 @@ describe('gains, wind and scene files', () => {
     expect(() => parseWith(quantity(0, 1, 'm'), 2, 'f')).toThrow(InputError);
   });
 
+  it('the three sites are invented, marked so, and start and pilot stand outside every solid', () => {
+    const sites = ['sports-hall', 'estuary-bridge', 'quarry-face'].map((name) =>
+      parseScene(rawDemo(`${name}.scene.json`), name),
+    );
+    for (const site of sites) {
+      expect(site.note).toMatch(/^Invented for demonstration/);
+      expect(new Set(site.solids.map((one) => one.name)).size).toBe(site.solids.length);
+      for (const place of [site.start.position_m, site.pilot_m]) {
+        const inside = site.solids.filter((one) => {
+          const turn = (one.heading_deg * Math.PI) / 180;
+          const [dn, de] = [place[0] - one.centre_m[0], place[1] - one.centre_m[1]];
+          const along = Math.abs(Math.cos(turn) * dn + Math.sin(turn) * de);
+          const across = Math.abs(Math.cos(turn) * de - Math.sin(turn) * dn);
+          const high = Math.abs(place[2] - 0.5 - one.centre_m[2]) < one.size_m[2] / 2;
+          return high && along < one.size_m[0] / 2 + 0.5 && across < one.size_m[1] / 2 + 0.5;
+        });
+        expect(inside.map((one) => one.name)).toEqual([]);
+      }
+    }
+    expect(sites.map((site) => site.wind.mean_mps > 0)).toEqual([false, true, true]);
+    expect(sites[2].elevation_m).toBe(1200);
+    expect(sites[1].solids.filter((one) => one.wake !== undefined).length).toBe(3);
+  });
+
   it('every file in scenes/ is valid', () => {
     const folder = new URL('../../scenes/', import.meta.url);
     for (const name of readdirSync(folder)) {
