@@ -78,7 +78,7 @@ class Work {
 function takeParts(work: Work, parts: PartsResult): void {
   const inertia = work.build.airframe.inertia_kgm2;
   for (const key of ['xx', 'yy', 'zz', 'xy', 'xz', 'yz'] as const) {
-    const estimate = parts.quantities[`inertia_${key}`];
+    const estimate = parts.quantities[`inertia_${key}_kgm2`];
     inertia[key] = estimate.value;
     work.tell(`airframe.inertia_kgm2.${key}`, estimate, 'estimate from parts');
   }
@@ -103,7 +103,7 @@ function takeBalance(work: Work, balance: BalanceResult): void {
 
 function takeSwing(work: Work, swing: SwingResult): void {
   for (const key of ['xx', 'yy', 'zz'] as const) {
-    const estimate = swing.quantities[`inertia_${key}`];
+    const estimate = swing.quantities[`inertia_${key}_kgm2`];
     if (estimate === undefined) continue;
     work.build.airframe.inertia_kgm2[key] = estimate.value;
     work.tell(`airframe.inertia_kgm2.${key}`, estimate, 'swing test');
@@ -182,7 +182,7 @@ function takeDeadZone(work: Work, stand: StandResult): void {
  * gives the inertia of propeller and bell. A lagged motor takes the lags as they are.
  */
 function takeSpinup(work: Work, spinup: SpinupResult): void {
-  const { lag, lagDown } = spinup.quantities;
+  const { lag_s: lag, lagDown_s: lagDown } = spinup.quantities;
   const { build } = work;
   if (isElectric(build.motor)) {
     const up = spinup.steps.filter((step) => step.direction === 'up');

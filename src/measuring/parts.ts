@@ -73,7 +73,7 @@ export interface PartsResult {
   readonly measurement: 'parts';
   readonly mass_kg: Estimate;
   readonly centreOfMass_m: readonly [Estimate, Estimate, Estimate];
-  readonly quantities: Record<`inertia_${Tensor}`, Quantified>;
+  readonly quantities: Record<`inertia_${Tensor}_kgm2`, Quantified>;
   readonly notes: readonly string[];
 }
 
@@ -119,7 +119,7 @@ export function inertiaFromParts(file: PartsFile): PartsResult {
   const quantities = Object.fromEntries(
     names.map((name, i) => {
       const one = estimate(4 + i, 'kg·m²', SHAPE_DOUBT);
-      return [`inertia_${name}`, quantified(one, meaning(name, one))];
+      return [`inertia_${name}_kgm2`, quantified(one, meaning(name, one))];
     }),
   ) as PartsResult['quantities'];
   notes.push('An estimate: the shapes stand for real parts to about 5 %. A swing test is surer.');

@@ -49,7 +49,9 @@ interface SpinupSampling {
 
 export interface SpinupResult {
   readonly measurement: 'spinup';
-  readonly quantities: Partial<Record<'lag' | 'lagDown' | 'delay' | 'topSpeed' | 'speedNoise', Quantified>>;
+  readonly quantities: Partial<
+    Record<'lag_s' | 'lagDown_s' | 'delay_s' | 'topSpeed_rpm' | 'speedNoise_rpm', Quantified>
+  >;
   /** As the build file's lagged motor takes it. */
   readonly motor: { readonly lag_s?: number; readonly lagDown_s?: number; readonly maxSpeed_rpm: number };
   readonly steps: readonly SpinupStep[];
@@ -421,7 +423,7 @@ function stepNotes(steps: readonly SpinupStep[], base: TimeBase, fromCommand: bo
 /** Joins recordings of the same motor: the steps of all of them. */
 export function joinSpinup(results: readonly SpinupResult[]): SpinupResult {
   if (results.length === 1) return results[0];
-  const noise = Math.max(...results.map((one) => one.quantities.speedNoise?.value ?? 0));
+  const noise = Math.max(...results.map((one) => one.quantities.speedNoise_rpm?.value ?? 0));
   const slowest = results.reduce((least, one) =>
     one.sampling.rate_Hz < least.sampling.rate_Hz ? one : least,
   );
@@ -441,8 +443,8 @@ function resultOf(
 ): SpinupResult {
   const quantities: Partial<Record<keyof SpinupResult['quantities'], Quantified>> = {};
   for (const [key, direction] of [
-    ['lag', 'up'],
-    ['lagDown', 'down'],
+    ['lag_s', 'up'],
+    ['lagDown_s', 'down'],
   ] as const) {
     const own = steps.filter((step) => step.direction === direction);
     if (own.length === 0) continue;
@@ -459,7 +461,7 @@ function resultOf(
     const parts = joinEstimates(delays);
     // When inside the interval the command changed is the same doubt in every step; it does not average out.
     const joined = { ...parts, sigma: Math.hypot(parts.sigma, stepSigma(1 / sampling.rate_Hz)) };
-    quantities.delay = quantified(
+    quantities.delay_s = quantified(
       joined,
       `ESC, wire and speed reading together; ±${(1960 * joined.sigma).toFixed(1)} ms (95 %) is ±${(1.96 * 360 * joined.sigma * 5).toFixed(1)}° of phase at a 5 Hz crossover.`,
     );
@@ -468,11 +470,11 @@ function resultOf(
   const highest = Math.max(...levels);
   const highestStep = steps.find((step) => step.to_rpm === highest || step.from_rpm === highest);
   const levelSigma = (highestStep?.residual_rpm ?? 0) / Math.sqrt(highestStep?.points ?? 1);
-  quantities.topSpeed = quantified(
+  quantities.topSpeed_rpm = quantified(
     { value: highest, sigma: levelSigma, unit: 'rev/min' },
     'The highest steady speed of this recording; it is the motor’s top speed only if the step went to full command on a full pack.',
   );
-  quantities.speedNoise = quantified(
+  quantities.speedNoise_rpm = quantified(
     { value: noise_rpm, sigma: noise_rpm / Math.sqrt(2 * sampling.rows), unit: 'rev/min' },
     'Noise of the speed reading; it limits the lag, not the craft.',
   );
@@ -480,8 +482,8 @@ function resultOf(
     measurement: 'spinup',
     quantities,
     motor: {
-      ...(quantities.lag === undefined ? {} : { lag_s: quantities.lag.value }),
-      ...(quantities.lagDown === undefined ? {} : { lagDown_s: quantities.lagDown.value }),
+      ...(quantities.lag_s === undefined ? {} : { lag_s: quantities.lag_s.value }),
+      ...(quantities.lagDown_s === undefined ? {} : { lagDown_s: quantities.lagDown_s.value }),
       maxSpeed_rpm: highest,
     },
     steps,

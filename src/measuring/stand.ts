@@ -491,15 +491,15 @@ function quantitiesOf(
   if (efficiency.length >= 3) {
     const values = efficiency.map((point) => point.efficiency_gPerW);
     const middle = median(values);
-    out.efficiency = quantified(
+    out.efficiency_gPerW = quantified(
       { value: middle, sigma: robustScale(values), unit: 'g/W' },
       'Median over the run, sigma its spread: it sets the hover time, not the gains.',
     );
   }
   if (motor !== null) {
-    out.motor_kv = motor.kv;
-    out.motor_resistance = motor.resistance;
-    if (motor.noLoadCurrent !== null) out.motor_noLoadCurrent = motor.noLoadCurrent;
+    out.kv_rpm_per_V = motor.kv;
+    out.resistance_ohm = motor.resistance;
+    if (motor.noLoadCurrent !== null) out.noLoadCurrent_A = motor.noLoadCurrent;
   }
   return out;
 }

@@ -61,6 +61,9 @@ const WANTED: readonly ColumnKey[] = [
   'power',
 ];
 
+/** Units that go without saying where a head states none; thrust and torque are in too many to guess. */
+const PLAIN_UNITS: Partial<Record<ColumnKey, string>> = { voltage: 'V', current: 'A', power: 'W' };
+
 type Columns = Partial<Record<ColumnKey, Float64Array>>;
 
 /**
@@ -91,8 +94,11 @@ export function standRows(
       used.command = { column: choice.column, unit: commandUnit === 'µs' ? 'µs' : (choice.unit ?? 'share') };
       continue;
     }
-    used[key] = choice;
-    columns[key] = columnInSI(table, key, choice);
+    const plain = key in PLAIN_UNITS && choice.unit === null ? PLAIN_UNITS[key] : undefined;
+    if (plain !== undefined) notes.push(`"${choice.column}" states no unit; it is taken as ${plain}.`);
+    const settled = plain === undefined ? choice : { ...choice, unit: plain };
+    used[key] = settled;
+    columns[key] = columnInSI(table, key, settled);
   }
   const speed = speedColumn(table, columns, poles);
   requireThrust(table, columns);

@@ -49,7 +49,7 @@ export interface StillAxis {
   readonly rateRandomWalk: Estimate | null;
   readonly peaks: readonly VibrationPeak[];
   /** Once-per-turn amplitude of one rotor; null without a known speed. */
-  readonly oncePerTurn: number | null;
+  readonly oncePerTurn: Estimate | null;
 }
 
 export interface StillResult {
@@ -314,7 +314,6 @@ function axisOf(
   const mean = scaled.reduce((sum, value) => sum + value, 0) / scaled.length;
   const density = noise.density * scale;
   const drift = terms?.rateRandomWalk ?? 0;
-  const once = lines.filter((line) => line.order === 1);
   return {
     axis: one.axis,
     noise: { value: density, sigma: noise.sigma * scale, unit: `${unit}/√Hz` },
@@ -333,7 +332,11 @@ function axisOf(
     angleRandomWalk:
       terms === null || terms.randomWalk === 0
         ? null
-        : { value: terms.randomWalk, sigma: terms.randomWalkSigma, unit: `${unit}·√s` },
+        : {
+            value: terms.randomWalk,
+            sigma: terms.randomWalkSigma,
+            unit: unit === 'deg/s' ? 'deg/√s' : 'm/s/√s',
+          },
     biasInstability:
       terms === null ? null : { value: terms.instability, sigma: 0, unit, reached: terms.instabilityReached },
     rateRandomWalk:
@@ -341,11 +344,27 @@ function axisOf(
         ? null
         : { value: terms.rateRandomWalk, sigma: terms.rateRandomWalkSigma, unit: `${unit}/√s` },
     peaks: lines.map((line) => ({ ...line, amplitude: line.amplitude * scale })),
-    oncePerTurn:
-      turning === null
-        ? null
-        : (scale * Math.sqrt(once.reduce((sum, line) => sum + line.amplitude ** 2, 0))) / Math.sqrt(turning),
+    oncePerTurn: turning === null ? null : oncePerTurn(one, lines, scale, turning, duration, unit),
   };
+}
+
+/**
+ * One rotor's line: the sum's power shared among the rotors. Noise of density N moves an amplitude by N/√T; a
+ * line that wanders in speed or phase shows as much scatter as its spectrum has averages.
+ */
+function oncePerTurn(
+  one: Measured,
+  lines: readonly VibrationPeak[],
+  scale: number,
+  turning: number,
+  duration_s: number,
+  unit: string,
+): Estimate {
+  const square = lines.reduce((sum, line) => sum + (line.order === 1 ? line.amplitude ** 2 : 0), 0);
+  const value = (scale * Math.sqrt(square)) / Math.sqrt(turning);
+  const wander = value / (2 * Math.sqrt(one.spectrum.averages));
+  const chance = (scale * one.noise.density) / Math.sqrt(duration_s * turning);
+  return { value, sigma: Math.hypot(wander, chance), unit };
 }
 
 /** Accelerometer axes in m/s²; a head without a unit is read by the size of gravity. */
@@ -479,7 +498,7 @@ function gyroOf(axes: StillResult['axes']): StillResult['gyro'] {
     ...(drifts.length === 0
       ? {}
       : { drift_dps_per_rts: drifts.reduce((sum, one) => sum + one, 0) / drifts.length }),
-    ...(turning ? { vibration_dps: triple(axes, (one) => one.oncePerTurn ?? 0) } : {}),
+    ...(turning ? { vibration_dps: triple(axes, (one) => one.oncePerTurn?.value ?? 0) } : {}),
   };
 }
 
@@ -504,32 +523,32 @@ function quantitiesOf(
 ): Record<string, Quantified> {
   const out: Record<string, Quantified> = {};
   for (const [axis, one] of Object.entries(axes)) {
-    out[`noise_${axis}`] = quantified(one.noise, noiseSentence(one, base.rate_Hz));
-    out[`bias_${axis}`] = quantified(
+    out[`noise_${axis}_dps_per_rtHz`] = quantified(one.noise, noiseSentence(one, base.rate_Hz));
+    out[`bias_${axis}_dps`] = quantified(
       one.bias,
       `Taken out by the zero at arming; what is left, ±${(NORMAL_95 * one.bias.sigma).toPrecision(2)} deg/s and its drift, turns the craft slowly and does not touch the gains.`,
     );
     if (one.angleRandomWalk !== null) {
-      out[`angleRandomWalk_${axis}`] = quantified(
+      out[`angleRandomWalk_${axis}_deg_per_rts`] = quantified(
         one.angleRandomWalk,
         'Allan deviation at 1 s from white noise alone; the attitude of self-levelling wanders by it.',
       );
     }
     if (one.rateRandomWalk !== null) {
-      out[`drift_${axis}`] = quantified(
+      out[`drift_${axis}_dps_per_rts`] = quantified(
         one.rateRandomWalk,
         'Rate random walk: how fast the bias wanders; it bears on self-levelling, not on the rate gains.',
       );
     }
     if (one.oncePerTurn !== null) {
-      out[`vibration_${axis}`] = quantified(
-        { value: one.oncePerTurn, sigma: one.oncePerTurn * 0.1, unit: 'deg/s' },
+      out[`vibration_${axis}_dps`] = quantified(
+        one.oncePerTurn,
         'One rotor’s once-per-turn line at the recorded speed; it grows with the square of speed. It passes through P and, times its frequency, through D to the motors.',
       );
     }
   }
   const resolution = extent(Object.values(axes).map((one) => one.resolution.value))[1];
-  out.resolution = quantified(
+  out.resolution_dps = quantified(
     {
       value: resolution,
       sigma: extent(Object.values(axes).map((one) => one.resolution.sigma))[1],
@@ -537,7 +556,7 @@ function quantitiesOf(
     },
     `Smallest step of the record; at ${base.rate_Hz.toFixed(0)} Hz one step is ${(resolution * base.rate_Hz).toPrecision(3)} deg/s² to a derivative without low-pass.`,
   );
-  out.samplingRate = quantified(
+  out.samplingRate_Hz = quantified(
     {
       value: base.rate_Hz,
       sigma: (base.jitter_s * base.rate_Hz ** 2) / Math.sqrt(base.time_s.length),
@@ -546,7 +565,7 @@ function quantitiesOf(
     `Intervals scatter by ${(1e6 * base.jitter_s).toFixed(0)} µs (${percent(base.jitter_s * base.rate_Hz)}).`,
   );
   for (const [axis, one] of Object.entries(accelerometerAxes)) {
-    out[`accelerometerNoise_${axis}`] = quantified(
+    out[`accelerometerNoise_${axis}_mps2_per_rtHz`] = quantified(
       one.noise,
       'Only self-levelling uses it; the rate gains do not.',
     );

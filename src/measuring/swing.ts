@@ -56,12 +56,14 @@ export interface AxisSwing {
 
 export interface SwingResult {
   readonly measurement: 'swing';
-  readonly quantities: Partial<Record<'inertia_xx' | 'inertia_yy' | 'inertia_zz', Quantified>>;
+  readonly quantities: Partial<Record<'inertia_xx_kgm2' | 'inertia_yy_kgm2' | 'inertia_zz_kgm2', Quantified>>;
+  /** As the build file takes them. */
+  readonly inertia_kgm2: { readonly xx?: number; readonly yy?: number; readonly zz?: number };
   readonly tests: readonly AxisSwing[];
   readonly notes: readonly string[];
 }
 
-const MOMENT = { roll: 'inertia_xx', pitch: 'inertia_yy', yaw: 'inertia_zz' } as const;
+const MOMENT = { roll: 'inertia_xx_kgm2', pitch: 'inertia_yy_kgm2', yaw: 'inertia_zz_kgm2' } as const;
 
 /**
  * Evaluates every test; several tests of one axis are joined, weighted by their uncertainty.
@@ -96,7 +98,10 @@ export function joinSwings(tests: readonly AxisSwing[]): SwingResult {
   }
   notes.push(...triangleNotes(quantities));
   notes.push(...tests.flatMap((test) => test.notes.map((note) => `${test.axis}: ${note}`)));
-  return { measurement: 'swing', quantities, tests, notes };
+  const inertia_kgm2 = Object.fromEntries(
+    Object.entries(quantities).map(([name, one]) => [name.split('_')[1], one.value]),
+  );
+  return { measurement: 'swing', quantities, inertia_kgm2, tests, notes };
 }
 
 /** Inverse-variance mean; sigma widened by the Birge ratio where the parts disagree. */
@@ -115,7 +120,7 @@ export function joinEstimates(parts: readonly Estimate[]): Estimate & { disagree
 }
 
 function triangleNotes(quantities: SwingResult['quantities']): string[] {
-  const { inertia_xx: x, inertia_yy: y, inertia_zz: z } = quantities;
+  const { inertia_xx_kgm2: x, inertia_yy_kgm2: y, inertia_zz_kgm2: z } = quantities;
   if (x === undefined || y === undefined || z === undefined) return [];
   const sorted = [x, y, z].sort((a, b) => a.value - b.value);
   const excess = sorted[2].value - sorted[0].value - sorted[1].value;

@@ -70,7 +70,7 @@ describe('measured values into a build', () => {
     const balance = centreFromScales({ axis: 'x', scales, massStep_kg: 0.001, lengthStep_m: 0.001 });
     const { build, provenance } = buildFromMeasurements(base, [swing(1.5), stand(), balance]);
     expect(parseBuild(JSON.parse(JSON.stringify(build)))).toEqual(build);
-    expect(build.airframe.inertia_kgm2.xx).toBe(swing(1.5).quantities.inertia_xx?.value);
+    expect(build.airframe.inertia_kgm2.xx).toBe(swing(1.5).quantities.inertia_xx_kgm2?.value);
     expect(build.airframe.inertia_kgm2.yy).toBe(base.airframe.inertia_kgm2.yy);
     expect(build.airframe.mass_kg).toBeCloseTo(1.4, 12);
     expect(build.propeller.staticTable?.[15]).toEqual({ rpm: 6528, ct: 0.1299, cp: 0.0531 });

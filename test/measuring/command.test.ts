@@ -90,7 +90,10 @@ describe('measure on the command line', () => {
     const csv = (axis: string) =>
       `# method: bifilar\n# axis: ${axis}\n# mass_kg: 1.35\n# wireDistance_m: 0.3\n# wireLength_m: 1.2\nswings,time_s\n20,30\n20,30.1\n20,29.9\n`;
     const { out } = await measure('swing', file('r.csv', csv('roll')), file('p.csv', csv('pitch')), '--json');
-    expect(Object.keys((JSON.parse(out) as Printed).quantities)).toEqual(['inertia_xx', 'inertia_yy']);
+    expect(Object.keys((JSON.parse(out) as Printed).quantities)).toEqual([
+      'inertia_xx_kgm2',
+      'inertia_yy_kgm2',
+    ]);
   });
 
   it('still prints the Allan curve as lists', async () => {

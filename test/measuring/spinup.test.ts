@@ -46,13 +46,13 @@ describe('motor lag', () => {
     for (const command of [true, false]) {
       const { quantities, steps, notes, motor } = spinup(record(1, { command }));
       expect(steps.map((step) => step.direction)).toEqual(['up', 'down', 'up', 'down']);
-      expect(Math.abs((quantities.lag?.value ?? 0) / LAG_UP - 1)).toBeLessThan(0.02);
-      expect(Math.abs((quantities.lagDown?.value ?? 0) / LAG_DOWN - 1)).toBeLessThan(0.02);
+      expect(Math.abs((quantities.lag_s?.value ?? 0) / LAG_UP - 1)).toBeLessThan(0.02);
+      expect(Math.abs((quantities.lagDown_s?.value ?? 0) / LAG_DOWN - 1)).toBeLessThan(0.02);
       expect(motor.maxSpeed_rpm).toBeCloseTo(6000, -2);
-      expect(quantities.speedNoise?.value).toBeCloseTo(30, -1);
-      if (command) expect(Math.abs((quantities.delay?.value ?? 0) - DELAY)).toBeLessThan(6e-4);
+      expect(quantities.speedNoise_rpm?.value).toBeCloseTo(30, -1);
+      if (command) expect(Math.abs((quantities.delay_s?.value ?? 0) - DELAY)).toBeLessThan(6e-4);
       else {
-        expect(quantities.delay).toBeUndefined();
+        expect(quantities.delay_s).toBeUndefined();
         expect(notes.join(' ')).toMatch(/No command column/);
       }
     }
@@ -60,8 +60,8 @@ describe('motor lag', () => {
 
   it('is exact without noise, on a coarse clock as well', () => {
     const { quantities } = spinup(record(1, { noise: 0, step: 0.005 }));
-    expect((quantities.lag?.value ?? 0) / LAG_UP).toBeCloseTo(1, 2);
-    expect((quantities.lagDown?.value ?? 0) / LAG_DOWN).toBeCloseTo(1, 2);
+    expect((quantities.lag_s?.value ?? 0) / LAG_UP).toBeCloseTo(1, 2);
+    expect((quantities.lagDown_s?.value ?? 0) / LAG_DOWN).toBeCloseTo(1, 2);
   });
 
   it('holds both lags in 90 to 98 % of 200 runs', () => {
@@ -69,8 +69,8 @@ describe('motor lag', () => {
     let down = 0;
     for (let seed = 1; seed <= 200; seed++) {
       const { quantities } = spinup(record(seed, { step: 0.002 }));
-      if (quantities.lag !== undefined && holds(quantities.lag, LAG_UP)) up++;
-      if (quantities.lagDown !== undefined && holds(quantities.lagDown, LAG_DOWN)) down++;
+      if (quantities.lag_s !== undefined && holds(quantities.lag_s, LAG_UP)) up++;
+      if (quantities.lagDown_s !== undefined && holds(quantities.lagDown_s, LAG_DOWN)) down++;
     }
     for (const count of [up, down]) {
       expect(count).toBeGreaterThanOrEqual(180);
@@ -82,7 +82,7 @@ describe('motor lag', () => {
     const parts = [1, 2, 3].map((seed) => spinup(record(seed)));
     const joined = joinSpinup(parts);
     expect(joined.steps).toHaveLength(12);
-    expect(joined.quantities.lag?.sigma).toBeLessThan(parts[0].quantities.lag?.sigma ?? 0);
+    expect(joined.quantities.lag_s?.sigma).toBeLessThan(parts[0].quantities.lag_s?.sigma ?? 0);
   });
 
   it('says when the motor is not first order', () => {

@@ -116,7 +116,7 @@ function run(options: {
 describe('motor constants', () => {
   it('KV 700 has K_t = 60/(2π·KV) = 0.013642 N·m/A', () => {
     const { motor, quantities } = stand(run({ kv: 700 }));
-    expect(60 / (2 * Math.PI * quantities.motor_kv.value)).toBeCloseTo(0.013642, 6);
+    expect(60 / (2 * Math.PI * quantities.kv_rpm_per_V.value)).toBeCloseTo(0.013642, 6);
     expect(motor?.resistance.value).toBeCloseTo(0.12, 4);
     expect(motor?.noLoadCurrent?.value).toBeCloseTo(0.6, 3);
     expect(motor?.residual_V).toBeLessThan(1e-3);
@@ -125,8 +125,8 @@ describe('motor constants', () => {
   it('comes out of three voltages in one file, told apart', () => {
     const result = stand(run({ voltages: [11.1, 14.8, 22.2], noise: 0.01, seed: 3 }));
     expect(result.voltages.map((group) => group.highest_V)).toEqual([11.1, 14.8, 22.2]);
-    expect(Math.abs(result.quantities.motor_kv.value / 700 - 1)).toBeLessThan(0.02);
-    expect(Math.abs(result.quantities.motor_resistance.value / 0.12 - 1)).toBeLessThan(0.15);
+    expect(Math.abs(result.quantities.kv_rpm_per_V.value / 700 - 1)).toBeLessThan(0.02);
+    expect(Math.abs(result.quantities.resistance_ohm.value / 0.12 - 1)).toBeLessThan(0.15);
   });
 
   it('without torque I₀ is read off the square law, and that is said', () => {

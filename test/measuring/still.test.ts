@@ -129,7 +129,7 @@ describe('gyro at rest', () => {
     const { gyro, quantities } = still(record({ step: 0.061, seconds: 30 }));
     expect(gyro.resolution_dps / 0.061).toBeCloseTo(1, 4);
     expect(Math.abs(gyro.noise_dps_per_rtHz / 0.008 - 1)).toBeLessThan(0.03);
-    expect(quantities.resolution.meaning).toMatch(/30.5 deg\/s² to a derivative/);
+    expect(quantities.resolution_dps.meaning).toMatch(/30.5 deg\/s² to a derivative/);
   });
 
   it('sampling: rate, jitter of 0.2 ms, lost samples', () => {
@@ -153,7 +153,7 @@ describe('gyro at rest', () => {
   it('says what the noise does to the motors: backward difference of white noise', () => {
     const { quantities } = still(record({ seconds: 30 }));
     const rms = 0.008 * Math.sqrt(250);
-    const shaken = Number(/motors by ([\d.]+) µs/.exec(quantities.noise_roll.meaning)?.[1]);
+    const shaken = Number(/motors by ([\d.]+) µs/.exec(quantities.noise_roll_dps_per_rtHz.meaning)?.[1]);
     expect(Math.abs(shaken / (0.01 * Math.SQRT2 * rms * 500) - 1)).toBeLessThan(0.05);
   });
 

@@ -26,7 +26,7 @@ describe('bifilar swing test', () => {
       },
       0.98,
     );
-    const inertia = result.quantities.inertia_xx;
+    const inertia = result.quantities.inertia_xx_kgm2;
     expect(inertia?.value).toBeCloseTo(0.0161, 3);
     expect(Math.abs((inertia?.value ?? 0) - 0.0161)).toBeLessThan(1.96 * (inertia?.sigma ?? 0));
   });
@@ -40,7 +40,7 @@ describe('bifilar swing test', () => {
       timings: many(1.5),
     });
     const closed = (1.35 * G * 0.3 ** 2 * 1.5 ** 2) / (16 * Math.PI ** 2 * 1.2);
-    expect((result.quantities.inertia_zz?.value ?? 0) / closed).toBeCloseTo(1, 12);
+    expect((result.quantities.inertia_zz_kgm2?.value ?? 0) / closed).toBeCloseTo(1, 12);
   });
 
   const nonlinear = reference().swings;
@@ -57,7 +57,7 @@ describe('bifilar swing test', () => {
       },
       one.m,
     );
-    expect((result.quantities.inertia_xx?.value ?? 0) / one.I).toBeCloseTo(1, 6);
+    expect((result.quantities.inertia_xx_kgm2?.value ?? 0) / one.I).toBeCloseTo(1, 6);
   });
 
   it('says what an unstated amplitude may cost, and that cost is the true one', () => {
@@ -74,7 +74,7 @@ describe('bifilar swing test', () => {
       one.m,
     );
     expect(result.notes.join(' ')).toMatch(/No amplitude .* ±30° 3.5 %/);
-    expect((result.quantities.inertia_xx?.value ?? 0) / one.I - 1).toBeCloseTo(0.035, 2);
+    expect((result.quantities.inertia_xx_kgm2?.value ?? 0) / one.I - 1).toBeCloseTo(0.035, 2);
   });
 
   it('takes the support out: craft and cradle swung together, cradle alone', () => {
@@ -87,7 +87,7 @@ describe('bifilar swing test', () => {
       timings: many(period(0.0152 + 0.0011, 1.35 + 0.09)),
       support: { mass_kg: 0.09, timings: many(period(0.0011, 0.09)) },
     });
-    expect((result.quantities.inertia_xx?.value ?? 0) / 0.0152).toBeCloseTo(1, 9);
+    expect((result.quantities.inertia_xx_kgm2?.value ?? 0) / 0.0152).toBeCloseTo(1, 9);
     expect(result.tests[0].support_kgm2 / 0.0011).toBeCloseTo(1, 9);
   });
 
@@ -130,7 +130,8 @@ describe('bifilar swing test', () => {
         },
         Math.round(m * 1000) / 1000,
       );
-      if (result.quantities.inertia_xx !== undefined && holds(result.quantities.inertia_xx, truth)) held++;
+      if (result.quantities.inertia_xx_kgm2 !== undefined && holds(result.quantities.inertia_xx_kgm2, truth))
+        held++;
     }
     expect(held).toBeGreaterThanOrEqual(180);
     expect(held).toBeLessThanOrEqual(196);
@@ -149,7 +150,7 @@ describe('compound pendulum', () => {
         { length_m: 1.2, timings: many(period(0.0164, 1.35, 0.31)) },
       ],
     });
-    expect((result.quantities.inertia_yy?.value ?? 0) / 0.0164).toBeCloseTo(1, 8);
+    expect((result.quantities.inertia_yy_kgm2?.value ?? 0) / 0.0164).toBeCloseTo(1, 8);
     expect(result.tests[0].pivotDistance?.value).toBeCloseTo(0.11, 9);
   });
 
@@ -163,7 +164,7 @@ describe('compound pendulum', () => {
       timings: many(whole),
       support: { mass_kg: ms, pivotDistance_m: ds, timings: many(period(Is, ms, ds)) },
     });
-    expect((result.quantities.inertia_yy?.value ?? 0) / I).toBeCloseTo(1, 9);
+    expect((result.quantities.inertia_yy_kgm2?.value ?? 0) / I).toBeCloseTo(1, 9);
   });
 
   it('says when m d² hides the inertia', () => {
@@ -209,7 +210,7 @@ describe('uncertainty', () => {
     const raw = { format: 'gustbench.swing/1', mass_kg: 1.35, tests: [test(1.5), test(1.6), test(1.55)] };
     const result = analyseSwing(parseSwing(raw));
     expect(result.notes.join(' ')).toMatch(/tests of roll disagree/);
-    expect(result.quantities.inertia_xx?.sigma).toBeGreaterThan(5 * result.tests[0].inertia.sigma);
+    expect(result.quantities.inertia_xx_kgm2?.sigma).toBeGreaterThan(5 * result.tests[0].inertia.sigma);
   });
 });
 
@@ -302,8 +303,8 @@ describe('inertia from parts', () => {
       0,
       expect.closeTo(0.1, 12),
     ]);
-    expect(result.quantities.inertia_xx.value).toBeCloseTo(0, 12);
-    expect(result.quantities.inertia_yy.value).toBeCloseTo(2 * 0.2 * 0.2 ** 2, 12);
+    expect(result.quantities.inertia_xx_kgm2.value).toBeCloseTo(0, 12);
+    expect(result.quantities.inertia_yy_kgm2.value).toBeCloseTo(2 * 0.2 * 0.2 ** 2, 12);
   });
 
   it('a box cut in two is the box (parallel-axis rule)', () => {
@@ -314,11 +315,11 @@ describe('inertia from parts', () => {
       { name: 'f', shape: 'box', mass_kg: 0.3, position_m: [0.2, 0.2, 0.3], size_m: [0.2, 0.1, 0.06] },
       { name: 'r', shape: 'box', mass_kg: 0.3, position_m: [0, 0.2, 0.3], size_m: [0.2, 0.1, 0.06] },
     ]);
-    for (const key of ['inertia_xx', 'inertia_yy', 'inertia_zz', 'inertia_xy'] as const) {
+    for (const key of ['inertia_xx_kgm2', 'inertia_yy_kgm2', 'inertia_zz_kgm2', 'inertia_xy_kgm2'] as const) {
       expect(halves.quantities[key].value).toBeCloseTo(whole.quantities[key].value, 12);
     }
     // m (b² + c²)/12
-    expect(whole.quantities.inertia_xx.value).toBeCloseTo((0.6 / 12) * (0.1 ** 2 + 0.06 ** 2), 12);
+    expect(whole.quantities.inertia_xx_kgm2.value).toBeCloseTo((0.6 / 12) * (0.1 ** 2 + 0.06 ** 2), 12);
   });
 
   it('four arms as an X have equal roll and pitch and no product; one arm at 45° has I_xy = −∫xy dm', () => {
@@ -338,11 +339,11 @@ describe('inertia from parts', () => {
       arm(-45, 0.07, -0.07),
       arm(-45, -0.07, 0.07),
     ]);
-    expect(cross.quantities.inertia_xx.value).toBeCloseTo(cross.quantities.inertia_yy.value, 12);
-    expect(cross.quantities.inertia_xy.value).toBeCloseTo(0, 12);
+    expect(cross.quantities.inertia_xx_kgm2.value).toBeCloseTo(cross.quantities.inertia_yy_kgm2.value, 12);
+    expect(cross.quantities.inertia_xy_kgm2.value).toBeCloseTo(0, 12);
     const one = parts([arm(45, 0.07, 0.07)]);
     const [along, across] = [(0.04 / 2) * 0.008 ** 2, (0.04 / 12) * (3 * 0.008 ** 2 + 0.2 ** 2)];
-    expect(one.quantities.inertia_xy.value).toBeCloseTo((along - across) / 2, 12);
+    expect(one.quantities.inertia_xy_kgm2.value).toBeCloseTo((along - across) / 2, 12);
   });
 
   it('says when the parts miss much of the weighed mass', () => {
