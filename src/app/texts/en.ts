@@ -87,6 +87,7 @@ export const en = {
     more: (count: number) => `and ${count} more`,
   },
   edits: {
+    byLink: 'craft from a link',
     saveGains: 'save gains',
     saveBuild: 'save build',
     copyToB: 'copy A to B',

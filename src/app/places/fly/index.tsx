@@ -18,6 +18,7 @@ import { GUST_CHANNEL } from '../../worker/client.ts';
 import './fly.css';
 import { flightKeys } from './keys.ts';
 import { flightLanes } from './lanes.ts';
+import { MotorSound } from './motorSound.ts';
 import { buildPanel } from './panel.ts';
 import { ReadOut } from './ReadOut.tsx';
 import { FlightSession } from './session.ts';
@@ -27,6 +28,7 @@ import { flyTexts as words } from './texts.ts';
 const SPEEDS: readonly Speed[] = [1, 0.5, 0.25, 0];
 const TAPE_SPAN_S = 8;
 const COMMAND = signalIndex('cmd_FL_us');
+const SPEED = signalIndex('speed_FL_rpm');
 const SATURATED = signalIndex('saturated_FL');
 
 export default function Fly() {
@@ -189,11 +191,47 @@ function Toolbar(props: {
         ))}
       </span>
       <span class="fly-end">
+        <SoundButton session={session} />
         <Button title={words.saveHint} onClick={() => void session.saveRecord()}>
           {words.save}
         </Button>
       </span>
     </div>
+  );
+}
+
+/** Motor sound, off by default. */
+function SoundButton(props: { session: FlightSession }) {
+  const { session } = props;
+  const store = useStore();
+  const [on, setOn] = useState(false);
+  const { propeller } = store.build.value;
+  useEffect(() => {
+    if (!on) return;
+    const sound = new MotorSound(propeller.blades ?? 2);
+    const speeds = new Float64Array(4);
+    const timer = setInterval(() => {
+      const quiet = session.state.value.speed === 0;
+      let top = 1;
+      for (let i = 0; i < 4; i++) {
+        speeds[i] = quiet ? 0 : (session.client.newest[SPEED + i] * Math.PI) / 30;
+        top = Math.max(top, speeds[i]);
+      }
+      sound.update(
+        speeds,
+        Math.max(top, 1.6 * (speeds.reduce((sum, one) => sum + one, 0) / 4)),
+        session.state.value.stats.motorActivity_us,
+      );
+    }, 40);
+    return () => {
+      clearInterval(timer);
+      sound.end();
+    };
+  }, [on, session, propeller]);
+  return (
+    <Button quiet pressed={on} onClick={() => setOn(!on)}>
+      {words.sound}
+    </Button>
   );
 }
 

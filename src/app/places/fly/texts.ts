@@ -11,6 +11,7 @@ export const flyTexts = {
   uprightHint: 'Put the craft on its legs where it lies (U)',
   drop: 'Drop payload',
   dropHint: 'Let the payload go (X)',
+  sound: 'Sound',
   save: 'Save record',
   saveHint: 'The flight so far as CSV with build, gains, wind and seed',
   speed: 'Speed',
