@@ -1,0 +1,80 @@
+import { expect, test } from 'vitest';
+import { accessibilityFaults, describeInBrowser } from './harness.ts';
+
+describeInBrowser('Shape, Prove and Carry', (site) => {
+  test('Shape: margins follow a gain, starting gains come, the map fills', async () => {
+    const opened = await site.open({ at: '#/shape' });
+    const { page } = opened;
+    const margin = () =>
+      page.locator('.shape-margins div', { hasText: 'phase margin' }).locator('b').innerText();
+    await page.waitForSelector('.shape-margins');
+    const before = await margin();
+    const field = page
+      .getByRole('textbox', { name: 'P', exact: true })
+      .or(page.getByRole('spinbutton', { name: 'P', exact: true }))
+      .first();
+    await field.fill('2.8');
+    await field.press('Enter');
+    await expect.poll(margin).not.toBe(before);
+    await page.keyboard.press('Control+KeyZ');
+    await page.getByRole('button', { name: 'Propose starting gains' }).click();
+    await page.getByText(/roll: limited by/).waitFor({ timeout: 60_000 });
+    await page.getByRole('button', { name: 'Put them in B' }).click();
+    await expect.poll(() => page.locator('.shape-margins').innerText()).toMatch(/B \d/);
+    expect(await accessibilityFaults(page)).toEqual([]);
+    await opened.shot('shape-ab');
+    await opened.close();
+  }, 120_000);
+
+  test('Shape at 1024×768 in the dark', async () => {
+    const opened = await site.open({ at: '#/shape', width: 1024, height: 768, theme: 'dark' });
+    await opened.page.waitForSelector('.shape-margins');
+    await opened.page.waitForTimeout(1200);
+    await opened.shot('shape-dark-1024');
+    await opened.close();
+  }, 60_000);
+
+  test('Prove: one trial runs in a worker, opens to its scores and is kept over a reload', async () => {
+    const opened = await site.open({ at: '#/prove' });
+    const { page } = opened;
+    await page.waitForSelector('.prove');
+    await page.getByRole('button', { name: /^Run Gust from the front/ }).click();
+    await page.getByRole('button', { name: 'Gust from the front', exact: true }).click();
+    await page.locator('.prove-scores').waitFor({ timeout: 30_000 });
+    expect(await page.locator('.prove-scores').innerText()).toMatch(/tilt/);
+    await page.waitForSelector('.save-state[data-kind="saved"]');
+    await page.reload();
+    await expect.poll(() => page.getByText(/1 of 1 trials within/).count()).toBe(1);
+    expect(await accessibilityFaults(page)).toEqual([]);
+    await opened.shot('prove');
+    await opened.close();
+  }, 120_000);
+
+  test('Carry: the sheet stands with its trials, a link carries craft and gains, junk links are refused', async () => {
+    const context = await site.newContext({
+      viewport: { width: 1440, height: 900 },
+      permissions: ['clipboard-read', 'clipboard-write'],
+    });
+    const opened = await site.open({ at: '#/carry', context });
+    const { page } = opened;
+    await page.waitForSelector('.carry-sheet');
+    await page.getByRole('button', { name: /Run the sheet/ }).click();
+    await expect
+      .poll(() => page.frameLocator('.carry-sheet').getByText('Wind proven').count(), { timeout: 60_000 })
+      .toBe(1);
+    expect(await accessibilityFaults(page)).toEqual([]);
+    await opened.shot('carry');
+    await page.getByRole('button', { name: /Copy a link/ }).click();
+    await page.getByText('Copied.').waitFor();
+    const link = await page.evaluate(() => navigator.clipboard.readText());
+    expect(link).toMatch(/#\/take\//);
+    await page.goto('about:blank');
+    await page.goto(link);
+    await expect.poll(() => page.locator('#top-craft').innerText()).toMatch(/Sandpiper 2/);
+    await page.goto('about:blank');
+    await page.goto(`${site.url}#/take/AAAA_junk`);
+    await page.getByText(/link/).first().waitFor();
+    await opened.close();
+    await context.close();
+  }, 180_000);
+});
