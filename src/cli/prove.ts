@@ -90,7 +90,7 @@ async function proveTrials(options: ProveOptions, seed: number, workers: number)
   const run = options.run === undefined ? null : parseWith(runSchema, readJson(options.run), options.run);
   const wind = options.wind === undefined ? undefined : readWind(options.wind);
   const names = options.trial ?? run?.trials ?? TRIALS.map((trial) => trial.name);
-  names.forEach(trialByName);
+  for (const name of names) trialByName(name);
   const results = new Array<TrialResult>(names.length);
   await overPool(
     workers,

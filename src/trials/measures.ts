@@ -1,5 +1,5 @@
 /** Measures of a record that several trials share. */
-import { AXES, type AxisName } from '../craft/gains.ts';
+import { AXES } from '../craft/gains.ts';
 import { CORNERS } from '../craft/build.ts';
 import { DEG_PER_RAD } from '../math/angles.ts';
 import type { Recorder } from '../flight/record.ts';
@@ -63,11 +63,14 @@ export function peakHeightError_m(record: Recorder, from: number, to: number): n
   return most;
 }
 
-/** Mean over the motors of the commands' rms above 5 Hz, µs: what gyro noise does to them. */
+/** Below this a command follows the flight; above it the noise, Hz. */
+const SLOW_PART_HZ = 5;
+
+/** Rms over the motors of the commands less their slow part (first-order, 5 Hz), µs: what gyro noise does to them. */
 export function motorActivity_us(record: Recorder, from: number, to: number): number {
   const t = record.column('t_s');
   if (to - from < 3) return 0;
-  const follow = 1 - Math.exp(-2 * Math.PI * 5 * (t[from + 1] - t[from]));
+  const follow = 1 - Math.exp(-2 * Math.PI * SLOW_PART_HZ * (t[from + 1] - t[from]));
   let sum = 0;
   for (const corner of CORNERS) {
     const command = record.column(`cmd_${corner}_us`);
@@ -95,13 +98,13 @@ export function saturation_pct(record: Recorder, from: number, to: number): numb
   return to > from ? (100 * hit) / (to - from) : 0;
 }
 
-/** Energy per minute, kJ. */
-export function energy_kJ_per_min(record: Recorder, from: number, to: number): number {
+/** Mean power drawn from the pack, W. */
+export function power_W(record: Recorder, from: number, to: number): number {
   const volts = record.column('battery_V');
   const amps = record.column('current_A');
   let sum = 0;
   for (let k = from; k < to; k++) sum += volts[k] * amps[k];
-  return to > from ? (sum / (to - from)) * 0.06 : 0;
+  return to > from ? sum / (to - from) : 0;
 }
 
 /** Root mean square of setpoint minus rate, deg/s, over all axes. */
@@ -115,62 +118,64 @@ export function rateError_dps(record: Recorder, from: number, to: number): numbe
   return to > from ? Math.sqrt(sum / (to - from)) : 0;
 }
 
+/** Time of the first touch of anything solid; the end of the rows when there was none, s. */
+export function timeToTouch_s(record: Recorder, from: number, to: number): number {
+  const touching = record.column('touching');
+  const t = record.column('t_s');
+  for (let k = from; k < to; k++) if (touching[k] !== 0) return t[k];
+  return to > 0 ? t[to - 1] : 0;
+}
+
 export interface StepScores {
-  /** 10 to 90 % of the step, s. */
+  /** From the first crossing of 10 % to that of 90 %, s. */
   readonly rise_s: number;
   readonly overshoot_pct: number;
-  /** Until within 5 % of the step for good (noise floors 2 %), s. */
+  /** From the step until it stays within the settling band, s. */
   readonly settle_s: number;
-  /** Mean difference at the end, % of the step. */
+  /** Difference of the mean over the last fifth from the step, % of the step. */
   readonly steadyError_pct: number;
 }
 
 /**
- * Step metrics of a rate record: a step of `size` at `start_s`, held to `end_s`. NaN where a level was never
- * reached.
+ * Step metrics of a response to a step of `size` (either sign) at `start_s`, held to `end_s`. NaN where a level
+ * was never reached.
+ * @param band settling band, share of the step
  */
 export function stepScores(
   t_s: Float64Array,
-  rate: Float64Array,
+  response: Float64Array,
   start_s: number,
   end_s: number,
   size: number,
+  band = 0.05,
 ): StepScores {
-  const from = t_s.findIndex((t) => t >= start_s);
-  let to = t_s.findIndex((t) => t > end_s);
+  // Times are sums of ticks: a step due at the tick's own time must find it.
+  let from = t_s.findIndex((t) => t >= start_s - 1e-9);
+  if (from === -1) from = t_s.length;
+  let to = t_s.findIndex((t) => t > end_s + 1e-9);
   if (to === -1) to = t_s.length;
-  const share = (k: number) => rate[k] / size;
+  if (to <= from) return { rise_s: NaN, overshoot_pct: NaN, settle_s: NaN, steadyError_pct: NaN };
+  const share = (k: number) => response[k] / size;
   const crossing = (level: number): number => {
-    for (let k = Math.max(1, from); k < to; k++) {
-      if (share(k) >= level) {
-        const part = (level - share(k - 1)) / (share(k) - share(k - 1) || 1);
-        return t_s[k - 1] + Math.max(0, Math.min(1, part)) * (t_s[k] - t_s[k - 1]);
-      }
+    for (let k = from; k < to; k++) {
+      if (share(k) < level) continue;
+      if (k === from) return t_s[k];
+      const part = (level - share(k - 1)) / (share(k) - share(k - 1));
+      return t_s[k - 1] + part * (t_s[k] - t_s[k - 1]);
     }
     return NaN;
   };
   let peak = 0;
-  let outside = from;
+  let settled = from;
   for (let k = from; k < to; k++) {
     peak = Math.max(peak, share(k));
-    if (Math.abs(share(k) - 1) > 0.05) outside = k;
+    if (Math.abs(share(k) - 1) > band) settled = k + 1;
   }
   const tail = from + Math.floor(0.8 * (to - from));
   return {
     rise_s: crossing(0.9) - crossing(0.1),
     overshoot_pct: Math.max(0, (peak - 1) * 100),
-    settle_s: outside >= to - 1 ? NaN : t_s[outside] - start_s,
-    steadyError_pct: Math.abs(mean(rate, tail, to) / size - 1) * 100,
+    settle_s: settled < to ? t_s[settled] - start_s : NaN,
+    steadyError_pct: Math.abs(mean(response, tail, to) / size - 1) * 100,
   };
-}
-
-/** Step metrics of a rate record of one axis. */
-export function axisStepScores(
-  record: Recorder,
-  axis: AxisName,
-  start_s: number,
-  end_s: number,
-  size: number,
-): StepScores {
-  return stepScores(record.column('t_s'), record.column(`rate_${axis}_dps`), start_s, end_s, size);
 }

@@ -1,86 +1,149 @@
-/** Flies one trial and scores it. The same trial, build, gains and seed give the same result, anywhere. */
+/** Flies one trial and scores it. The same trial, build, gains, overrides and seed give the same bytes, anywhere. */
 import type { Build } from '../craft/build.ts';
-import type { Gains } from '../craft/gains.ts';
 import { InputError, refuse } from '../craft/problem.ts';
-import type { Wind } from '../craft/wind.ts';
-import { Flight } from '../flight/flight.ts';
+import { Flight, type FlightSetup } from '../flight/flight.ts';
 import { NEUTRAL_STICKS, type Sticks } from '../flight/pilot.ts';
 import { Recorder } from '../flight/record.ts';
-import { TRIAL_SIGNALS } from './measures.ts';
+import { rowsBetween, TRIAL_SIGNALS } from './measures.ts';
+import { resolve, type Overrides, type Resolved, type Subject } from './overrides.ts';
 import { trialByName } from './registry.ts';
-import type { Band, Score, Trial, TrialResult, TrialRun } from './trial.ts';
+import type { Band, Score, ScoreDefinition, Trial, TrialResult, TrialRun } from './trial.ts';
 
-export interface TrialTask {
-  readonly trial: string;
-  readonly build: Build;
-  readonly gains: Gains;
+/** Bands in place of a trial's own, by score name. */
+export type Bands = Readonly<Record<string, Band>>;
+
+export interface TrialOptions extends Subject {
   readonly seed: number;
-  /** Wind in place of the trial's own. */
-  readonly wind?: Wind;
-  /** Bands in place of the trial's own: "peak tilt" → band. */
-  readonly bands?: Readonly<Record<string, Band>>;
+  /** Numbers of build, gains, wind and the trial's parameters in place of what stands there. */
+  readonly overrides?: Overrides;
+  readonly bands?: Bands;
+}
+
+/** A trial by name, as it goes to a worker. */
+export interface TrialTask extends TrialOptions {
+  readonly trial: string;
 }
 
 /**
- * Runs a trial.
- * @throws InputError for an unknown trial or a craft that cannot hover.
+ * Flies and scores.
+ * @throws InputError for an unknown trial, overrides that cannot be, a band of no score, or a craft that cannot hover.
  */
-export function runTrial(task: TrialTask): TrialResult {
-  const trial = trialByName(task.trial);
-  const run = flyTrial(trial, task);
-  const values = run.flight.stopped === null ? trial.score(run) : trial.scores.map(() => NaN);
-  const scores = trial.scores.map((definition, i): Score => {
-    const band = task.bands?.[definition.name] ?? definition.band;
-    const value = Number.isFinite(values[i]) ? values[i] : null;
-    return { ...definition, value, band, pass: within(value, band) };
-  });
-  return {
+export function runTrial(options: TrialTask): TrialResult {
+  const { seed, bands = {} } = options;
+  const trial = trialByName(options.trial);
+  checkBands(trial, bands);
+  const resolved = resolve(trial, options, options.overrides);
+  const about = {
     trial: trial.name,
     title: trial.title,
-    seed: task.seed,
+    seed,
+    parameters: resolved.parameters,
+    traceSignals: trial.traceSignals,
+  };
+  const note = trial.inapplicable?.(resolved.build) ?? null;
+  if (note !== null) {
+    const scores = trial.scores.map((one) => scoreOf(one, null, bands));
+    return { ...about, scores, pass: true, stopped: null, note };
+  }
+  const run = flyResolved(trial, resolved, seed, TRIAL_SIGNALS, 1);
+  const { stopped } = run.flight;
+  const scores = trial.scores.map((one) => scoreOf(one, stopped === null ? one.of(run) : NaN, bands));
+  return {
+    ...about,
     scores,
     pass: scores.every((score) => score.pass),
-    stopped: run.flight.stopped === null ? null : `${run.flight.stopped.reason}: ${run.flight.stopped.what}`,
+    stopped: stopped === null ? null : `${stopped.reason} at ${stopped.time_s.toFixed(2)} s: ${stopped.what}`,
+    note,
   };
 }
 
-/** A score that was never reached is outside every band. */
-function within(value: number | null, band: Band): boolean {
-  return (
-    value !== null &&
-    (band.least === undefined || value >= band.least) &&
-    (band.most === undefined || value <= band.most)
-  );
-}
-
-/** The flight of a trial with its record: for plots and for flying it again. */
+/** The flight of a trial with its record: for plots and for flying it again. @throws InputError as runTrial */
 export function flyTrial(
   trial: Trial,
-  task: Pick<TrialTask, 'build' | 'gains' | 'seed' | 'wind'>,
+  options: TrialOptions,
   signals: readonly string[] = TRIAL_SIGNALS,
 ): TrialRun {
-  const { gains, seed } = task;
-  const setup = trial.setup({ build: task.build, gains, wind: task.wind ?? null });
-  const flight = newFlight(task.build, { ...setup, gains, seed, start: trial.start });
-  const ticks = Math.round(trial.duration_s * gains.loop_Hz);
+  return flyResolved(trial, resolve(trial, options, options.overrides), options.seed, signals, 1);
+}
+
+function scoreOf(definition: ScoreDefinition, raw: number | null, bands: Bands): Score {
+  const { name, unit, source } = definition;
+  const own = bands[name];
+  const band = own ?? definition.band;
+  const value = raw !== null && Number.isFinite(raw) ? raw : null;
+  const from = own === undefined ? source : 'set by the user';
+  return {
+    name,
+    unit,
+    value,
+    applies: raw !== null,
+    band,
+    source: from,
+    pass: raw === null || within(value, band),
+  };
+}
+
+/** A value that was never reached is outside every band. */
+function within(value: number | null, band: Band): boolean {
+  return value !== null && value >= (band.least ?? -Infinity) && value <= (band.most ?? Infinity);
+}
+
+/** @throws InputError for a band of a score that the trial does not have */
+export function checkBands(trial: Trial, bands: Bands, file = 'bands'): void {
+  for (const name of Object.keys(bands)) {
+    if (trial.scores.some((score) => score.name === name)) continue;
+    throw refuse(
+      file,
+      `${trial.name}.${name}`,
+      name,
+      `one of ${trial.scores.map((score) => score.name).join(', ')}`,
+    );
+  }
+}
+
+function flyResolved(
+  trial: Trial,
+  resolved: Resolved,
+  seed: number,
+  signals: readonly string[],
+  noise: number,
+): TrialRun {
+  const { gains, wind, parameters: p } = resolved;
+  const build = trial.build?.(resolved.build, p) ?? resolved.build;
+  const faults = trial.faults?.(build, gains, p) ?? [];
+  const { scene } = trial;
+  const setup: FlightSetup = {
+    build,
+    gains,
+    wind,
+    seed,
+    faults,
+    start: trial.start(p),
+    ...(scene === undefined ? {} : { scene }),
+  };
+  const flight = newFlight(build, setup);
+  if (noise !== 1) flight.setNoise(noise, noise);
+  const duration_s = trial.duration_s(p);
+  const ticks = Math.round(duration_s * gains.loop_Hz);
   const record = new Recorder(signals, ticks);
   const sticks: Sticks = { ...NEUTRAL_STICKS, armed: true };
   for (let k = 0; k < ticks && flight.stopped === null; k++) {
-    setup.act?.(flight.time_s, flight);
-    setup.sticks(flight.time_s, flight, sticks);
+    trial.sticks(flight.time_s, sticks, flight, p);
     flight.tick(sticks);
     record.take(flight.signals);
   }
-  return { record, flight, gains, build: setup.build };
+  const rows = rowsBetween(record, ...(trial.scored?.(p) ?? [0, duration_s]));
+  let twin: TrialRun | null = null;
+  const quiet = (): TrialRun => (twin ??= flyResolved(trial, resolved, seed, signals, 0));
+  return { record, flight, build, gains, wind, parameters: p, rows, quiet };
 }
 
-function newFlight(build: Build, setup: ConstructorParameters<typeof Flight>[0]): Flight {
+/** A craft that finds no trim in this trial is bad input, not a crash. */
+function newFlight(build: Build, setup: FlightSetup): Flight {
   try {
     return new Flight(setup);
   } catch (error) {
-    if (error instanceof RangeError && !(error instanceof InputError)) {
-      throw refuse(build.name, 'propeller', error.message, 'a craft that can hover in this trial');
-    }
-    throw error;
+    if (!(error instanceof RangeError) || error instanceof InputError) throw error;
+    throw refuse(build.name, 'propeller', error.message, 'a craft that can hover in this trial');
   }
 }

@@ -1,32 +1,32 @@
 /**
- * Sweeps: one trial over one or two fields, coarse to fine. Cells are independent and each is fixed by its
- * place, so any order on any number of workers gives the same results; finished cells can be kept and the rest
- * done later.
+ * Sweeps: one trial over one or two numbers of build, gains, wind or the trial itself, coarse to fine. A cell is
+ * fixed by its place alone, so any order on any number of workers gives the same results.
  */
 import { z } from 'zod';
 import { formatTag, parseWith, quantity, title } from '../craft/fields.ts';
 import { refuse } from '../craft/problem.ts';
-import { withField, type Subject } from './fieldPath.ts';
+import { resolve, valueAt, type Overrides, type Subject } from './overrides.ts';
 import { trialByName } from './registry.ts';
 import type { TrialTask } from './runTrial.ts';
+
+export type { Subject } from './overrides.ts';
 
 export const SWEEP_FORMAT = 'gustbench.sweep/1';
 /** More would take days and fill the memory of a page. */
 export const MOST_CELLS = 40_000;
+const COUNT = 'a whole number from 1 to 400';
+const PATH = 'a path of 1 to 200 characters, such as gains.axes.roll.d_us_per_dps2';
 
+const path = z.string({ error: PATH }).min(1, { error: PATH }).max(200, { error: PATH });
 const axisSchema = z.strictObject(
   {
-    path: z.string({ error: 'a path' }).min(1).max(200),
+    path,
     /** Further fields that take the same value (roll and pitch together). */
-    also: z.array(z.string().min(1).max(200)).max(8).default([]),
+    also: z.array(path, { error: 'a list of paths' }).max(8, { error: 'at most 8 paths' }).default([]),
     from: quantity(-1e9, 1e9, ''),
     to: quantity(-1e9, 1e9, ''),
-    count: z
-      .number({ error: 'a whole number from 1 to 400' })
-      .int({ error: 'a whole number from 1 to 400' })
-      .min(1, { error: 'a whole number from 1 to 400' })
-      .max(400, { error: 'a whole number from 1 to 400' }),
-    logarithmic: z.boolean().default(false),
+    count: z.int({ error: COUNT }).min(1, { error: COUNT }).max(400, { error: COUNT }),
+    logarithmic: z.boolean({ error: 'true or false' }).default(false),
   },
   { error: 'an object with path, from, to, count' },
 );
@@ -38,29 +38,55 @@ export const sweepSchema = z.strictObject(
     trial: z.string({ error: 'the name of a trial' }),
     x: axisSchema,
     y: axisSchema.optional(),
-    seed: z.number({ error: 'a whole number' }).int().min(0).default(1),
+    seed: z.int({ error: 'a whole number from 0' }).min(0, { error: 'a whole number from 0' }).default(1),
   },
   { error: 'a sweep object' },
 );
 export type Sweep = z.output<typeof sweepSchema>;
 export type SweepAxis = Sweep['x'];
 
-/** @throws InputError naming path, value and what is allowed; also for too many cells. */
+/** @throws InputError naming path, value and what is allowed; also for a path that does not exist and too many cells */
 export function parseSweep(raw: unknown, subject: Subject, file = 'sweep'): Sweep {
-  const sweep = parseWith(sweepSchema, raw, file);
-  trialByName(sweep.trial);
-  const cells = sweep.x.count * (sweep.y?.count ?? 1);
+  // Counted first: a sweep of a million cells is told as such, not as a count of 1000.
+  const cells = asCount(raw, 'x') * asCount(raw, 'y');
   if (cells > MOST_CELLS)
     throw refuse(file, 'x.count', `${cells} cells`, `at most ${MOST_CELLS} cells in all`);
-  for (const axis of [sweep.x, sweep.y]) {
+  const sweep = parseWith(sweepSchema, raw, file);
+  checkSweep(sweep, subject, file);
+  return sweep;
+}
+
+function asCount(raw: unknown, axis: 'x' | 'y'): number {
+  const one: unknown = (Object(raw) as Record<string, unknown>)[axis];
+  const count: unknown = (Object(one) as Record<string, unknown>).count;
+  return typeof count === 'number' && count > 1 ? count : 1;
+}
+
+/** Told before the first flight, not in every cell. */
+function checkSweep(sweep: Sweep, subject: Subject, file: string): void {
+  const trial = trialByName(sweep.trial, file);
+  const paths: string[] = [];
+  for (const [name, axis] of [
+    ['x', sweep.x],
+    ['y', sweep.y],
+  ] as const) {
     if (axis === undefined) continue;
     if (axis.logarithmic && !(axis.from > 0 && axis.to > 0)) {
-      throw refuse(file, 'from', axis.from, 'above 0 at both ends of a logarithmic axis');
+      throw refuse(file, `${name}.from`, axis.from, 'above 0 at both ends of a logarithmic axis');
     }
-    // A path that does not exist is told before the first flight, not in every cell.
-    for (const path of [axis.path, ...axis.also]) withField(subject, path, axis.from, file);
+    if (axis.count > 1 && axis.from === axis.to) {
+      throw refuse(file, `${name}.to`, axis.to, `another value than ${name}.from, or a count of 1`);
+    }
+    for (const one of [axis.path, ...axis.also]) {
+      valueAt(trial, subject, one, file);
+      if (paths.includes(one)) throw refuse(file, `${name}.path`, one, 'each path once');
+      paths.push(one);
+    }
   }
-  return sweep;
+  // An optional field that the schema does not know is found here; a corner out of range belongs to its cell.
+  if (paths.some((one) => Number.isNaN(valueAt(trial, subject, one, file)))) {
+    resolve(trial, subject, cellOverrides(sweep, { column: 0, row: 0 }), file);
+  }
 }
 
 export function axisValue(axis: SweepAxis, index: number): number {
@@ -68,6 +94,7 @@ export function axisValue(axis: SweepAxis, index: number): number {
   const value = axis.logarithmic
     ? axis.from * (axis.to / axis.from) ** share
     : axis.from + share * (axis.to - axis.from);
+  // The last digits of a sum of shares are noise; 12 digits read and write back the same.
   return Number(value.toPrecision(12));
 }
 
@@ -95,32 +122,29 @@ export function cellsInOrder(columns: number, rows: number): Cell[] {
   return cells;
 }
 
-/** The task of one cell. @throws InputError when the cell's values are not allowed together. */
-export function cellTask(sweep: Sweep, subject: Subject, cell: Cell): TrialTask {
-  let at = subject;
-  for (const path of [sweep.x.path, ...sweep.x.also])
-    at = withField(at, path, axisValue(sweep.x, cell.column));
-  if (sweep.y !== undefined) {
-    for (const path of [sweep.y.path, ...sweep.y.also])
-      at = withField(at, path, axisValue(sweep.y, cell.row));
-  }
-  return {
-    trial: sweep.trial,
-    build: at.build,
-    gains: at.gains,
-    seed: sweep.seed,
-    ...(at.wind === null ? {} : { wind: at.wind }),
-  };
+/** The numbers that one cell sets. */
+export function cellOverrides(sweep: Sweep, { column, row }: Pick<Cell, 'column' | 'row'>): Overrides {
+  const overrides: Record<string, number> = {};
+  for (const one of [sweep.x.path, ...sweep.x.also]) overrides[one] = axisValue(sweep.x, column);
+  if (sweep.y === undefined) return overrides;
+  for (const one of [sweep.y.path, ...sweep.y.also]) overrides[one] = axisValue(sweep.y, row);
+  return overrides;
 }
 
-/** The map of derivative gain against D cutoff, roll and pitch together, around the gains given. */
-export function derivativeMap(subject: Subject, cells = 24): Sweep {
-  const { roll } = subject.gains.axes;
-  const d = Math.max(roll.d_us_per_dps2, roll.p_us_per_dps * 0.004, 1e-6);
-  const nyquist = subject.gains.loop_Hz / 2;
-  return {
+/** The task of one cell: also what a click on the cell flies. */
+export function cellTask(sweep: Sweep, subject: Subject, cell: Pick<Cell, 'column' | 'row'>): TrialTask {
+  return { ...subject, trial: sweep.trial, seed: sweep.seed, overrides: cellOverrides(sweep, cell) };
+}
+
+/** The map of derivative gain against its cutoff, roll and pitch together, around the gains given. */
+export function derivativeMap({ gains }: Pick<Subject, 'gains'>, cells = 24): Sweep {
+  const { roll, pitch } = gains.axes;
+  const now = Math.max(roll.d_us_per_dps2, pitch.d_us_per_dps2);
+  const d = now > 0 ? now : 0.01 * Math.max(roll.p_us_per_dps, pitch.p_us_per_dps, 0.01);
+  const top_Hz = Math.floor(Math.min(0.45 * gains.loop_Hz, 250));
+  return sweepSchema.parse({
     format: SWEEP_FORMAT,
-    name: 'D against its cutoff',
+    name: 'derivative gain against its cutoff',
     trial: 'gust-and-noise',
     x: {
       path: 'gains.axes.roll.d_us_per_dps2',
@@ -128,31 +152,29 @@ export function derivativeMap(subject: Subject, cells = 24): Sweep {
       from: 0,
       to: Number((4 * d).toPrecision(3)),
       count: cells,
-      logarithmic: false,
     },
     y: {
       path: 'gains.derivativeLowPass_Hz',
-      also: [],
-      from: 10,
-      to: Math.round(Math.min(0.9 * nyquist, 250)),
+      from: Math.min(10, top_Hz / 2),
+      to: top_Hz,
       count: cells,
       logarithmic: true,
     },
-    seed: 1,
-  };
+  });
 }
 
-/** Indices of the points that no other beats in both (smaller is better): the trade-off front, by first value. */
-export function tradeOffFront(first: readonly number[], second: readonly number[]): number[] {
-  const order = first.map((_, i) => i).filter((i) => Number.isFinite(first[i]) && Number.isFinite(second[i]));
+/** Indices of the points that no other beats in both (smaller is better): the trade-off (Pareto) front, by `first`. */
+export function tradeOffFront(first: ArrayLike<number>, second: ArrayLike<number>): number[] {
+  const order = Array.from(first, (_, i) => i).filter(
+    (i) => Number.isFinite(first[i]) && Number.isFinite(second[i]),
+  );
   order.sort((a, b) => first[a] - first[b] || second[a] - second[b]);
   const front: number[] = [];
   let best = Infinity;
   for (const i of order) {
-    if (second[i] < best) {
-      front.push(i);
-      best = second[i];
-    }
+    if (second[i] >= best) continue;
+    front.push(i);
+    best = second[i];
   }
   return front;
 }
