@@ -62,6 +62,7 @@ export interface AllanTerms {
   readonly randomWalkSigma: number;
   /** Least deviation over 0.664 (√(2 ln 2/π)); an upper bound when the curve still falls at its end. */
   readonly instability: number;
+  readonly instabilitySigma: number;
   readonly instabilityReached: boolean;
   /** Rate random walk, unit/√s: σ(τ) = K √(τ/3); null when the curve does not show it. */
   readonly rateRandomWalk: number | null;
@@ -101,6 +102,7 @@ export function allanTerms(curve: AllanCurve, from_s: number): AllanTerms | null
     randomWalk: Math.sqrt(n2),
     randomWalkSigma: (SHARED_SAMPLES * Math.sqrt(n2)) / Math.sqrt(2 * surest),
     instability: curve.deviation[lowest] / FLICKER,
+    instabilitySigma: curve.deviation[lowest] / FLICKER / Math.sqrt(2 * curve.degrees[lowest]),
     instabilityReached: last - lowest >= 4 && curve.deviation[last] > clear * curve.deviation[lowest],
     rateRandomWalk: drifting ? Math.sqrt(fit[2]) : null,
     rateRandomWalkSigma: drifting ? Math.sqrt(fit[2]) / Math.sqrt(2 * curve.degrees[last]) : 0,

@@ -98,9 +98,9 @@ export function quantified(estimate: Estimate, meaning: string): Quantified {
   };
 }
 
-/** "6.2 %", "0.35 %": two significant figures. */
+/** "6.2 %", "0.35 %": two significant figures, not below 0.01 %. */
 export function percent(share: number): string {
-  const value = 100 * Math.abs(share);
+  const value = Math.max(0.01, 100 * Math.abs(share));
   return `${value >= 10 ? value.toFixed(0) : value.toPrecision(2)} %`;
 }
 

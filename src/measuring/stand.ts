@@ -22,7 +22,7 @@ import {
   efficiencyCurve,
   motorConstants,
   voltageGroups,
-  type CommandPoint,
+  type CommandMap,
   type EfficiencyPoint,
   type EscRange,
   type MotorFit,
@@ -41,6 +41,8 @@ const BINS = 20;
 const LEAST_SCATTER = 0.01;
 /** A point of the table with a sigma beyond this share says nothing. */
 const WORST_POINT = 0.15;
+/** Beyond these it is the unit that is wrong: no two units of torque lie closer. Between, a doubt is told. */
+const IMPOSSIBLE_MERIT = [0.05, 3];
 
 export interface StandOptions {
   readonly diameter_m: number;
@@ -101,7 +103,7 @@ export interface StandResult {
   readonly residuals: readonly StandResidual[];
   readonly outliers: readonly StandResidual[];
   readonly voltages: readonly VoltageGroup[];
-  readonly commandMap: readonly CommandPoint[];
+  readonly commandMap: CommandMap;
   readonly efficiency: readonly EfficiencyPoint[];
   readonly motor: MotorFit | null;
   readonly doubts: readonly UnitDoubt[];
@@ -161,7 +163,7 @@ export function analyseStand(tables: readonly Table[], options: StandOptions): S
     residuals,
     outliers: residuals.filter((row) => row.outlier !== null),
     voltages: voltageGroups(rows),
-    commandMap: commandMap(rows).points,
+    commandMap: commandMap(rows),
     efficiency: efficiencyCurve(rows),
     motor,
     doubts,
@@ -210,7 +212,7 @@ function doubtsOf(rows: readonly StandRow[], mapping: ColumnMapping, file: strin
   const withTorque = positive.filter((row) => row.cp !== null && row.cp > 0);
   const merit = withTorque.map((row) => figureOfMerit(row.ct ?? 0, row.cp ?? 1));
   const torque = merit.length === 0 ? null : doubtTorque(median(merit), mapping.torque?.unit ?? null);
-  if (torque !== null && (median(merit) >= 1 || median(merit) < 0.02)) {
+  if (torque !== null && (median(merit) > IMPOSSIBLE_MERIT[1] || median(merit) < IMPOSSIBLE_MERIT[0])) {
     throw new InputError(file, [
       {
         path: `column ${mapping.torque?.column ?? 'torque'}`,

@@ -30,11 +30,17 @@ export interface VoltageGroup {
   readonly topThrust_N: number | null;
 }
 
-export interface CommandPoint {
+interface CommandPoint {
   readonly command: number;
   readonly speed_rpm: number;
   readonly voltage_V: number | null;
   readonly rows: number;
+}
+
+export interface CommandMap {
+  readonly points: readonly CommandPoint[];
+  /** Largest distance from a straight line, of the top speed; null for fewer than three points. */
+  readonly straightLine_pct: number | null;
 }
 
 export interface EfficiencyPoint {
@@ -98,10 +104,7 @@ export function deadZone(parts: readonly StandRows[]): Quantified | null {
 }
 
 /** Mean speed for each command, at most 60 points, and how far from a straight line they lie. */
-export function commandMap(rows: readonly StandRow[]): {
-  points: CommandPoint[];
-  straightLine_pct: number | null;
-} {
+export function commandMap(rows: readonly StandRow[]): CommandMap {
   const groups = new Map<number, StandRow[]>();
   const all = rows.filter((row) => row.command !== null);
   const largest = all.reduce((most, row) => Math.max(most, row.command ?? 0), 0);

@@ -338,7 +338,14 @@ function axisOf(
             unit: unit === 'deg/s' ? 'deg/√s' : 'm/s/√s',
           },
     biasInstability:
-      terms === null ? null : { value: terms.instability, sigma: 0, unit, reached: terms.instabilityReached },
+      terms === null
+        ? null
+        : {
+            value: terms.instability,
+            sigma: terms.instabilitySigma,
+            unit,
+            reached: terms.instabilityReached,
+          },
     rateRandomWalk:
       terms === null || terms.rateRandomWalk === null
         ? null
@@ -532,6 +539,12 @@ function quantitiesOf(
       out[`angleRandomWalk_${axis}_deg_per_rts`] = quantified(
         one.angleRandomWalk,
         'Allan deviation at 1 s from white noise alone; the attitude of self-levelling wanders by it.',
+      );
+    }
+    if (one.biasInstability?.reached === true) {
+      out[`biasInstability_${axis}_dps`] = quantified(
+        one.biasInstability,
+        'Least of the Allan deviation over 0.664: the best that averaging can make of the bias.',
       );
     }
     if (one.rateRandomWalk !== null) {

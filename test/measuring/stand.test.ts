@@ -180,6 +180,18 @@ describe('what the stand says about itself', () => {
     expect(propeller.thrustCoefficient).toBeCloseTo(0.11, 5);
   });
 
+  it('command to speed: a point each command, and how far from a straight line', () => {
+    const rows = [1200, 1400, 1600, 1800].map((us, i) => [us, [2000, 4000, 6000, 7600][i]]);
+    const text = [
+      'esc_us,RPM,thrust_N',
+      ...rows.map(([us, rpm]) => `${us},${rpm},${thrustAt(0.11, rpm)}`),
+    ].join('\n');
+    const { points, straightLine_pct } = stand(text).commandMap;
+    expect(points.map((point) => [point.command, Math.round(point.speed_rpm)])).toEqual(rows);
+    // Least squares through 2, 4, 6, 7.6 at 0, 1, 2, 3: slope 1.88, residuals −0.08, 0.04, 0.16, −0.12.
+    expect(straightLine_pct).toBeCloseTo((100 * 160) / 7600, 6);
+  });
+
   it('efficiency is grams per watt', () => {
     const { efficiency } = stand('rpm,Thrust (g),Power (W)\n3000,200,20\n4000,355,40\n5000,556,80\n');
     expect(efficiency[0].efficiency_gPerW).toBeCloseTo(10, 6);
