@@ -23,7 +23,7 @@ export async function bundle(entries) {
     outbase: root,
     write: false,
     logLevel: 'silent',
-    external: ['mujoco-js'],
+    external: ['mujoco-js', 'vite', 'playwright-core'],
     banner: {
       js: "import { createRequire as makeRequire } from 'node:module'; const require = makeRequire(import.meta.url);",
     },
