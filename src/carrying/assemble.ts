@@ -148,7 +148,13 @@ function plotsOf(build: Build, gains: Gains): string[] {
       lines((c) => ({ x: c.f_Hz, y: c.gain_dB })),
     ),
     linePlot(
-      { title: 'Sensitivity to gusts', xLabel: 'Hz', yLabel: 'dB', logX: true, levels: [{ y: 20 * Math.log10(1.6), label: 'Ms 1.6' }] },
+      {
+        title: 'Sensitivity to gusts',
+        xLabel: 'Hz',
+        yLabel: 'dB',
+        logX: true,
+        levels: [{ y: 20 * Math.log10(1.6), label: 'Ms 1.6' }],
+      },
       lines((c) => ({ x: c.f_Hz, y: c.sensitivity_dB })),
     ),
   ];

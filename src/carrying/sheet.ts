@@ -187,7 +187,9 @@ function scores(rows: readonly SheetScore[]): string {
     ['trial', 'scores (band)', ''],
     trials.map((trial) => {
       const own = rows.filter((row) => row.trial === trial);
-      const text = own.map((row) => `${row.score} ${row.value} (${row.band})${row.pass ? '' : ' OUTSIDE'}`).join(';  ');
+      const text = own
+        .map((row) => `${row.score} ${row.value} (${row.band})${row.pass ? '' : ' OUTSIDE'}`)
+        .join(';  ');
       return [trial, text, own.every((row) => row.pass) ? 'within' : 'OUTSIDE'];
     }),
   );

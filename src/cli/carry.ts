@@ -20,7 +20,12 @@ interface CarryOptions {
   json?: boolean;
 }
 
-const ENDINGS = { c: 'rate_gains.h', cpp: 'rate_gains.hpp', json: 'constants.json', text: 'constants.txt' } as const;
+const ENDINGS = {
+  c: 'rate_gains.h',
+  cpp: 'rate_gains.hpp',
+  json: 'constants.json',
+  text: 'constants.txt',
+} as const;
 
 export function addCarryCommand(program: Command): void {
   program
@@ -29,7 +34,10 @@ export function addCarryCommand(program: Command): void {
     .requiredOption('--build <file>', 'build file')
     .requiredOption('--gains <file>', 'gains file')
     .requiredOption('--out <folder>', 'folder to write into; made when it is missing')
-    .option('--convention <file>', 'gain convention, gustbench.convention/1; µs and deg/s per second when absent')
+    .option(
+      '--convention <file>',
+      'gain convention, gustbench.convention/1; µs and deg/s per second when absent',
+    )
     .option('--seed <number>', 'seed of the trials', '1')
     .option('--date <text>', 'date printed on the sheet; today when absent')
     .option('--no-trials', 'leave the trials out')
@@ -41,7 +49,10 @@ function carry(options: CarryOptions): number {
   const build = readBuild(options.build);
   const gains = readGains(options.gains);
   const seed = numberOption('seed', options.seed, 0, Number.MAX_SAFE_INTEGER, '', true);
-  const convention = options.convention === undefined ? CONVENTIONS[0] : parseConvention(readJson(options.convention), options.convention);
+  const convention =
+    options.convention === undefined
+      ? CONVENTIONS[0]
+      : parseConvention(readJson(options.convention), options.convention);
   const results = options.trials ? SHEET_TRIALS.map((trial) => runTrial({ trial, build, gains, seed })) : [];
   const printedAt = options.date ?? new Date().toISOString().slice(0, 10);
   const sheet = sheetHtml(assembleSheet({ build, gains, convention, results, seed, printedAt }));
@@ -56,13 +67,15 @@ function carry(options: CarryOptions): number {
   try {
     for (const kind of EXPORTS) write(ENDINGS[kind], exportConstants(gains, convention, kind, build.name));
   } catch (error) {
-    if (error instanceof RangeError) throw refuse(options.gains, 'axes', error.message, 'gains that the convention can express');
+    if (error instanceof RangeError)
+      throw refuse(options.gains, 'axes', error.message, 'gains that the convention can express');
     throw error;
   }
   write('build.json', `${JSON.stringify(build, null, 2)}\n`);
   write('gains.json', `${JSON.stringify(gains, null, 2)}\n`);
   const outside = results.filter((result) => !result.pass).map((result) => result.trial);
-  if (options.json === true) printJson({ files, convention: convention.name, trialsRun: results.length, outside });
+  if (options.json === true)
+    printJson({ files, convention: convention.name, trialsRun: results.length, outside });
   else {
     process.stdout.write(`${files.join('\n')}\n`);
     if (outside.length > 0) process.stdout.write(`OUTSIDE its band: ${outside.join(', ')}\n`);

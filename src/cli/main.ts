@@ -10,7 +10,14 @@ import { addProveCommand } from './prove.ts';
 import { addShapeCommand } from './shape.ts';
 import { serveTrialsIfWorker } from './trialPool.ts';
 
-const VERBS = [addMeasureCommand, addShapeCommand, addFlyCommand, addProveCommand, addMatchCommand, addCarryCommand];
+const VERBS = [
+  addMeasureCommand,
+  addShapeCommand,
+  addFlyCommand,
+  addProveCommand,
+  addMatchCommand,
+  addCarryCommand,
+];
 
 async function main(): Promise<void> {
   const program = new Command('gustbench')
