@@ -39,4 +39,10 @@ async function main(): Promise<void> {
   }
 }
 
+// A reader that has seen enough (head, less) closes the pipe: that is an end, not an error.
+process.stdout.on('error', (error: NodeJS.ErrnoException) => {
+  if (error.code !== 'EPIPE') throw error;
+  process.exit(0);
+});
+
 if (!serveTrialsIfWorker()) await main();
