@@ -257,7 +257,10 @@ function takeStill(work: Work, still: StillResult, file: string): void {
     work.tell('gyro.drift_dps_per_rts', { value: record.drift_dps_per_rts }, 'Allan deviation at rest');
   }
   if (record.vibration_dps !== undefined && still.rotor !== null) {
-    const ratio = (hoverSpeed_Hz(work.build) / still.rotor.speed_Hz) ** 2;
+    // The build's amplitude is that of the body; the sensor's bandwidth has already weakened the record's.
+    const { speed_Hz } = still.rotor;
+    const passed = gyro.bandwidth_Hz === 0 ? 1 : 1 / Math.hypot(1, speed_Hz / gyro.bandwidth_Hz);
+    const ratio = (hoverSpeed_Hz(work.build) / speed_Hz) ** 2 / passed;
     const [x, y, z] = record.vibration_dps.map((value) => ratio * value);
     gyro.vibration_dps = [x, y, z];
     [x, y, z].forEach((value, i) =>

@@ -1,5 +1,12 @@
 import { describe, expect, it } from 'vitest';
 import { isElectric, parseBuild } from '../../src/craft/build.ts';
+import { OPEN_FIELD } from '../../src/craft/scene.ts';
+import { CALM } from '../../src/craft/wind.ts';
+import type { FlightSetup } from '../../src/flight/flight.ts';
+import { NEUTRAL_STICKS } from '../../src/flight/pilot.ts';
+import { recordCsv } from '../../src/flight/record.ts';
+import { runFlight } from '../../src/flight/run.ts';
+import { RECORD_SIGNALS } from '../../src/flight/signals.ts';
 import { centreFromScales } from '../../src/measuring/balance.ts';
 import { buildFromMeasurements } from '../../src/measuring/buildFromMeasurements.ts';
 import { readTable } from '../../src/measuring/columns.ts';
@@ -10,7 +17,7 @@ import { analyseSwing } from '../../src/measuring/swing.ts';
 import { parseSwing } from '../../src/measuring/swingFile.ts';
 import { WORKSHEETS } from '../../src/measuring/worksheets.ts';
 import { RandomStream } from '../../src/math/random.ts';
-import { demoBuild } from '../physics/builds.ts';
+import { demoBuild, demoGains } from '../physics/builds.ts';
 import { refusal, uiucStatic } from './support.ts';
 
 const base = demoBuild('sandpiper');
@@ -124,6 +131,32 @@ describe('measured values into a build', () => {
     const ct = 0.1165;
     const expected = Math.sqrt((1.35 * 9.80665) / 4 / (ct * 1.225 * 0.254 ** 4));
     expect(Math.abs(hover_Hz / expected - 1)).toBeLessThan(0.03);
+  });
+
+  it('gives the gyro of a build back from a simulated hover of it', () => {
+    const setup: FlightSetup = {
+      build: base,
+      gains: demoGains('sandpiper'),
+      wind: CALM,
+      scene: OPEN_FIELD,
+      seed: 3,
+      start: { kind: 'hover', height_m: 5 },
+    };
+    const sticks = { ...NEUTRAL_STICKS, armed: true, moored: true };
+    const { record } = runFlight(setup, 40, () => sticks, RECORD_SIGNALS);
+    const csv = [...recordCsv(record, { ...setup, scene: OPEN_FIELD, faults: [] })].join('');
+    const still = analyseStill(readTable(csv, 'f'));
+    const { gyro } = buildFromMeasurements(base, [still]).build;
+    expect(still.rotor?.estimated).toBe(false);
+    expect(gyro.resolution_dps).toBeCloseTo(base.gyro.resolution_dps, 6);
+    for (const axis of [0, 1, 2]) {
+      expect(Math.abs(gyro.bias_dps[axis] - base.gyro.bias_dps[axis])).toBeLessThan(0.03);
+      const vibration = (gyro.vibration_dps?.[axis] ?? 0) / (base.gyro.vibration_dps?.[axis] ?? 1);
+      expect(Math.abs(vibration - 1)).toBeLessThan(0.2);
+    }
+    // The loop moves the craft by its own noise, so the density in hover lies above the sensor's.
+    expect(gyro.noise_dps_per_rtHz / base.gyro.noise_dps_per_rtHz).toBeGreaterThan(0.9);
+    expect(gyro.noise_dps_per_rtHz / base.gyro.noise_dps_per_rtHz).toBeLessThan(1.5);
   });
 
   it('a gyro whose unit is in doubt is not taken over', () => {
