@@ -2,7 +2,7 @@
  * Maximum likelihood of the innovations by Fisher scoring with Levenberg's damping: the search behind fitAxis.
  * Plant and noise are fitted together; which of the optional plant terms are free is the caller's choice.
  */
-import { CholeskyDecomposition, inverse, Matrix } from 'ml-matrix';
+import { EigenvalueDecomposition, Matrix } from 'ml-matrix';
 import type { AxisPiece, PlantParameters } from './axisData.ts';
 import { DisturbanceFilter, type FilterPlant, type NoiseParameters } from './disturbanceFilter.ts';
 import { meanCommand_us, unitResponse, type PlantShape } from './plantResponse.ts';
@@ -57,7 +57,7 @@ const LARGEST_ORDER = 48;
 const MOST_WHITENED_ITERATIONS = 12;
 const WHITENESS_LAGS = 60;
 /** Prediction errors that stay coloured: the intervals are widened by half; common practice, no source. */
-const NOT_WHITE = 3;
+const NOT_WHITE = 2;
 const NOT_WHITE_FACTOR = 1.5;
 /**
  * Weak prior of the disturbance's decay, ln λ ~ N(ln 1, 2²): keeps the search finite when there is no
@@ -65,6 +65,7 @@ const NOT_WHITE_FACTOR = 1.5;
  */
 const DECAY_PRIOR = { mean: 0, sd: 2 };
 const NOISE_STEP = 1e-4;
+const LEAST_EIGENVALUE = 1e-13;
 /** Steps of the central differences of delay, lead and damping. */
 const PLANT_STEPS = [0, 0, 2e-5, 1e-4, 1e-3];
 
@@ -365,7 +366,7 @@ export class AxisFitter {
     let e = this.normalised(this.innovation);
     const order = whiteningOrder(autocovariance(e, LARGEST_ORDER), this.rows);
     if (order === 0) {
-      return this.result(p, inverse(last.information), e, 0, 2 * cost, converged);
+      return this.result(p, safeInverse(last.information), e, 0, 2 * cost, converged);
     }
     let at = p;
     let deviance = this.devianceOf(at, e, order);
@@ -423,21 +424,24 @@ export class AxisFitter {
     const a = whiteningFilter(autocovariance(e, order), order);
     const slopes = places.map((place) => this.whitenedSequences(this.normalisedSlopes(place), a));
     const f = this.whitenedSequences(e, a);
-    const size = places.length + order;
+    const count = places.length;
+    const size = count + order;
     const sums = new Float64Array(size * size);
     const gradient = new Float64Array(size);
-    const row = new Float64Array(size);
     let square = 0;
-    for (let i = 0; i < f.length; i++) {
-      for (let k = order; k < f[i].length; k++) {
-        for (let j = 0; j < places.length; j++) row[j] = slopes[j][i][k];
-        for (let j = 0; j < order; j++) row[places.length + j] = e[i][k - 1 - j];
-        square += f[i][k] * f[i][k];
-        for (let x = 0; x < size; x++) {
-          gradient[x] += row[x] * f[i][k];
-          for (let y = 0; y <= x; y++) sums[x * size + y] += row[x] * row[y];
-        }
+    f.forEach((errors, i) => {
+      for (const value of errors) square += value * value;
+      for (let x = 0; x < count; x++) {
+        const slope = slopes[x][i];
+        gradient[x] += product(slope, errors, 0);
+        for (let y = 0; y <= x; y++) sums[x * size + y] += product(slope, slopes[y][i], 0);
+        for (let j = 0; j < order; j++) sums[(count + j) * size + x] += product(slope, e[i], j + 1);
       }
+    });
+    // The coefficients' own block is the autocovariance; their gradient is zero by the Yule–Walker equations.
+    const covariances = autocovariance(e, order);
+    for (let j = 0; j < order; j++) {
+      for (let k = 0; k <= j; k++) sums[(count + j) * size + count + k] = covariances[j - k];
     }
     const variance = square / this.rows;
     const information = symmetric(sums, size, 1 / variance);
@@ -449,7 +453,7 @@ export class AxisFitter {
     information.set(decay, decay, information.get(decay, decay) + per);
     const drive = places.indexOf(DRIVE);
     information.set(drive, drive, information.get(drive, drive) + 1e-6);
-    const covariance = inverse(information);
+    const covariance = safeInverse(information);
     const step = new Float64Array(this.active.length);
     const sigma = new Float64Array(this.active.length).fill(Infinity);
     const solved = covariance.mmul(Matrix.columnVector(total));
@@ -576,11 +580,49 @@ function addPrior(
 
 /** −(J + μ diag J)⁻¹ g. */
 function dampedStep(at: Evaluation, damping: number): Float64Array {
-  const damped = at.information.clone();
   const size = at.gradient.length;
+  const damped = at.information.clone();
   for (let a = 0; a < size; a++) damped.set(a, a, damped.get(a, a) * (1 + damping));
-  const solved = new CholeskyDecomposition(damped).solve(Matrix.columnVector(Array.from(at.gradient)));
+  const solved = safeInverse(damped).mmul(Matrix.columnVector(Array.from(at.gradient)));
   return Float64Array.from({ length: size }, (_, a) => -solved.get(a, 0));
+}
+
+/**
+ * Inverse of an information matrix, scaled to a unit diagonal. Directions the data say nothing of get a very
+ * large, not an infinite, variance.
+ */
+function safeInverse(information: Matrix): Matrix {
+  const size = information.rows;
+  const scale = Array.from(
+    { length: size },
+    (_, a) => 1 / Math.sqrt(Math.max(information.get(a, a), 1e-300)),
+  );
+  const unit = Matrix.zeros(size, size);
+  for (let a = 0; a < size; a++) {
+    for (let b = 0; b < size; b++) unit.set(a, b, information.get(a, b) * scale[a] * scale[b]);
+  }
+  const { eigenvectorMatrix: V, realEigenvalues } = new EigenvalueDecomposition(unit, {
+    assumeSymmetric: true,
+  });
+  const out = Matrix.zeros(size, size);
+  for (let a = 0; a < size; a++) {
+    for (let b = 0; b <= a; b++) {
+      let sum = 0;
+      for (let k = 0; k < size; k++) {
+        sum += (V.get(a, k) * V.get(b, k)) / Math.max(realEigenvalues[k], LEAST_EIGENVALUE);
+      }
+      out.set(a, b, sum * scale[a] * scale[b]);
+      out.set(b, a, sum * scale[a] * scale[b]);
+    }
+  }
+  return out;
+}
+
+/** Σ x_k y_{k−lag}. */
+function product(x: Float64Array, y: Float64Array, lag: number): number {
+  let sum = 0;
+  for (let k = lag; k < x.length; k++) sum += x[k] * y[k - lag];
+  return sum;
 }
 
 function predictedGain(at: Evaluation, step: Float64Array): number {

@@ -42,7 +42,7 @@ export function describeFit(
     ...failureSentences(context, residual),
   ];
   if (!fit.converged) sentences.push('The search did not settle; take the numbers with care.');
-  if (fit.whiteness > 3) {
+  if (fit.whiteness > 2) {
     sentences.push('What is left over is not white noise: the stated intervals were widened by half.');
   }
   return sentences.join(' ');
@@ -77,9 +77,11 @@ function failureSentences(
 ): string[] {
   const { log, build } = context;
   const sentences: string[] = [];
-  for (const line of residual.lines.filter((one) => one.order !== null).slice(0, 2)) {
+  for (const order of ['once per turn', 'blade pass'] as const) {
+    const line = residual.lines.find((one) => one.order === order);
+    if (line === undefined) continue;
     sentences.push(
-      `Vibration of ${line.amplitude_dps.toPrecision(2)} deg/s at ${line.f_Hz.toFixed(0)} Hz, ${line.order ?? ''} of the rotors.`,
+      `Vibration of ${line.amplitude_dps.toPrecision(2)} deg/s at ${line.f_Hz.toFixed(0)} Hz, ${order} of the rotors.`,
     );
   }
   const unknown = residual.lines.find((one) => one.order === null);

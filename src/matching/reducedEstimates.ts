@@ -56,8 +56,9 @@ export function reducedEstimates(fit: AxisFit): ReducedEstimates {
   });
   return {
     gain_dps2_per_us: { value: plant.gain_dps2_per_us, sigma: sigma[0] },
-    lag_s: { value: plant.lag_s, sigma: sigma[1] },
-    delay_s: { value: plant.delay_s, sigma: sigma[2] },
+    // At the end of its range a number does not move with the fit; it is no better known for that.
+    lag_s: { value: plant.lag_s, sigma: Math.max(sigma[1], fit.lag_s.sigma) },
+    delay_s: { value: plant.delay_s, sigma: Math.max(sigma[2], fit.delay_s.sigma) },
     error_dB,
     error_deg,
     delayBelowZero_s: null,

@@ -15,6 +15,8 @@ export const HORIZON_S = 0.3;
 const WARM_UP_S = 0.5;
 const LINE_OVER_MEDIAN = 20;
 const MOST_LINES = 6;
+/** Below this what is left over is motion the model missed, not vibration. */
+const LOWEST_LINE_HZ = 15;
 
 export interface Validation {
   readonly t_s: Float64Array;
@@ -187,7 +189,12 @@ function findLines(
   const lines: ResidualLine[] = [];
   for (let k = 3; k + 3 < density.length; k++) {
     const around = density.subarray(k - 3, k + 4);
-    if (density[k] < LINE_OVER_MEDIAN * median || around.some((value) => value > density[k])) continue;
+    if (
+      f_Hz[k] < LOWEST_LINE_HZ ||
+      density[k] < LINE_OVER_MEDIAN * median ||
+      around.some((value) => value > density[k])
+    )
+      continue;
     let power = 0;
     for (let j = k - 3; j <= k + 3; j++) power += density[j] * bin_Hz;
     lines.push({
