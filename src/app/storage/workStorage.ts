@@ -103,6 +103,8 @@ export class WorkStorage {
         await writing.objectStore('crafts').delete(key);
       }
     }
+    // The store's own order is by random id; by name it is the same each time.
+    crafts.sort((a, b) => a.build.name.localeCompare(b.build.name, 'en') || a.id.localeCompare(b.id, 'en'));
     let desk: Desk | null = null;
     const rawDesk = await writing.objectStore('desk').get('desk');
     if (rawDesk !== undefined) {
