@@ -1,15 +1,33 @@
-/** `prove`: trials with scores, bands, pass or fail; sweeps; JSON and HTML. */
+/** `prove`: trials with scores, bands, pass or fail; sweeps; spread over an uncertain build; JSON and HTML. */
+import { existsSync } from 'node:fs';
 import { availableParallelism } from 'node:os';
 import type { Command } from 'commander';
-import { z } from 'zod';
-import { formatTag, parseWith } from '../craft/fields.ts';
 import { InputError, refuse } from '../craft/problem.ts';
-import { inPlaceWorker, runPool, type TaskAnswer, type TrialWorker } from '../trials/pool.ts';
-import { bandText, reportHtml } from '../trials/report.ts';
+import { VERSION } from '../flight/record.ts';
+import { inPlaceWorker, runTasks, type PoolRun, type PoolWork, type Progress } from '../trials/pool.ts';
+import type { TaskAnswer } from '../trials/protocol.ts';
 import { TRIALS, trialByName } from '../trials/registry.ts';
+import { bandText, reportHtml, scoreText, type ReportContent } from '../trials/report.ts';
+import {
+  parseRun,
+  PLAIN_RUN,
+  runTasksOf,
+  type RunDescription,
+  type RunSubject,
+  type SpreadRequest,
+} from '../trials/runDescription.ts';
 import type { TrialTask } from '../trials/runTrial.ts';
-import { axisValue, cellsInOrder, cellTask, parseSweep } from '../trials/sweep.ts';
+import { axisValue, parseSweep } from '../trials/sweep.ts';
+import { mapOf, runSweep, SweepCells } from '../trials/sweepResult.ts';
 import type { TrialResult } from '../trials/trial.ts';
+import {
+  latinHypercube,
+  spreadSchema,
+  spreadsOf,
+  spreadTasks,
+  summariseSpread,
+  type SpreadSummary,
+} from '../trials/uncertainty.ts';
 import {
   DONE,
   numberOption,
@@ -18,6 +36,7 @@ import {
   readBuild,
   readGains,
   readJson,
+  readText,
   readWind,
   runVerb,
   writeText,
@@ -25,96 +44,149 @@ import {
 import { threadWorker } from './trialPool.ts';
 
 interface ProveOptions {
-  build: string;
-  gains: string;
+  build?: string;
+  gains?: string;
+  baseline?: string;
   wind?: string;
   trial?: string[];
   sweep?: string;
+  cells?: string;
+  spread?: string;
   run?: string;
   workers?: string;
-  seed: string;
+  seed?: string;
   html?: string;
   notes?: string;
   list?: boolean;
   json?: boolean;
 }
 
-/** A run description: trials with bands of one's own. */
-const runSchema = z.strictObject({
-  format: formatTag('gustbench.run/1'),
-  trials: z.array(z.string()).max(200),
-  bands: z
-    .record(
-      z.string(),
-      z.record(z.string(), z.strictObject({ least: z.number().optional(), most: z.number().optional() })),
-    )
-    .default({}),
-  notes: z.string().max(4000).default(''),
-});
+/** Stopped by Ctrl-C, as shells count it. */
+const INTERRUPTED = 130;
+/** A sweep result of 40,000 cells fits. */
+const LARGEST_CELLS_BYTES = 100_000_000;
+/** Finished cells are written down this often. */
+const KEEP_EVERY_S = 5;
 
 export function addProveCommand(program: Command): void {
   program
     .command('prove')
-    .description('repeatable trials with scores and bands; sweeps over one or two fields')
-    .requiredOption('--build <file>', 'build file')
-    .requiredOption('--gains <file>', 'gains file')
-    .option('--trial <name...>', 'trials to run; all when absent')
+    .description('repeatable trials with scores and bands; sweeps over one or two fields; spread')
+    .option('--build <file>', 'build file; may be left out where the run description has one')
+    .option('--gains <file>', 'gains file; may be left out where the run description has one')
+    .option('--trial <name...>', 'trials to run; all when absent (see --list)')
+    .option('--baseline <file>', 'another gains file, flown on the same seed to compare with')
     .option('--wind <file>', 'wind in place of the trials’ own')
-    .option('--sweep <file>', 'sweep file, gustbench.sweep/1')
-    .option('--run <file>', 'run description, gustbench.run/1: trials and bands')
-    .option('--workers <number>', 'worker threads')
-    .option('--seed <number>', 'seed of everything random', '1')
+    .option('--sweep <file>', 'sweep file, gustbench.sweep/1: one trial over one or two fields')
+    .option(
+      '--cells <file>',
+      'keep the sweep’s finished cells here; started again with it, the sweep goes on',
+    )
+    .option('--spread <samples>', 'fly each trial over this many samples of an uncertain build')
+    .option(
+      '--run <file>',
+      'run description, gustbench.run/1: trials, bands, overrides, sweep, spread, notes',
+    )
+    .option('--workers <number>', 'worker threads; as many as there are cores when absent')
+    .option('--seed <number>', 'seed of everything random')
     .option('--html <file>', 'report to write')
     .option('--notes <text>', 'notes for the report')
-    .option('--list', 'list the trials')
+    .option('--list', 'list the trials and end')
     .option('--json', 'print one JSON object')
     .action((options: ProveOptions) => runVerb(() => prove(options)));
 }
 
+/** What to do, from files and options; an option goes before the run description. */
+interface Plan {
+  readonly run: RunDescription;
+  readonly file: string;
+  readonly subject: RunSubject;
+  readonly workers: number;
+  readonly options: ProveOptions;
+}
+
 async function prove(options: ProveOptions): Promise<number> {
-  if (options.list === true) {
+  if (options.list === true) return list(options);
+  const plan = planOf(options);
+  const { run } = plan;
+  if (options.sweep !== undefined || run.sweep !== null) return proveSweep(plan);
+  if (options.spread !== undefined || run.spread !== null) return proveSpread(plan);
+  if (options.cells !== undefined)
+    throw refuse('command line', '--cells', options.cells, 'only with a sweep');
+  return proveTrials(plan);
+}
+
+function list(options: ProveOptions): number {
+  if (options.json === true) {
+    const rows = TRIALS.map(({ name, title, purpose, parameters, scores }) => ({
+      name,
+      title,
+      purpose,
+      parameters,
+      scores,
+    }));
+    printJson({ trials: rows });
+  } else {
     for (const trial of TRIALS) process.stdout.write(`${trial.name.padEnd(30)}${trial.purpose}\n`);
-    return DONE;
   }
-  const seed = numberOption('seed', options.seed, 0, Number.MAX_SAFE_INTEGER, '', true);
+  return DONE;
+}
+
+function planOf(options: ProveOptions): Plan {
+  const file = options.run ?? 'command line';
+  const described = options.run === undefined ? PLAIN_RUN : parseRun(readJson(options.run), options.run);
+  const build = options.build === undefined ? described.build : readBuild(options.build);
+  const gains = options.gains === undefined ? described.gains : readGains(options.gains);
+  if (build === null) throw refuse('command line', '--build', undefined, 'a build file');
+  if (gains === null) throw refuse('command line', '--gains', undefined, 'a gains file');
+  for (const name of options.trial ?? []) trialByName(name, '--trial');
+  const seed =
+    options.seed === undefined
+      ? (described.seed ?? 1)
+      : numberOption('seed', options.seed, 0, Number.MAX_SAFE_INTEGER, '', true);
+  const run: RunDescription = {
+    ...described,
+    trials: options.trial ?? described.trials,
+    notes: options.notes ?? described.notes,
+    baseline: options.baseline === undefined ? described.baseline : readGains(options.baseline),
+  };
   const workers =
     options.workers === undefined
       ? availableParallelism()
       : numberOption('workers', options.workers, 1, 64, '', true);
-  return options.sweep === undefined ? proveTrials(options, seed, workers) : proveSweep(options, workers);
+  const wind = options.wind === undefined ? described.wind : readWind(options.wind);
+  return { run, file, subject: { build, gains, wind, seed }, workers, options };
 }
 
-async function proveTrials(options: ProveOptions, seed: number, workers: number): Promise<number> {
-  const build = readBuild(options.build);
-  const gains = readGains(options.gains);
-  const run = options.run === undefined ? null : parseWith(runSchema, readJson(options.run), options.run);
-  const wind = options.wind === undefined ? undefined : readWind(options.wind);
-  const names = options.trial ?? run?.trials ?? TRIALS.map((trial) => trial.name);
-  for (const name of names) trialByName(name);
-  const results = new Array<TrialResult>(names.length);
-  await overPool(
-    workers,
-    names.length,
-    (index): TrialTask => ({
-      trial: names[index],
-      build,
-      gains,
-      seed,
-      ...(wind === undefined ? {} : { wind }),
-      ...(run?.bands[names[index]] === undefined ? {} : { bands: run.bands[names[index]] }),
-    }),
-    (index, answer) => {
-      results[index] = resultOf(answer);
-    },
-  );
+// --- Trials ------------------------------------------------------------------------------------------------
+
+async function proveTrials({ run, file, subject, workers, options }: Plan): Promise<number> {
+  const { build, gains, seed, wind } = subject;
+  const { baseline } = run;
+  const tasks = runTasksOf(run, subject, file);
+  const others = baseline === null ? [] : runTasksOf(run, { ...subject, gains: baseline }, file);
+  const answers = await flyAll([...tasks, ...others], workers, 'trials');
+  if (answers === null) return INTERRUPTED;
+  const all = answers.map(resultOf);
+  const results = all.slice(0, tasks.length);
+  const before = all.slice(tasks.length);
   const pass = results.every((result) => result.pass);
-  if (options.html !== undefined) {
-    writeText(options.html, [
-      reportHtml({ build, gains, results, notes: options.notes ?? run?.notes ?? '', seed }),
-    ]);
+  const content: ReportContent = {
+    ...{ build, gains, results, seed, wind, notes: run.notes, overrides: run.overrides, bands: run.bands },
+    ...(baseline === null ? {} : { baseline: { gains: baseline, results: before } }),
+  };
+  if (options.html !== undefined) writeText(options.html, [reportHtml(content)]);
+  if (options.json === true) {
+    printJson({
+      pass,
+      seed,
+      version: VERSION,
+      trials: results,
+      ...(baseline === null ? {} : { baseline: before }),
+    });
+  } else {
+    describe(results, before);
   }
-  if (options.json === true) printJson({ pass, seed, trials: results });
-  else describe(results);
   return pass ? DONE : OUTSIDE_BAND;
 }
 
@@ -122,103 +194,254 @@ async function proveTrials(options: ProveOptions, seed: number, workers: number)
 function resultOf(answer: TaskAnswer): TrialResult {
   if (answer.kind === 'done') return answer.result;
   if (answer.kind === 'refused') throw new InputError(answer.file, answer.problems);
-  throw refuse('prove', 'worker', answer.reason, 'a worker that lives');
+  throw refuse('prove', 'worker', answer.reason, 'a worker that lives through its trial');
 }
 
-async function proveSweep(options: ProveOptions, workers: number): Promise<number> {
-  const subject = {
-    build: readBuild(options.build),
-    gains: readGains(options.gains),
-    wind: options.wind === undefined ? null : readWind(options.wind),
-  };
-  const file = options.sweep ?? '';
-  const sweep = parseSweep(readJson(file), subject, file);
-  const rows = sweep.y?.count ?? 1;
-  const order = cellsInOrder(sweep.x.count, rows);
-  const names = trialByName(sweep.trial).scores.map((score) => score.name);
-  const cells = new Array<{
-    x: number;
-    y: number | null;
-    scores: Record<string, number | null> | null;
-    pass: boolean;
-    refused?: string;
-  }>(order.length);
-  let shown = 0;
-  await overPool(
-    workers,
-    order.length,
-    (index) => cellTask(sweep, subject, order[index]),
-    (index, answer) => {
-      const cell = order[index];
-      const at = {
-        x: axisValue(sweep.x, cell.column),
-        y: sweep.y === undefined ? null : axisValue(sweep.y, cell.row),
-      };
-      const place = cell.row * sweep.x.count + cell.column;
-      if (answer.kind === 'done') {
-        const scores = Object.fromEntries(answer.result.scores.map((score) => [score.name, score.value]));
-        cells[place] = { ...at, scores, pass: answer.result.pass };
-      } else {
-        const why =
-          answer.kind === 'refused'
-            ? `${answer.problems[0]?.path}: ${answer.problems[0]?.allowed}`
-            : answer.reason;
-        cells[place] = { ...at, scores: null, pass: false, refused: why };
-      }
-      shown++;
-      if (shown % 50 === 0) process.stderr.write(`${shown} of ${order.length} cells\n`);
-    },
-  );
-  const pass = cells.every((cell) => cell.pass);
-  if (options.json === true) printJson({ pass, sweep, cells });
-  else {
-    process.stdout.write(`${[sweep.x.path, sweep.y?.path ?? '', ...names, 'pass'].join('\t')}\n`);
-    for (const cell of cells) {
-      process.stdout.write(
-        `${[cell.x, cell.y ?? '', ...names.map((name) => cell.scores?.[name] ?? ''), cell.pass ? 'within' : 'OUTSIDE'].join('\t')}\n`,
+function describe(results: readonly TrialResult[], before: readonly TrialResult[]): void {
+  const lines: string[] = [];
+  results.forEach((result, i) => {
+    const why = result.stopped ?? result.note;
+    lines.push(`${result.pass ? 'within ' : 'OUTSIDE'} ${result.title}${why === null ? '' : ` (${why})`}`);
+    result.scores.forEach((score, k) => {
+      const earlier = before.length === 0 ? '' : `${scoreText(before[i].scores[k])} `.padStart(20);
+      const verdict = score.pass ? '' : '   OUTSIDE';
+      lines.push(
+        `        ${score.name.padEnd(22)}${scoreText(score).padEnd(20)}${earlier}${bandText(score.band, score.unit)}${verdict}`,
       );
-    }
+    });
+  });
+  const within = results.filter((result) => result.pass).length;
+  lines.push(
+    `${within} of ${results.length} trials within their bands.`,
+    'A simulated pass is no clearance to fly.',
+  );
+  process.stdout.write(`${lines.join('\n')}\n`);
+}
+
+// --- Sweep -------------------------------------------------------------------------------------------------
+
+async function proveSweep(plan: Plan): Promise<number> {
+  const { options, workers } = plan;
+  const kept = cellsOf(plan);
+  const file = options.cells;
+  let written_s = 0;
+  const run = runSweep(kept, workerMaker(workers), workers, {
+    progress: (progress) => {
+      showProgress(progress, 'cells');
+      if (file === undefined || progress.elapsed_s - written_s < KEEP_EVERY_S) return;
+      written_s = progress.elapsed_s;
+      keepCells(file, kept);
+    },
+  });
+  const { end, deaths } = await untilDone(run);
+  if (file !== undefined) keepCells(file, kept);
+  const left = kept.count - kept.done;
+  if (end === 'cancelled' || end === 'crashed' || left > 0) {
+    const again =
+      file === undefined
+        ? 'nothing is kept without --cells FILE'
+        : `started again with --cells ${file} it goes on`;
+    process.stderr.write(`${kept.done} of ${kept.count} cells finished, ${left} left; ${again}\n`);
+    if (end === 'cancelled') return INTERRUPTED;
+    throw refuse(
+      'prove',
+      'worker',
+      deaths.at(-1) ?? 'a cell that the program failed at',
+      'workers that live through their cells',
+    );
+  }
+  if (options.html !== undefined) {
+    const { build, gains, wind, seed } = plan.subject;
+    writeText(options.html, [
+      reportHtml({ build, gains, wind, seed, results: [], notes: plan.run.notes, sweep: kept }),
+    ]);
+  }
+  printSweep(kept, options.json === true);
+  return kept.cells().every((cell) => cell.pass) ? DONE : OUTSIDE_BAND;
+}
+
+/** The sweep with what an earlier start of it finished. */
+function cellsOf({ run, file, subject, options }: Plan): SweepCells {
+  const source = options.sweep ?? file;
+  const base = { build: subject.build, gains: subject.gains, wind: subject.wind };
+  const parsed = parseSweep(options.sweep === undefined ? run.sweep : readJson(options.sweep), base, source);
+  const sweep = options.seed === undefined ? parsed : { ...parsed, seed: subject.seed };
+  const fresh = new SweepCells(sweep, base);
+  if (options.cells === undefined || !existsSync(options.cells)) return fresh;
+  const kept = SweepCells.parse(parseCells(options.cells), options.cells);
+  if (!kept.sameAs(fresh)) {
+    throw refuse(
+      options.cells,
+      '',
+      'cells of another sweep, build, gains or wind',
+      `cells of ${source}, or a file that is not there yet`,
+    );
+  }
+  return kept;
+}
+
+function parseCells(file: string): unknown {
+  try {
+    return JSON.parse(readText(file, LARGEST_CELLS_BYTES)) as unknown;
+  } catch (error) {
+    if (error instanceof InputError) throw error;
+    throw refuse(file, '', 'broken off or not JSON', 'a sweep result, gustbench.sweep-result/1');
+  }
+}
+
+function keepCells(file: string, kept: SweepCells): void {
+  writeText(file, [JSON.stringify(kept)]);
+}
+
+function printSweep(kept: SweepCells, json: boolean): void {
+  const { sweep } = kept;
+  const map = mapOf(kept);
+  const names = map.layers.map((layer) => layer.name);
+  const at = (column: number, row: number) => ({
+    x: axisValue(sweep.x, column),
+    y: sweep.y === undefined ? null : axisValue(sweep.y, row),
+  });
+  if (json) {
+    const cells = kept.cells().map(({ column, row, values, pass, reason }) => ({
+      ...at(column, row),
+      scores: values.length === 0 ? null : Object.fromEntries(names.map((name, i) => [name, values[i]])),
+      pass,
+      reason,
+    }));
+    const front = map.front.map((place) => at(place % kept.columns, Math.floor(place / kept.columns)));
+    printJson({ pass: cells.every((cell) => cell.pass), version: VERSION, sweep, cells, front });
+    return;
+  }
+  const lines = [
+    [sweep.x.path, ...(sweep.y === undefined ? [] : [sweep.y.path]), ...names, 'verdict'].join('\t'),
+  ];
+  for (const cell of kept.cells()) {
+    const { x, y } = at(cell.column, cell.row);
+    const values = names.map((_, i) => cell.values[i] ?? '');
+    const verdict = cell.pass ? 'within' : `OUTSIDE${cell.reason === null ? '' : `: ${cell.reason}`}`;
+    lines.push([x, ...(y === null ? [] : [y]), ...values, verdict].join('\t'));
+  }
+  lines.push('A simulated pass is no clearance to fly.');
+  process.stdout.write(`${lines.join('\n')}\n`);
+}
+
+// --- Spread ------------------------------------------------------------------------------------------------
+
+async function proveSpread(plan: Plan): Promise<number> {
+  const { run, subject, workers, options } = plan;
+  const requests = spreadRequests(plan);
+  const found: { request: SpreadRequest; summary: SpreadSummary }[] = [];
+  for (const request of requests) {
+    const spreads = spreadsOf(request.shares);
+    const factors = latinHypercube(spreads, request.samples, subject.seed);
+    const { build, gains, wind } = subject;
+    const tasks = spreadTasks(request.trial, { build, gains, wind }, spreads, factors, subject.seed).map(
+      (task) => ({
+        ...task,
+        overrides: { ...run.overrides, ...task.overrides },
+        bands: run.bands[request.trial] ?? {},
+      }),
+    );
+    const answers = await flyAll(tasks, workers, `samples of ${request.trial}`);
+    if (answers === null) return INTERRUPTED;
+    found.push({ request, summary: summariseSpread(tasks, spreads, factors, answers) });
+  }
+  if (options.html !== undefined) {
+    const { build, gains, wind, seed } = subject;
+    const one = found[0];
+    writeText(options.html, [
+      reportHtml({
+        build,
+        gains,
+        wind,
+        seed,
+        results: [],
+        notes: run.notes,
+        overrides: run.overrides,
+        bands: run.bands,
+        spread: one,
+      }),
+    ]);
+  }
+  const pass = found.every(({ summary }) => summary.failures.share === 0 && summary.lost === 0);
+  if (options.json === true) {
+    printJson({ pass, seed: subject.seed, version: VERSION, spreads: found.map(({ summary }) => summary) });
+  } else {
+    for (const { summary } of found) describeSpread(summary);
+    process.stdout.write('A simulated pass is no clearance to fly.\n');
   }
   return pass ? DONE : OUTSIDE_BAND;
 }
 
-async function overPool(
-  count: number,
-  tasks: number,
-  taskAt: (index: number) => TrialTask,
-  hear: (index: number, answer: TaskAnswer) => void,
-): Promise<void> {
-  const entry = new URL(import.meta.url);
-  const workers: TrialWorker[] =
-    count === 1
-      ? [inPlaceWorker()]
-      : Array.from({ length: Math.min(count, tasks) }, () => threadWorker(entry));
-  let problem: unknown = null;
-  const run = runPool(workers, tasks, taskAt, (index, answer) => {
-    try {
-      hear(index, answer);
-    } catch (error) {
-      problem ??= error;
-      run.cancel();
-    }
-  });
-  await run.done;
-  for (const worker of workers) worker.end();
-  if (problem !== null) throw problem;
+/** Of the run description, or --spread N of each trial named. */
+function spreadRequests({ run, options }: Plan): SpreadRequest[] {
+  if (options.spread === undefined) return run.spread === null ? [] : [run.spread];
+  const samples = numberOption('spread', options.spread, 3, 10_000, 'samples', true);
+  const trials = options.trial ?? (run.spread === null ? run.trials : [run.spread.trial]);
+  return trials.map((trial) => ({ trial, samples, shares: run.spread?.shares ?? spreadSchema.parse({}) }));
 }
 
-function describe(results: readonly TrialResult[]): void {
-  for (const result of results) {
-    process.stdout.write(
-      `${result.pass ? 'within ' : 'OUTSIDE'} ${result.title}${result.stopped === null ? '' : ` (${result.stopped})`}\n`,
-    );
-    for (const score of result.scores) {
-      const value =
-        score.value === null ? 'not reached' : `${Number(score.value.toPrecision(3))} ${score.unit}`;
-      process.stdout.write(
-        `        ${score.name.padEnd(18)}${value.padEnd(20)}${bandText(score.band, score.unit)}${score.pass ? '' : '   OUTSIDE'}\n`,
-      );
-    }
+function describeSpread({ trial, flown, lost, failures, matters, worst }: SpreadSummary): void {
+  const percent = (share: number) => `${(100 * share).toFixed(1)} %`;
+  const lines = [
+    `${trial}: ${percent(failures.share)} of ${flown} samples outside a band (95 %: ${percent(failures.low)} to ${percent(failures.high)})${lost > 0 ? `; ${lost} could not be flown` : ''}`,
+    `        what matters   ${matters.map((one) => `${one.name} ${one.correlation.toFixed(2)}`).join(', ')}`,
+    ...(worst === null
+      ? []
+      : [
+          `        worst sample   ${Object.entries(worst.factors)
+            .map(([name, f]) => `${name} × ${f.toFixed(3)}`)
+            .join(', ')}`,
+        ]),
+  ];
+  process.stdout.write(`${lines.join('\n')}\n`);
+}
+
+// --- Workers -----------------------------------------------------------------------------------------------
+
+/** One worker flies in this thread: nothing to start, nothing to wait for. */
+function workerMaker(count: number) {
+  const entry = new URL(import.meta.url);
+  return count === 1 ? inPlaceWorker : () => threadWorker(entry);
+}
+
+/** Answers in the order of the tasks; null when stopped by Ctrl-C. */
+async function flyAll(
+  tasks: readonly TrialTask[],
+  workers: number,
+  what: string,
+): Promise<TaskAnswer[] | null> {
+  const answers = new Array<TaskAnswer>(tasks.length);
+  const work: PoolWork = {
+    count: tasks.length,
+    taskAt: (index) => tasks[index],
+    hear: (index, answer) => {
+      answers[index] = answer;
+    },
+    progress: (progress) => showProgress(progress, what),
+  };
+  const { end, deaths } = await untilDone(runTasks(workerMaker(workers), workers, work));
+  if (end === 'cancelled') return null;
+  if (end === 'crashed')
+    throw refuse('prove', 'worker', deaths.at(-1), 'workers that live through their trials');
+  return answers;
+}
+
+/** Waits; Ctrl-C stops the run with what is finished. */
+async function untilDone(run: PoolRun) {
+  const stop = (): void => run.cancel();
+  process.once('SIGINT', stop);
+  try {
+    return await run.done;
+  } finally {
+    process.off('SIGINT', stop);
   }
-  process.stdout.write('A simulated pass is no clearance to fly.\n');
+}
+
+/** Tenths of the way, on standard error, once a run takes more than a moment. */
+function showProgress({ done, count, elapsed_s, left_s }: Progress, what: string): void {
+  const tenth = (n: number) => Math.floor((10 * n) / count);
+  if (elapsed_s < 2 || tenth(done) === tenth(done - 1)) return;
+  const left = left_s === null ? '' : `, about ${Math.ceil(left_s)} s left`;
+  process.stderr.write(`${done} of ${count} ${what}${left}\n`);
 }

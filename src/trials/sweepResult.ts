@@ -114,6 +114,13 @@ export class SweepCells {
     return [...this.finished.entries()].sort(([a], [b]) => a - b).map(([, cell]) => cell);
   }
 
+  /** The same sweep of the same build, gains and wind, whatever is finished. */
+  sameAs(other: SweepCells): boolean {
+    const key = ({ sweep, subject: { build, gains, wind } }: SweepCells) =>
+      JSON.stringify([sweep, build, gains, wind ?? null]);
+    return key(this) === key(other);
+  }
+
   /** Everything needed to go on, and to repeat it. */
   toJSON(): unknown {
     const { sweep, subject } = this;

@@ -2,6 +2,7 @@
 import type { Build } from '../../craft/build.ts';
 import type { Gains } from '../../craft/gains.ts';
 import type { Fault } from '../../disturbance/faults.ts';
+import { motorActivity, rmsRateError } from '../scores.ts';
 import { defineTrial, type Parameter, type ParameterValues, type Trial } from '../trial.ts';
 import { gustWind } from '../winds.ts';
 import { heldScores, MOORED_SIGNALS, moor } from './moored.ts';
@@ -23,7 +24,7 @@ export function faulty<P extends string>(about: FaultyTrial<P>): Trial {
       ...about.parameters,
       peak_mps: { value: 6, least: 0, most: 30, meaning: 'greatest speed of the gust' },
     } as Readonly<Record<P | 'peak_mps', Parameter>>,
-    scores: heldScores(20, 2.5, DURATION_S),
+    scores: [...heldScores(20, 2.5, DURATION_S), rmsRateError(12), motorActivity(40)],
     traceSignals: [...MOORED_SIGNALS, 'cmd_FL_us', 'cmd_FR_us', 'cmd_RL_us', 'cmd_RR_us'],
     duration_s: () => DURATION_S,
     start: () => ({ kind: 'hover', height_m: 8 }),
