@@ -30,6 +30,9 @@ export interface LoopSetup {
   /** Added to the gyro sample, deg/s: vibration. */
   readonly vibration_dps?: (t_s: number) => number;
   readonly commandStep_us?: number;
+  /** Several axes on one clock share these. */
+  readonly jitterSeed?: number;
+  readonly lossSeed?: number;
 }
 
 export interface LoopLog {
@@ -43,8 +46,11 @@ export function flyLoop(setup: LoopSetup): LoopLog {
   const { plant, loop_Hz, seed } = setup;
   const n = Math.round(setup.duration_s * loop_Hz);
   const T = 1 / loop_Hz;
-  const stream = (name: string) => new RandomStream(seed, name);
-  const [noise, gust, jitter, loss] = [stream('noise'), stream('gust'), stream('jitter'), stream('loss')];
+  const stream = (name: string, of = seed) => new RandomStream(of, name);
+  const noise = stream('noise');
+  const gust = stream('gust');
+  const jitter = stream('jitter', setup.jitterSeed);
+  const loss = stream('loss', setup.lossSeed);
   const tau = plant.lag_s;
   let rate = 0;
   let acceleration = 0;
