@@ -4,6 +4,7 @@
  * craft's own loops do the rest.
  */
 import { DEG_PER_RAD, GRAVITY_MPS2 } from '../math/angles.ts';
+import { limit } from '../math/limit.ts';
 import type { SnapshotReader, SnapshotWriter, Stateful } from '../math/snapshot.ts';
 
 /** Climb rate at full stick, m/s. */
@@ -153,8 +154,4 @@ export class Mooring implements Stateful {
     this.integralNorth = from.take();
     this.integralEast = from.take();
   }
-}
-
-function limit(value: number, most: number): number {
-  return Math.max(-most, Math.min(most, value));
 }

@@ -13,7 +13,7 @@ import { applyFaults, type Fault, type FaultEffects } from '../disturbance/fault
 import { WindField } from '../disturbance/windField.ts';
 import { DEG_PER_RAD, GRAVITY_MPS2, RAD_PER_DEG, RPM_PER_RAD_PER_S } from '../math/angles.ts';
 import { RungeKutta4 } from '../math/integration.ts';
-import { quaternionFromEuler, rotateToWorld } from '../math/quaternion.ts';
+import { headingOf, quaternionFromEuler, rotateToWorld } from '../math/quaternion.ts';
 import { RandomStream } from '../math/random.ts';
 import { SnapshotReader, SnapshotWriter } from '../math/snapshot.ts';
 import { siteAir } from '../physics/atmosphere.ts';
@@ -247,7 +247,7 @@ export class Flight {
   /** Puts the craft upright where it is, at rest, a little over what it lies on. */
   setUpright(): void {
     const s = this.state;
-    const yaw = headingOf(s);
+    const yaw = headingOf(s, ATTITUDE);
     s.set(quaternionFromEuler(0, 0, yaw), ATTITUDE);
     s.fill(0, VELOCITY, VELOCITY + 3);
     s.fill(0, RATES, RATES + 3);
@@ -593,12 +593,4 @@ function normalise(s: Float64Array): void {
   s[ATTITUDE + 1] = x * scale;
   s[ATTITUDE + 2] = y * scale;
   s[ATTITUDE + 3] = z * scale;
-}
-
-function headingOf(s: Float64Array): number {
-  const w = s[ATTITUDE];
-  const x = s[ATTITUDE + 1];
-  const y = s[ATTITUDE + 2];
-  const z = s[ATTITUDE + 3];
-  return Math.atan2(2 * (w * z + x * y), 1 - 2 * (y * y + z * z));
 }

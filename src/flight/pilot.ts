@@ -8,6 +8,8 @@ import { HeightHold, Mooring } from '../control/assists.ts';
 import { Levelling } from '../control/levelling.ts';
 import { Mixer } from '../control/mixer.ts';
 import { RatePid } from '../control/ratePid.ts';
+import { limit } from '../math/limit.ts';
+import { headingOf } from '../math/quaternion.ts';
 import type { SnapshotReader, SnapshotWriter, Stateful } from '../math/snapshot.ts';
 import { ATTITUDE, POSITION, VELOCITY } from '../physics/state.ts';
 
@@ -117,7 +119,7 @@ export class Pilot implements Stateful {
       this.heightHold.reset();
     }
     if (sticks.moored && !this.wasMoored) {
-      this.mooring.moorAt(state[POSITION], state[POSITION + 1], heading(state));
+      this.mooring.moorAt(state[POSITION], state[POSITION + 1], headingOf(state, ATTITUDE));
       this.heightHold.holdAt(state[POSITION + 2]);
     }
     this.wasArmed = sticks.armed;
@@ -134,7 +136,7 @@ export class Pilot implements Stateful {
         state[POSITION + 1],
         state[VELOCITY],
         state[VELOCITY + 1],
-        heading(state),
+        headingOf(state, ATTITUDE),
         maxAngle_deg,
         dt_s,
       );
@@ -224,17 +226,4 @@ export class Pilot implements Stateful {
   private parts(): Stateful[] {
     return [this.roll, this.pitch, this.yaw, this.levelling, this.heightHold, this.mooring];
   }
-}
-
-/** Heading of the craft's nose, rad clockwise from north. */
-function heading(state: Float64Array): number {
-  const w = state[ATTITUDE];
-  const x = state[ATTITUDE + 1];
-  const y = state[ATTITUDE + 2];
-  const z = state[ATTITUDE + 3];
-  return Math.atan2(2 * (w * z + x * y), 1 - 2 * (y * y + z * z));
-}
-
-function limit(value: number, most: number): number {
-  return Math.max(-most, Math.min(most, value));
 }

@@ -33,6 +33,15 @@ export function eulerFromQuaternion(w: number, x: number, y: number, z: number):
   ];
 }
 
+/** Heading of the nose, rad clockwise from north, of the quaternion at `offset` in `q`. */
+export function headingOf(q: ArrayLike<number>, offset = 0): number {
+  const w = q[offset];
+  const x = q[offset + 1];
+  const y = q[offset + 2];
+  const z = q[offset + 3];
+  return Math.atan2(2 * (w * z + x * y), 1 - 2 * (y * y + z * z));
+}
+
 /** Body vector `v` in world axes. */
 export function rotateToWorld(q: ArrayLike<number>, v: ArrayLike<number>, offset = 0): Vector3 {
   const [w, x, y, z] = [q[offset], q[offset + 1], q[offset + 2], q[offset + 3]];
