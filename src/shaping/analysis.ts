@@ -1,15 +1,10 @@
 /** Everything that is asked of one axis: stability, margins, step, noise; numbers or null, never NaN. */
-import { EigenvalueDecomposition, Matrix } from 'ml-matrix';
+import { magnitude } from './complex.ts';
 import { marginsOf, type Margins } from './margins.ts';
-import { closedLoopMatrices, linearTick, openLoopAt, type RateLoop, type TickOutput } from './rateLoop.ts';
-
-export interface StepMetrics {
-  /** 10 to 90 % of the final value, s. */
-  readonly rise_s: number | null;
-  readonly overshoot_pct: number | null;
-  /** Until it stays within 2 % of the final value, s. */
-  readonly settle_s: number | null;
-}
+import { noiseAtMotor } from './noise.ts';
+import { closedLoopPoles, type Pole } from './poles.ts';
+import { linearTick, openLoopAt, type RateLoop, type TickOutput } from './rateLoop.ts';
+import { NO_STEP, stepInfo, type StepMetrics } from './stepInfo.ts';
 
 export interface StepResponse {
   readonly t_s: Float64Array;
@@ -19,26 +14,26 @@ export interface StepResponse {
 
 export interface AxisAnalysis {
   readonly stable: boolean;
-  /** Some gain crossing or lower margin means: less gain would also lose it. */
+  /** A lower margin as well: less gain would also lose it. */
   readonly conditionallyStable: boolean;
+  readonly poles: readonly Pole[];
   readonly polesMaxRadius: number;
+  /** Of an unstable loop the gain margin is the change of gain, up or down, to the nearest crossing. */
   readonly margins: Margins;
+  /** Null: unstable, or not asked for. */
+  readonly stepResponse: StepResponse | null;
   readonly step: StepMetrics;
   readonly noiseAtMotor_us_rms: number | null;
   /** The margin that is used up first, in words. */
   readonly statement: string;
 }
 
-/** Poles within this of the unit circle count as on it. */
-const ON_CIRCLE = 1e-9;
 /** Lowest frequency looked at, as a share of the Nyquist frequency. */
 const LOW_SHARE = 2e-5;
-
-export function closedLoopPoles(loop: RateLoop): { re: number; im: number }[] {
-  const { A } = closedLoopMatrices(loop);
-  const eigen = new EigenvalueDecomposition(A);
-  return eigen.realEigenvalues.map((re, i) => ({ re, im: eigen.imaginaryEigenvalues[i] }));
-}
+/** How far below that a crossing of very low gains is sought. */
+const LOWEST_SHARE = 1e-11;
+/** A pole whose ringing outlasts this share of its own angle gets frequencies of its own. */
+const NARROW = 0.2;
 
 /**
  * @param noise_dps standard deviation of the gyro's noise at a sample, deg/s
@@ -51,36 +46,83 @@ export function analyse(
   noiseCorrelation = 0,
   coarse = false,
 ): AxisAnalysis {
-  const polesMaxRadius = closedLoopPoles(loop).reduce(
-    (most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)),
-    0,
-  );
-  const stable = polesMaxRadius < 1 - ON_CIRCLE;
-  const nyquist = Math.PI / loop.tick_s;
-  const margins = marginsOf({
-    at: (omega) => openLoopAt(loop, omega),
-    low: nyquist * LOW_SHARE,
-    high: nyquist,
-    sampled: true,
-    coarse,
-  });
+  const { poles, maxRadius, stable } = closedLoopPoles(loop);
+  const found = marginsOfLoop(loop, poles, coarse);
+  const margins = stable ? found : { ...found, gainMargin_dB: nearestCrossing(found) };
   const conditionallyStable = stable && margins.gainReduction_dB !== null;
+  const response = stable && !coarse ? stepResponse(loop, maxRadius) : null;
   return {
     stable,
     conditionallyStable,
-    polesMaxRadius,
+    poles,
+    polesMaxRadius: maxRadius,
     margins,
-    step:
-      stable && !coarse
-        ? stepMetrics(stepResponse(loop, polesMaxRadius), loop)
-        : { rise_s: null, overshoot_pct: null, settle_s: null },
-    noiseAtMotor_us_rms: stable ? noiseAtMotor(loop, noise_dps, noiseCorrelation) : null,
-    statement: statementOf(stable, conditionallyStable, margins),
+    stepResponse: response,
+    step: response === null ? NO_STEP : stepInfo(response.t_s, response.y, finalRate(loop, response)),
+    noiseAtMotor_us_rms: stable
+      ? noiseAtMotor(loop, { sigma_dps: noise_dps, correlation: noiseCorrelation })
+      : null,
+    statement: statementOf(loop, stable, conditionallyStable, maxRadius, margins),
   };
 }
 
-function statementOf(stable: boolean, conditional: boolean, margins: Margins): string {
-  if (!stable) return 'unstable: the craft would oscillate or depart with these gains';
+/** Margins of the loop's own open loop; `poles` tell where something narrow stands. */
+export function marginsOfLoop(loop: RateLoop, poles: readonly Pole[], coarse = false): Margins {
+  const nyquist = Math.PI / loop.tick_s;
+  let low = nyquist * LOW_SHARE;
+  while (low > nyquist * LOWEST_SHARE && magnitude(openLoopAt(loop, low)) < 1) low /= 30;
+  return marginsOf({
+    at: (omega) => openLoopAt(loop, omega),
+    low,
+    high: nyquist,
+    sampled: true,
+    coarse,
+    turns: loop.plant.wholeTicks / 2,
+    narrow: narrowPlaces(loop, poles),
+  });
+}
+
+/** Frequencies about lightly damped poles and about the notches, rad/s. */
+export function narrowPlaces(loop: RateLoop, poles: readonly Pole[]): number[] {
+  const ringing = poles.flatMap((pole) => {
+    const angle = Math.atan2(pole.im, pole.re);
+    const width = Math.abs(Math.log(Math.hypot(pole.re, pole.im)));
+    return angle > 0 && width < NARROW * angle ? around(angle, width) : [];
+  });
+  const notches = loop.gyroFilters.flatMap((f) => {
+    // Zeros on the circle at cos θ = −b1/(2 b0); width of the poles' real part.
+    if (f.b2 === 0 || Math.abs(f.b0 - f.b2) > 1e-12 || Math.abs(f.b1) >= 2 * f.b0) return [];
+    return around(Math.acos(-f.b1 / (2 * f.b0)), 0.5 * Math.abs(Math.log(Math.abs(f.a2))));
+  });
+  return [...ringing, ...notches].map((theta) => theta / loop.tick_s);
+}
+
+function around(theta: number, width: number): number[] {
+  return [-4, -2, -1, -0.5, -0.2, 0, 0.2, 0.5, 1, 2, 4].map((k) => theta + k * width);
+}
+
+function nearestCrossing(margins: Margins): number | null {
+  const up = margins.gainMargin_dB;
+  const down = margins.gainReduction_dB;
+  if (up === null || down === null) return up ?? down;
+  return up < -down ? up : down;
+}
+
+function statementOf(
+  loop: RateLoop,
+  stable: boolean,
+  conditional: boolean,
+  maxRadius: number,
+  margins: Margins,
+): string {
+  if (loop.p === 0 && loop.i === 0)
+    return 'P and I are both zero: nothing draws the rate to its setpoint, it drifts with every push';
+  if (!stable) {
+    const doubled_s = (loop.tick_s * Math.LN2) / Math.log(maxRadius);
+    return doubled_s > 0 && doubled_s < 1000
+      ? `unstable: a disturbance doubles every ${Number(doubled_s.toPrecision(2))} s with these gains`
+      : 'on the edge: a disturbance never dies away with these gains';
+  }
   const parts: string[] = [];
   if (conditional && margins.gainReduction_dB !== null) {
     parts.push(`conditionally stable: ${(-margins.gainReduction_dB).toFixed(1)} dB less gain loses it too`);
@@ -95,93 +137,54 @@ function statementOf(stable: boolean, conditional: boolean, margins: Margins): s
   return parts.join('; ');
 }
 
+/** Shortest and longest record of a step, ticks; longest also in seconds. */
+const LEAST_TICKS = 60;
+const MOST_TICKS = 250_000;
+const LONGEST_STEP_S = 30;
+/** The record may end early once it has kept this close to its end for this many of the slowest pole's times. */
+const SETTLED_SHARE = 1e-3;
+const SETTLED_TIMES = 2;
+
 /** Response of the plant's output to a unit step of the setpoint, sample by sample, from rest. */
 export function stepResponse(loop: RateLoop, polesMaxRadius: number): StepResponse {
   const slow_s = polesMaxRadius >= 1 ? 1 : -loop.tick_s / Math.log(Math.max(1e-9, polesMaxRadius));
-  const length_s = Math.max(60 * loop.tick_s, Math.min(30, 9 * slow_s + 20 * loop.tick_s));
-  const count = Math.min(250_000, Math.ceil(length_s / loop.tick_s) + 1);
-  const t_s = new Float64Array(count);
+  const length_s = Math.min(LONGEST_STEP_S, 9 * slow_s + 20 * loop.tick_s);
+  const count = Math.min(MOST_TICKS, Math.max(LEAST_TICKS, Math.ceil(length_s / loop.tick_s) + 1));
+  const quiet = Math.max(LEAST_TICKS / 2, Math.ceil((SETTLED_TIMES * slow_s) / loop.tick_s));
+  const final = loop.i !== 0 ? 1 : null;
   const y = new Float64Array(count);
   const u_us = new Float64Array(count);
   let state = new Float64Array(loop.layout.size);
   let next = new Float64Array(loop.layout.size);
   const out: TickOutput = { y: 0, u: 0 };
+  let moved = 0;
+  let length = count;
   for (let k = 0; k < count; k++) {
     linearTick(loop, state, 1, 0, next, out);
-    // The loop was at rest at setpoint 0: the first error before the step is 0, as lastError says.
-    t_s[k] = k * loop.tick_s;
     y[k] = out.y;
     u_us[k] = out.u;
     [state, next] = [next, state];
-  }
-  return { t_s, y, u_us };
-}
-
-function stepMetrics(response: StepResponse, loop: RateLoop): StepMetrics {
-  const { t_s, y } = response;
-  const last = y.length - 1;
-  // The plant integrates: with P or I the final value is the setpoint's, or what weight and feed-forward make.
-  const final = loop.i !== 0 ? 1 : loop.p !== 0 ? loop.setpointWeight + loop.ff / loop.p : y[last];
-  if (!Number.isFinite(final) || final === 0) return { rise_s: null, overshoot_pct: null, settle_s: null };
-  const share = (k: number) => y[k] / final;
-  const firstAbove = (level: number): number | null => {
-    for (let k = 1; k <= last; k++) {
-      if (share(k) >= level) {
-        const part = (level - share(k - 1)) / (share(k) - share(k - 1));
-        return t_s[k - 1] + part * (t_s[k] - t_s[k - 1]);
-      }
+    if (final === null || Math.abs(out.y - final) > SETTLED_SHARE) moved = k;
+    else if (k - moved > quiet && k > LEAST_TICKS) {
+      length = k + 1;
+      break;
     }
-    return null;
-  };
-  const low = firstAbove(0.1);
-  const high = firstAbove(0.9);
-  let peak = 0;
-  let outside = -1;
-  for (let k = 0; k <= last; k++) {
-    peak = Math.max(peak, share(k));
-    if (Math.abs(share(k) - 1) > 0.02) outside = k;
   }
-  return {
-    rise_s: low === null || high === null ? null : high - low,
-    overshoot_pct: Math.max(0, (peak - 1) * 100),
-    settle_s: outside >= last ? null : settleTime(t_s, share, outside),
-  };
+  const t_s = Float64Array.from({ length }, (_, k) => k * loop.tick_s);
+  return { t_s, y: y.subarray(0, length), u_us: u_us.subarray(0, length) };
 }
 
-function settleTime(t_s: Float64Array, share: (k: number) => number, outside: number): number {
-  if (outside < 0) return 0;
-  const edge = share(outside) > 1 ? 1.02 : 0.98;
-  const part = (edge - share(outside)) / (share(outside + 1) - share(outside));
-  return t_s[outside] + Math.max(0, Math.min(1, part)) * (t_s[outside + 1] - t_s[outside]);
+/** With I the setpoint; with P alone what weight and feed-forward make of it where the plant integrates. */
+function finalRate(loop: RateLoop, response: StepResponse): number {
+  if (loop.i !== 0) return 1;
+  return closedLoopAtRest(loop) ?? response.y[response.y.length - 1];
 }
 
-/**
- * Standard deviation of the axis command from gyro noise: stationary covariance Σ = A Σ Aᵀ + b bᵀ by doubling,
- * with one more state for noise that a sensor bandwidth has coloured.
- */
-export function noiseAtMotor(loop: RateLoop, noise_dps: number, correlation: number): number | null {
-  const { A, noiseIn, commandOut, noiseToCommand } = closedLoopMatrices(loop);
-  const n = A.rows;
-  const F = Matrix.zeros(n + 1, n + 1);
-  F.setSubMatrix(A, 0, 0);
-  F.setSubMatrix(noiseIn, 0, n);
-  F.set(n, n, correlation);
-  const drive = Matrix.zeros(n + 1, n + 1);
-  drive.set(n, n, noise_dps * noise_dps * (1 - correlation * correlation));
-  let covariance = drive;
-  let step = F;
-  for (let k = 0; k < 60; k++) {
-    const add = step.mmul(covariance).mmul(step.transpose());
-    covariance = Matrix.add(covariance, add);
-    step = step.mmul(step);
-    const size = add.to1DArray().reduce((most, value) => Math.max(most, Math.abs(value)), 0);
-    const whole = covariance.to1DArray().reduce((most, value) => Math.max(most, Math.abs(value)), 0);
-    if (!(whole < 1e30)) return null;
-    if (size <= 1e-14 * whole) break;
-  }
-  const row = Matrix.zeros(1, n + 1);
-  row.setSubMatrix(commandOut, 0, 0);
-  row.set(0, n, noiseToCommand);
-  const variance = row.mmul(covariance).mmul(row.transpose()).get(0, 0);
-  return Number.isFinite(variance) && variance >= 0 ? Math.sqrt(variance) : null;
+/** Setpoint to rate at 0 Hz without an integral: through the plant's own gain there, infinite or not. */
+function closedLoopAtRest(loop: RateLoop): number | null {
+  const forward = loop.p * loop.setpointWeight + loop.ff;
+  const { denominator, numeratorNow, numeratorBefore } = loop.plant;
+  const numerator = numeratorNow[0] + numeratorBefore[0];
+  const whole = denominator[0] + loop.p * numerator;
+  return whole === 0 ? null : (forward * numerator) / whole;
 }

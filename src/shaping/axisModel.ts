@@ -9,7 +9,7 @@ import type { Build } from '../craft/build.ts';
 import { AXES, type AxisName } from '../craft/gains.ts';
 import { withoutPayload } from '../craft/payload.ts';
 import { mixerMatrix } from '../control/mixer.ts';
-import { DEG_PER_RAD } from '../math/angles.ts';
+import { DEG_PER_RAD, RAD_PER_DEG } from '../math/angles.ts';
 import { siteAir } from '../physics/atmosphere.ts';
 import { FlightDynamics } from '../physics/dynamics.ts';
 import { INFLOW, RATES, ROTOR_SPEED, STATE_SIZE } from '../physics/state.ts';
@@ -26,12 +26,29 @@ export interface TrimChoice {
   readonly payloadReleased?: boolean;
 }
 
+/** Current of the motors in an axis's pattern, for the heat that noise adds; amplitudes along the pattern. */
+export interface PatternCurrent {
+  readonly perUs_A: number;
+  /** Per rad/s of rotor speed: the back-EMF. */
+  readonly perSpeed_A: number;
+  readonly resistance_ohm: number;
+  /** Mean over the motors of the squared share that one has of the axis command. */
+  readonly meanSquareShare: number;
+}
+
 export interface AxisModel {
-  /** Body rate (deg/s) from axis command (µs), motors and inflow in it. */
+  /**
+   * Body rate (deg/s) from axis command (µs), motors and inflow in it. States: rate (rad/s), rotor speed
+   * (rad/s) and inflow (m/s) along the axis's pattern.
+   */
   readonly craft: ContinuousSystem;
   /** The same behind the gyro's bandwidth and delay: what the controller sees. */
   readonly measured: ContinuousSystem;
   readonly plant: Plant;
+  /** Null where the build gives only a motor lag. */
+  readonly current: PatternCurrent | null;
+  /** Angular acceleration per m/s of air that moves north, east, down past the craft heading north, deg/s². */
+  readonly gust_dps2_per_mps: readonly [number, number, number];
   /** Largest error of the fitted plant over its band, dB and degrees. */
   readonly fitError_dB: number;
   readonly fitError_deg: number;
@@ -41,6 +58,8 @@ export interface AxisModel {
 const FIT_LOW_HZ = 2;
 const FIT_HIGH_HZ = 25;
 const FIT_POINTS = 40;
+/** Longest lag the fit looks at, s. */
+const LONGEST_LAG_S = 1;
 
 /**
  * Models of the three axes.
@@ -63,10 +82,14 @@ export function axisModels(build: Build, choice: TrimChoice = {}): Record<AxisNa
 }
 
 interface Jacobian {
-  /** ∂(rate of state i)/∂(state j). */
+  /** ∂(rate of state i)/∂(state j); i from CURRENT on: the motors' currents. */
   readonly state: (i: number, j: number) => number;
   readonly duty: (i: number, motor: number) => number;
+  /** Per m/s of air velocity north, east, down. */
+  readonly wind: (i: number, direction: number) => number;
 }
+
+const CURRENT = STATE_SIZE;
 
 /** Central differences; duties last. */
 function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
@@ -74,14 +97,16 @@ function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
   dynamics.groundDown_m = 1e6;
   const s = trim.state.slice();
   const duty = trim.duty.slice();
+  const wind = new Float64Array(3);
   const rate = new Float64Array(STATE_SIZE);
   const run = (): Float64Array => {
     dynamics.duty.set(duty);
+    [dynamics.windNorth_mps, dynamics.windEast_mps, dynamics.windDown_mps] = wind;
     dynamics.prepare(s);
     dynamics.derivative(s, rate);
     // Twice, since a lagged motor's battery sees the loads of the call before.
     dynamics.derivative(s, rate);
-    return rate.slice();
+    return Float64Array.from([...rate, ...dynamics.motorCurrent_A]);
   };
   const column = (array: Float64Array, index: number, step: number): Float64Array => {
     const kept = array[index];
@@ -96,7 +121,12 @@ function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
     column(s, j, j >= ROTOR_SPEED && j < INFLOW ? 0.05 : 1e-4),
   );
   const duties = [0, 1, 2, 3].map((motor) => column(duty, motor, 1e-5));
-  return { state: (i, j) => states[j][i], duty: (i, motor) => duties[motor][i] };
+  const winds = [0, 1, 2].map((direction) => column(wind, direction, 0.05));
+  return {
+    state: (i, j) => states[j][i],
+    duty: (i, motor) => duties[motor][i],
+    wind: (i, direction) => winds[direction][i],
+  };
 }
 
 function axisModel(craft: Craft, jacobian: Jacobian, axis: AxisName): AxisModel {
@@ -106,35 +136,45 @@ function axisModel(craft: Craft, jacobian: Jacobian, axis: AxisName): AxisModel 
   const pattern = [0, 1, 2, 3].map((i) => matrix[4 * i + 1 + k]);
   const square = pattern.reduce((sum, value) => sum + value * value, 0);
   // Deviations along the pattern in, their share along the pattern out.
-  const along = (from: number, to: number) =>
-    pattern.reduce(
-      (sum, pi, a) =>
-        sum + pattern.reduce((part, pj, b) => part + pi * pj * jacobian.state(from + a, to + b), 0),
-      0,
-    ) / square;
-  const rate = RATES + k;
-  const sumOver = (row: number, from: number) =>
-    pattern.reduce((sum, p, a) => sum + p * jacobian.state(row, from + a), 0);
+  const sumOver = (row: number, column: (row: number, rotor: number) => number) =>
+    pattern.reduce((sum, p, rotor) => sum + p * column(row, rotor), 0);
+  const along = (from: number, column: (row: number, rotor: number) => number) =>
+    pattern.reduce((sum, p, rotor) => sum + p * sumOver(from + rotor, column), 0) / square;
   const meanOf = (from: number, column: number) =>
-    pattern.reduce((sum, p, a) => sum + p * jacobian.state(from + a, column), 0) / square;
-  const A = new Matrix([
-    [jacobian.state(rate, rate), sumOver(rate, ROTOR_SPEED), sumOver(rate, INFLOW)],
-    [meanOf(ROTOR_SPEED, rate), along(ROTOR_SPEED, ROTOR_SPEED), along(ROTOR_SPEED, INFLOW)],
-    [meanOf(INFLOW, rate), along(INFLOW, ROTOR_SPEED), along(INFLOW, INFLOW)],
-  ]);
+    pattern.reduce((sum, p, rotor) => sum + p * jacobian.state(from + rotor, column), 0) / square;
+  const speed = (row: number, rotor: number) => jacobian.state(row, ROTOR_SPEED + rotor);
+  const inflow = (row: number, rotor: number) => jacobian.state(row, INFLOW + rotor);
   const perUs = 1 / (craft.escMax_us - craft.escMin_us);
-  const dutyIn = (row: number) => pattern.reduce((sum, p, a) => sum + p * jacobian.duty(row, a), 0) * perUs;
-  const rotorIn =
-    pattern.reduce(
-      (sum, p, a) =>
-        sum + p * pattern.reduce((part, q, b) => part + q * jacobian.duty(ROTOR_SPEED + a, b), 0),
-      0,
-    ) / square;
-  const B = new Matrix([[dutyIn(rate)], [rotorIn * perUs], [0]]);
-  const system: ContinuousSystem = { A, B, C: new Matrix([[DEG_PER_RAD, 0, 0]]), delay_s: 0 };
+  const command = (row: number, rotor: number) => jacobian.duty(row, rotor) * perUs;
+  const rate = RATES + k;
+  const system: ContinuousSystem = {
+    A: new Matrix([
+      [jacobian.state(rate, rate), sumOver(rate, speed), sumOver(rate, inflow)],
+      [meanOf(ROTOR_SPEED, rate), along(ROTOR_SPEED, speed), along(ROTOR_SPEED, inflow)],
+      [meanOf(INFLOW, rate), along(INFLOW, speed), along(INFLOW, inflow)],
+    ]),
+    B: new Matrix([[sumOver(rate, command)], [along(ROTOR_SPEED, command)], [0]]),
+    C: new Matrix([[DEG_PER_RAD, 0, 0]]),
+    delay_s: 0,
+    disturbance: new Matrix([[RAD_PER_DEG], [0], [0]]),
+    commandUpdate_Hz: craft.escUpdate_Hz,
+  };
   const { gyro } = craft.build;
-  const fit = fitPlant(system);
-  return { craft: system, measured: withSensor(system, gyro.bandwidth_Hz, gyro.delay_s), ...fit };
+  const gust = (direction: number) => DEG_PER_RAD * jacobian.wind(rate, direction);
+  return {
+    craft: system,
+    measured: withSensor(system, gyro.bandwidth_Hz, gyro.delay_s),
+    current: !craft.motor.electric
+      ? null
+      : {
+          perUs_A: along(CURRENT, command),
+          perSpeed_A: along(CURRENT, speed),
+          resistance_ohm: craft.motor.resistance_ohm,
+          meanSquareShare: square / 4,
+        },
+    gust_dps2_per_mps: [gust(0), gust(1), gust(2)],
+    ...fitPlant(system),
+  };
 }
 
 /** C (jωI − A)⁻¹ B e^(−jωTd) by elimination on a few states. */
@@ -176,8 +216,8 @@ export function plantResponseAt(plant: Plant, omega: number): Complex {
 }
 
 /**
- * Least squares in log magnitude and phase over the band: τ and Td by a coarse-to-fine search, K in closed
- * form for each. A craft's damping and inflow make no delay of their own, so Td may come out 0.
+ * Least squares in log magnitude and phase over the band: K and Td in closed form for each τ, τ by a search over
+ * its logarithm. A craft's damping and inflow make no delay of their own, so Td may come out 0.
  */
 function fitPlant(system: ContinuousSystem): Pick<AxisModel, 'plant' | 'fitError_dB' | 'fitError_deg'> {
   const omegas = Array.from(
@@ -186,42 +226,43 @@ function fitPlant(system: ContinuousSystem): Pick<AxisModel, 'plant' | 'fitError
   );
   const wanted = omegas.map((omega) => responseAt(system, omega));
   const sign = wanted[0].im < 0 ? 1 : -1;
-  const trial = (lag_s: number, delay_s: number) => {
-    const unitPlant = { gain_dps2_per_us: sign, lag_s, delay_s };
-    const ratios = omegas.map((omega, i) => over(wanted[i], plantResponseAt(unitPlant, omega)));
-    const logGain = ratios.reduce((sum, ratio) => sum + Math.log(magnitude(ratio)), 0) / ratios.length;
+  const square = omegas.reduce((sum, omega) => sum + omega * omega, 0);
+  const trial = (lag_s: number) => {
+    // What is left when the integrator and the lag are taken out: K e^(−jωTd).
+    const rest = omegas.map((omega, i) =>
+      times(wanted[i], times(complex(0, sign * omega), complex(1, omega * lag_s))),
+    );
+    const logs = rest.map((one) => Math.log(magnitude(one)));
+    const phases = rest.map(argument);
+    const logGain = logs.reduce((sum, one) => sum + one, 0) / FIT_POINTS;
+    const delay_s = Math.max(0, -phases.reduce((sum, one, i) => sum + one * omegas[i], 0) / square);
     let cost = 0;
-    let worst_dB = 0;
-    let worst_deg = 0;
-    for (const ratio of ratios) {
-      const dB = (20 / Math.LN10) * (Math.log(magnitude(ratio)) - logGain);
-      const deg = (argument(ratio) * 180) / Math.PI;
+    let fitError_dB = 0;
+    let fitError_deg = 0;
+    for (let i = 0; i < FIT_POINTS; i++) {
+      const dB = (20 / Math.LN10) * (logs[i] - logGain);
+      const deg = DEG_PER_RAD * (phases[i] + omegas[i] * delay_s);
       // The customary weight: 1 dB counts as much as 7.57° (Tischler & Remple, ch. 11).
       cost += dB * dB + (deg / 7.57) ** 2;
-      worst_dB = Math.max(worst_dB, Math.abs(dB));
-      worst_deg = Math.max(worst_deg, Math.abs(deg));
+      fitError_dB = Math.max(fitError_dB, Math.abs(dB));
+      fitError_deg = Math.max(fitError_deg, Math.abs(deg));
     }
-    return { cost, worst_dB, worst_deg, gain: sign * Math.exp(logGain) };
+    const plant = { gain_dps2_per_us: sign * Math.exp(logGain), lag_s, delay_s };
+    return { cost, plant, fitError_dB, fitError_deg };
   };
-  let best = { lag_s: 0.03, delay_s: 0, ...trial(0.03, 0) };
-  let lagSpan = 2.5;
-  let delaySpan = 0.004;
-  for (let round = 0; round < 26; round++) {
-    const centre = best;
-    for (let a = -4; a <= 4; a++) {
-      for (let b = -4; b <= 4; b++) {
-        const lag_s = centre.lag_s * Math.exp((lagSpan * a) / 4);
-        const delay_s = Math.max(0, centre.delay_s + (delaySpan * b) / 4);
-        const result = trial(lag_s, delay_s);
-        if (result.cost < best.cost) best = { lag_s, delay_s, ...result };
-      }
+  let best = trial(0);
+  let low = 1e-4;
+  let high = LONGEST_LAG_S;
+  for (let round = 0; round < 12; round++) {
+    const ratio = (high / low) ** (1 / 24);
+    for (let k = 0; k <= 24; k++) {
+      const one = trial(low * ratio ** k);
+      if (one.cost < best.cost) best = one;
     }
-    lagSpan *= 0.6;
-    delaySpan *= 0.6;
+    if (best.plant.lag_s === 0) break;
+    low = best.plant.lag_s / ratio;
+    high = best.plant.lag_s * ratio;
   }
-  return {
-    plant: { gain_dps2_per_us: best.gain, lag_s: best.lag_s, delay_s: best.delay_s },
-    fitError_dB: best.worst_dB,
-    fitError_deg: best.worst_deg,
-  };
+  const { plant, fitError_dB, fitError_deg } = best;
+  return { plant, fitError_dB, fitError_deg };
 }

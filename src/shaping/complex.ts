@@ -11,7 +11,8 @@ export const times = (a: Complex, b: Complex): Complex => ({
   im: a.re * b.im + a.im * b.re,
 });
 export const scaled = (a: Complex, s: number): Complex => ({ re: a.re * s, im: a.im * s });
-export const magnitude = (a: Complex): number => Math.hypot(a.re, a.im);
+/** Plain root: no value here comes near overflow, and hypot is many times slower. */
+export const magnitude = (a: Complex): number => Math.sqrt(a.re * a.re + a.im * a.im);
 export const argument = (a: Complex): number => Math.atan2(a.im, a.re);
 
 export function over(a: Complex, b: Complex): Complex {

@@ -12,6 +12,12 @@ export interface ContinuousSystem {
   /** Row. */
   readonly C: Matrix;
   readonly delay_s: number;
+  /** Column: ẋ per deg/s² of angular acceleration from outside (a gust), where the system is a craft. */
+  readonly disturbance?: Matrix;
+  /** Row: the body's rate, deg/s, where the output is a sensor's. */
+  readonly bodyRate?: Matrix;
+  /** Frames of the ESC a second, where they can be slower than the loop. */
+  readonly commandUpdate_Hz?: number;
 }
 
 /** The plant of the command line: K e^(−sTd)/(s(τs+1)), deg/s² per µs, seconds. */
@@ -25,7 +31,13 @@ export interface Plant {
 export function plantSystem(plant: Plant): ContinuousSystem {
   const { gain_dps2_per_us: K, lag_s: tau, delay_s } = plant;
   if (tau === 0) {
-    return { A: new Matrix([[0]]), B: new Matrix([[K]]), C: new Matrix([[1]]), delay_s };
+    return {
+      A: new Matrix([[0]]),
+      B: new Matrix([[K]]),
+      C: new Matrix([[1]]),
+      delay_s,
+      disturbance: new Matrix([[1]]),
+    };
   }
   return {
     A: new Matrix([
@@ -35,13 +47,36 @@ export function plantSystem(plant: Plant): ContinuousSystem {
     B: new Matrix([[0], [K / tau]]),
     C: new Matrix([[1, 0]]),
     delay_s,
+    disturbance: new Matrix([[1], [0]]),
   };
+}
+
+/**
+ * A strictly proper transfer b(s)/a(s), coefficients highest power first, in controllable canonical form.
+ * @throws RangeError when it is not strictly proper.
+ */
+export function transferSystem(b: readonly number[], a: readonly number[]): ContinuousSystem {
+  const n = a.length - 1;
+  if (n < 1 || b.length > n || a[0] === 0)
+    throw new RangeError(
+      `a transfer of order ${b.length - 1} over ${n}: the lower one must be of higher order`,
+    );
+  const A = Matrix.zeros(n, n);
+  const C = Matrix.zeros(1, n);
+  for (let j = 0; j < n; j++) {
+    A.set(n - 1, j, -a[n - j] / a[0]);
+    if (j < n - 1) A.set(j, j + 1, 1);
+    C.set(0, j, (b[b.length - 1 - j] ?? 0) / a[0]);
+  }
+  const B = Matrix.zeros(n, 1);
+  B.set(n - 1, 0, 1);
+  return { A, B, C, delay_s: 0 };
 }
 
 /** `first` followed by a first-order low-pass and a further delay: a sensor behind a plant. */
 export function withSensor(first: ContinuousSystem, bandwidth_Hz: number, delay_s: number): ContinuousSystem {
   const total = first.delay_s + delay_s;
-  if (bandwidth_Hz === 0) return { ...first, delay_s: total };
+  if (bandwidth_Hz === 0) return { ...first, delay_s: total, bodyRate: first.bodyRate ?? first.C };
   const n = first.A.rows;
   const w = 2 * Math.PI * bandwidth_Hz;
   const A = Matrix.zeros(n + 1, n + 1);
@@ -52,7 +87,23 @@ export function withSensor(first: ContinuousSystem, bandwidth_Hz: number, delay_
   B.setSubMatrix(first.B, 0, 0);
   const C = Matrix.zeros(1, n + 1);
   C.set(0, n, 1);
-  return { A, B, C, delay_s: total };
+  const bodyRate = Matrix.zeros(1, n + 1);
+  bodyRate.setSubMatrix(first.bodyRate ?? first.C, 0, 0);
+  return {
+    ...first,
+    A,
+    B,
+    C,
+    delay_s: total,
+    bodyRate,
+    ...(first.disturbance === undefined ? {} : { disturbance: widenedColumn(first.disturbance, n + 1) }),
+  };
+}
+
+function widenedColumn(column: Matrix, rows: number): Matrix {
+  const wide = Matrix.zeros(rows, 1);
+  wide.setSubMatrix(column, 0, 0);
+  return wide;
 }
 
 /**
@@ -66,6 +117,10 @@ export interface SampledSystem {
   readonly now: Float64Array;
   readonly before: Float64Array;
   readonly C: Float64Array;
+  /** Held over a tick: state change per deg/s² from outside; zero where the system is no craft. */
+  readonly disturbance: Float64Array;
+  /** The body's rate, deg/s. */
+  readonly bodyRate: Float64Array;
   readonly wholeTicks: number;
   readonly tick_s: number;
   /** det(wI − (Φ − I)). */
@@ -75,6 +130,7 @@ export interface SampledSystem {
   readonly numeratorBefore: Float64Array;
 }
 
+/** @param tick_s period of the loop, s */
 export function sampled(system: ContinuousSystem, tick_s: number): SampledSystem {
   const ticks = system.delay_s / tick_s;
   // A delay given as a decimal of the tick must not become the tick before by rounding.
@@ -98,12 +154,20 @@ export function sampled(system: ContinuousSystem, tick_s: number): SampledSystem
     now: Float64Array.from(now.to1DArray()),
     before: Float64Array.from(before.to1DArray()),
     C: Float64Array.from(system.C.to1DArray()),
+    disturbance: heldDisturbance(system, tick_s),
+    bodyRate: Float64Array.from((system.bodyRate ?? system.C).to1DArray()),
     wholeTicks,
     tick_s,
     denominator: adjugate.determinant,
     numeratorNow: numerator(now),
     numeratorBefore: numerator(before),
   };
+}
+
+function heldDisturbance(system: ContinuousSystem, tick_s: number): Float64Array {
+  if (system.disturbance === undefined) return new Float64Array(system.A.rows);
+  const { input } = transitionOver({ ...system, B: system.disturbance }, tick_s);
+  return Float64Array.from(input.to1DArray());
 }
 
 /** det(wI − M) and the matrices of adj(wI − M) by powers of w, lowest first (Faddeev–LeVerrier). */

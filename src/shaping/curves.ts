@@ -1,6 +1,7 @@
 /** Curves of one loop for plots, as typed arrays: Bode, Nyquist, sensitivity, step, poles, noise spectrum. */
 import { argument, complex, magnitude, plus } from './complex.ts';
-import { closedLoopPoles, stepResponse, type StepResponse } from './analysis.ts';
+import { stepResponse, type AxisAnalysis, type StepResponse } from './analysis.ts';
+import { closedLoopPoles, type Pole } from './poles.ts';
 import { feedbackAt, openLoopAt, type RateLoop } from './rateLoop.ts';
 
 export interface LoopCurves {
@@ -14,7 +15,7 @@ export interface LoopCurves {
   readonly sensitivity_dB: Float64Array;
   /** Axis command's noise density, µs/√Hz, for gyro noise of `density` deg/s per √Hz. */
   readonly noise_us_per_rtHz: Float64Array;
-  readonly poles: readonly { readonly re: number; readonly im: number }[];
+  readonly poles: readonly Pole[];
   readonly step: StepResponse | null;
 }
 
@@ -23,8 +24,14 @@ const POINTS = 260;
 /**
  * @param density gyro noise density
  * @param low_Hz lowest frequency drawn
+ * @param analysis of the same loop, where there is one already: its poles and step are taken, not made again
  */
-export function loopCurves(loop: RateLoop, density: number, low_Hz = 0.2): LoopCurves {
+export function loopCurves(
+  loop: RateLoop,
+  density: number,
+  low_Hz = 0.2,
+  analysis?: Pick<AxisAnalysis, 'poles' | 'stepResponse'>,
+): LoopCurves {
   const nyquist_Hz = 0.5 / loop.tick_s;
   const f_Hz = Float64Array.from(
     { length: POINTS },
@@ -53,8 +60,8 @@ export function loopCurves(loop: RateLoop, density: number, low_Hz = 0.2): LoopC
     sensitivity_dB[i] = -20 * Math.log10(magnitude(one));
     noise_us_per_rtHz[i] = (density * magnitude(feedbackAt(loop, omega))) / magnitude(one);
   }
-  const poles = closedLoopPoles(loop);
-  const radius = poles.reduce((most, pole) => Math.max(most, Math.hypot(pole.re, pole.im)), 0);
+  const { poles, step } =
+    analysis === undefined ? polesAndStep(loop) : { ...analysis, step: analysis.stepResponse };
   return {
     f_Hz,
     gain_dB,
@@ -64,6 +71,11 @@ export function loopCurves(loop: RateLoop, density: number, low_Hz = 0.2): LoopC
     sensitivity_dB,
     noise_us_per_rtHz,
     poles,
-    step: radius < 1 ? stepResponse(loop, radius) : null,
+    step,
   };
+}
+
+function polesAndStep(loop: RateLoop): Pick<LoopCurves, 'poles' | 'step'> {
+  const { poles, maxRadius, stable } = closedLoopPoles(loop);
+  return { poles, step: stable ? stepResponse(loop, maxRadius) : null };
 }

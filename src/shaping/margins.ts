@@ -34,6 +34,7 @@ export interface Margins {
   readonly maxSensitivity: number;
   readonly sensitivityPeak_Hz: number;
   readonly maxComplementary: number;
+  readonly complementaryPeak_Hz: number;
 }
 
 /** Loop transfer as a function of ω, looked at over [low, high] rad/s. */
@@ -45,22 +46,25 @@ export interface Response {
   readonly sampled: boolean;
   /** A quarter of the points: for searches. */
   readonly coarse?: boolean;
+  /** Turns of phase that delay makes up to `high`: a long delay crosses −180° often, and each is looked for. */
+  readonly turns?: number;
+  /** Frequencies where something narrow stands (a notch, a lightly damped pole), rad/s. */
+  readonly narrow?: readonly number[];
 }
 
 const POINTS = 360;
 const LINEAR_POINTS = 240;
-const REFINE = 52;
+const REFINE = 46;
+const POINTS_A_TURN = 10;
+const MOST_LINEAR_POINTS = 40_000;
 
 export function marginsOf(response: Response): Margins {
   const omegas = grid(response);
   const values = omegas.map((omega) => response.at(omega));
   const gainCrossings = findGainCrossings(response, omegas, values);
   const phaseCrossings = findPhaseCrossings(response, omegas, values);
-  const sensitivity = peak(omegas, values, (w) => 1 / magnitude(plus(response.at(w), complex(1))));
-  const complementary = peak(omegas, values, (w) => {
-    const L = response.at(w);
-    return magnitude(over(L, plus(L, complex(1))));
-  });
+  const sensitivity = peak(response, omegas, values, (L) => 1 / magnitude(plus(L, complex(1))));
+  const complementary = peak(response, omegas, values, (L) => magnitude(over(L, plus(L, complex(1)))));
   const up = phaseCrossings.filter((one) => one.factor > 1).map((one) => one.factor);
   const down = phaseCrossings.filter((one) => one.factor <= 1).map((one) => one.factor);
   // A loop past its limit has no room upward at that crossing: the nearest one is told with its sign.
@@ -83,6 +87,7 @@ export function marginsOf(response: Response): Margins {
     maxSensitivity: sensitivity.value,
     sensitivityPeak_Hz: sensitivity.omega / (2 * Math.PI),
     maxComplementary: complementary.value,
+    complementaryPeak_Hz: complementary.omega / (2 * Math.PI),
   };
 }
 
@@ -91,13 +96,13 @@ function grid(response: Response): number[] {
   const { low, high } = response;
   const share = response.coarse === true ? 0.25 : 1;
   const points = POINTS * share;
-  const linearPoints = LINEAR_POINTS * share;
-  const log = Array.from({ length: points }, (_, i) => low * (high / low) ** (i / (points - 1)));
-  const linear = Array.from(
-    { length: linearPoints },
-    (_, i) => low + ((high - low) * (i + 1)) / (linearPoints + 1),
-  );
-  const all = [...log, ...linear].sort((a, b) => a - b);
+  const forDelay = Math.min(MOST_LINEAR_POINTS, POINTS_A_TURN * (response.turns ?? 0));
+  const linearPoints = Math.ceil(Math.max(LINEAR_POINTS, forDelay) * share);
+  const all: number[] = [];
+  for (let i = 0; i < points; i++) all.push(low * (high / low) ** (i / (points - 1)));
+  for (let i = 1; i <= linearPoints; i++) all.push(low + ((high - low) * i) / (linearPoints + 1));
+  for (const omega of response.narrow ?? []) if (omega > low && omega < high) all.push(omega);
+  all.sort((a, b) => a - b);
   all[all.length - 1] = high;
   return all;
 }
@@ -154,32 +159,40 @@ function bisect(f: (x: number) => number, low: number, high: number): number {
 }
 
 function peak(
+  response: Response,
   omegas: number[],
   values: Complex[],
-  f: (omega: number) => number,
+  f: (L: Complex) => number,
 ): { omega: number; value: number } {
   let best = 0;
   let most = -Infinity;
-  omegas.forEach((omega, i) => {
-    if (!Number.isFinite(values[i].re)) return;
-    const value = f(omega);
+  for (let i = 0; i < omegas.length; i++) {
+    const value = f(values[i]);
     if (value > most) {
       most = value;
       best = i;
     }
-  });
+  }
   let low = omegas[Math.max(0, best - 1)];
   let high = omegas[Math.min(omegas.length - 1, best + 1)];
-  // Golden section between the neighbours.
+  // Golden section between the neighbours, one new value a step.
   const share = (Math.sqrt(5) - 1) / 2;
-  for (let k = 0; k < 34; k++) {
-    const left = high - share * (high - low);
-    const right = low + share * (high - low);
-    if (f(left) > f(right)) high = right;
-    else low = left;
+  let left = high - share * (high - low);
+  let right = low + share * (high - low);
+  let atLeft = f(response.at(left));
+  let atRight = f(response.at(right));
+  for (let k = 0; k < 32; k++) {
+    if (atLeft > atRight) {
+      [high, right, atRight] = [right, left, atLeft];
+      left = high - share * (high - low);
+      atLeft = f(response.at(left));
+    } else {
+      [low, left, atLeft] = [left, right, atRight];
+      right = low + share * (high - low);
+      atRight = f(response.at(right));
+    }
   }
-  const omega = (low + high) / 2;
-  const value = f(omega);
+  const [omega, value] = atLeft > atRight ? [left, atLeft] : [right, atRight];
   return value > most ? { omega, value } : { omega: omegas[best], value: most };
 }
 

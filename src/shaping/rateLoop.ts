@@ -6,7 +6,7 @@
  */
 import { Matrix } from 'ml-matrix';
 import { biquadNotch, lowPass, type BiquadCoefficients } from '../control/filters.ts';
-import type { AxisName, Gains } from '../craft/gains.ts';
+import type { AxisGains, AxisName, Gains } from '../craft/gains.ts';
 import { complex, over, plus, polynomialAt, scaled, times, unit, type Complex } from './complex.ts';
 import { sampled, type ContinuousSystem, type SampledSystem } from './continuous.ts';
 
@@ -43,7 +43,8 @@ interface Layout {
  */
 export function rateLoop(system: ContinuousSystem, gains: Gains, axis: AxisName): RateLoop {
   const tick_s = 1 / gains.loop_Hz;
-  const plant = sampled({ ...system, delay_s: system.delay_s + gains.computeDelay_s }, tick_s);
+  const delay_s = system.delay_s + gains.computeDelay_s + frameDelay_s(system.commandUpdate_Hz, gains);
+  const plant = sampled({ ...system, delay_s }, tick_s);
   const gyroLow = lowPass(gains.gyroLowPass_Hz, gains.gyroLowPassKind ?? 'first-order', gains.loop_Hz);
   const notches = gains.notches.map((one) => biquadNotch(one.centre_Hz, one.q, gains.loop_Hz));
   const derivativeLow = lowPass(
@@ -65,6 +66,32 @@ export function rateLoop(system: ContinuousSystem, gains: Gains, axis: AxisName)
     derivativeFilters: derivativeLow === null ? [] : [derivativeLow],
   };
   return { ...loop, layout: layoutOf(loop) };
+}
+
+/** The same loop with other gains: the sampled plant and the filters are kept, which is what costs time. */
+export function withGainsOf(
+  loop: RateLoop,
+  gains: Pick<AxisGains, 'p_us_per_dps' | 'i_us_per_deg' | 'd_us_per_dps2'>,
+): RateLoop {
+  return { ...loop, p: gains.p_us_per_dps, i: gains.i_us_per_deg, d: gains.d_us_per_dps2 };
+}
+
+/** Frames over which the wait for the ESC is averaged. */
+const FRAMES = 2000;
+
+/**
+ * Mean delay that an ESC slower than the loop adds: the newest command waits for the next frame and is then held
+ * over the longer frame. (Loop and frames drift through each other, so the true delay wanders about this.)
+ */
+function frameDelay_s(commandUpdate_Hz: number | undefined, gains: Gains): number {
+  if (commandUpdate_Hz === undefined || commandUpdate_Hz >= gains.loop_Hz * 0.999) return 0;
+  const tick_s = 1 / gains.loop_Hz;
+  let age = 0;
+  for (let k = 1; k <= FRAMES; k++) {
+    const ticks = (k / commandUpdate_Hz - gains.computeDelay_s) / tick_s;
+    age += (ticks - Math.floor(ticks + 1e-6)) * tick_s;
+  }
+  return age / FRAMES + (1 / commandUpdate_Hz - tick_s) / 2;
 }
 
 function layoutOf(loop: Omit<RateLoop, 'layout'>): Layout {
@@ -97,16 +124,23 @@ function filterAt(filters: readonly BiquadCoefficients[], z: Complex): Complex {
   return value;
 }
 
-/** A place on the unit circle: z, w = z − 1 (without cancellation near 1) and 1/z. */
-interface CirclePoint {
+/** A place z = e^{ln r + jθ} with w = z − 1, which does not cancel near 1. */
+interface Place {
+  readonly logRadius: number;
   readonly theta: number;
   readonly z: Complex;
   readonly w: Complex;
 }
 
-function onCircle(theta: number): CirclePoint {
+function onCircle(theta: number): Place {
   const half = Math.sin(theta / 2);
-  return { theta, z: unit(theta), w: complex(-2 * half * half, Math.sin(theta)) };
+  return { logRadius: 0, theta, z: unit(theta), w: complex(-2 * half * half, Math.sin(theta)) };
+}
+
+/** z^{−n}. */
+function delayed(at: Place, n: number): Complex {
+  const turned = unit(-at.theta * n);
+  return at.logRadius === 0 ? turned : scaled(turned, Math.exp(-at.logRadius * n));
 }
 
 /** Coefficients lowest power first at `w`. */
@@ -122,30 +156,39 @@ function risingAt(coefficients: Float64Array, w: Complex): Complex {
 }
 
 /** Plant output over command: (n0(w) + n1(w)/z) z^{−m} / d(w). */
-function plantAt(plant: SampledSystem, at: CirclePoint): Complex {
+function plantAt(plant: SampledSystem, at: Place): Complex {
   const now = risingAt(plant.numeratorNow, at.w);
-  const before = times(risingAt(plant.numeratorBefore, at.w), unit(-at.theta));
+  const before = times(risingAt(plant.numeratorBefore, at.w), delayed(at, 1));
   const ratio = over(plus(now, before), risingAt(plant.denominator, at.w));
-  return plant.wholeTicks === 0 ? ratio : times(ratio, unit(-at.theta * plant.wholeTicks));
+  return plant.wholeTicks === 0 ? ratio : times(ratio, delayed(at, plant.wholeTicks));
 }
 
 /** Transfer of the controller from filtered rate to −u: P + I (T/2)(z+1)/(z−1) + D (z−1)/(zT) · low-pass. */
-function controllerAt(loop: RateLoop, at: CirclePoint): Complex {
+function controllerAt(loop: RateLoop, at: Place): Complex {
   const proportional = plus(complex(loop.p), derivativeAt(loop, at));
   if (loop.i === 0) return proportional;
   const integral = scaled(over(plus(at.z, complex(1)), at.w), (loop.i * loop.tick_s) / 2);
   return plus(proportional, integral);
 }
 
-function derivativeAt(loop: RateLoop, at: CirclePoint): Complex {
+function derivativeAt(loop: RateLoop, at: Place): Complex {
   if (loop.d === 0) return complex(0);
-  const difference = scaled(times(at.w, unit(-at.theta)), loop.d / loop.tick_s);
+  const difference = scaled(times(at.w, delayed(at, 1)), loop.d / loop.tick_s);
   return times(difference, filterAt(loop.derivativeFilters, at.z));
 }
 
 /** Loop transfer L at `omega` rad/s, 0 < ω ≤ π/T. */
 export function openLoopAt(loop: RateLoop, omega: number): Complex {
   const at = onCircle(omega * loop.tick_s);
+  return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
+}
+
+/** L at any z = e^{ln r + jθ}: for poles. */
+export function openLoopAtPlace(loop: RateLoop, logRadius: number, theta: number): Complex {
+  const half = Math.sin(theta / 2);
+  const grown = Math.expm1(logRadius);
+  const w = complex(grown * Math.cos(theta) - 2 * half * half, (1 + grown) * Math.sin(theta));
+  const at = { logRadius, theta, z: complex(1 + w.re, w.im), w };
   return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
 }
 
@@ -158,13 +201,20 @@ export function feedbackAt(loop: RateLoop, omega: number): Complex {
 /** Setpoint to plant output at `omega`. */
 export function closedLoopAt(loop: RateLoop, omega: number): Complex {
   const at = onCircle(omega * loop.tick_s);
-  const L = openLoopAt(loop, omega);
+  return over(times(plantAt(loop.plant, at), forwardAt(loop, at)), plus(complex(1), openLoopAt(loop, omega)));
+}
+
+/** Setpoint to u with the feedback cut. */
+export function setpointToCommandAt(loop: RateLoop, omega: number): Complex {
+  return forwardAt(loop, onCircle(omega * loop.tick_s));
+}
+
+function forwardAt(loop: RateLoop, at: Place): Complex {
   const onMeasurement = loop.derivativeOnError ? complex(0) : scaled(derivativeAt(loop, at), -1);
-  const forward = plus(
+  return plus(
     plus(controllerAt(loop, at), onMeasurement),
     complex(loop.p * (loop.setpointWeight - 1) + loop.ff),
   );
-  return over(times(plantAt(loop.plant, at), forward), plus(complex(1), L));
 }
 
 // --- Time domain ------------------------------------------------------------------------------------------
@@ -206,8 +256,7 @@ export function linearTick(
     for (let j = 0; j < n; j++) sum += plant.transition[i * n + j] * state[at.plant + j];
     next[at.plant + i] = sum;
   }
-  for (let k = at.pastCommandCount - 1; k > 0; k--)
-    next[at.pastCommands + k] = state[at.pastCommands + k - 1];
+  next.set(state.subarray(at.pastCommands, at.pastCommands + at.pastCommandCount - 1), at.pastCommands + 1);
   next[at.pastCommands] = u;
   // Without integral gain there is no integrator, and no pole of its own at z = 1.
   next[at.integral] = loop.i === 0 ? 0 : integral;
@@ -225,12 +274,13 @@ function runFilters(
   input: number,
 ): number {
   let x = input;
-  filters.forEach((f, k) => {
+  for (let k = 0; k < filters.length; k++) {
+    const f = filters[k];
     const y = f.b0 * x + state[at + 2 * k];
     next[at + 2 * k] = f.b1 * x - f.a1 * y + state[at + 2 * k + 1];
     next[at + 2 * k + 1] = f.b2 * x - f.a2 * y;
     x = y;
-  });
+  }
   return x;
 }
 

@@ -1,10 +1,14 @@
 /** The analysis of a gain set on a build or a plant: what the command line prints and the page shows. */
 import type { Build } from '../craft/build.ts';
 import { AXES, type AxisName, type Gains } from '../craft/gains.ts';
-import { analyse, type StepMetrics } from './analysis.ts';
+import { analyse } from './analysis.ts';
 import { axisModels, type TrimChoice } from './axisModel.ts';
 import { plantSystem, type ContinuousSystem, type Plant } from './continuous.ts';
+import { gyroNoise, type GyroNoise } from './noise.ts';
 import { rateLoop } from './rateLoop.ts';
+import type { StepMetrics } from './stepInfo.ts';
+
+export { gyroNoise };
 
 /** Gyro noise density where only a plant is given. */
 export const DEFAULT_NOISE_DPS_PER_RTHZ = 0.01;
@@ -30,21 +34,6 @@ export interface AxisReport {
 }
 
 export type ShapeReport = Readonly<Record<AxisName, AxisReport>>;
-
-/** Noise of one gyro sample: standard deviation and correlation with the next. */
-export interface GyroNoise {
-  readonly sigma_dps: number;
-  readonly correlation: number;
-}
-
-/** White noise of density N sampled at the loop rate, σ = N √(f_s/2), or coloured by the sensor's bandwidth. */
-export function gyroNoise(density: number, bandwidth_Hz: number, loop_Hz: number): GyroNoise {
-  if (bandwidth_Hz === 0) return { sigma_dps: density * Math.sqrt(loop_Hz / 2), correlation: 0 };
-  return {
-    sigma_dps: density * Math.sqrt((Math.PI / 2) * bandwidth_Hz),
-    correlation: Math.exp((-2 * Math.PI * bandwidth_Hz) / loop_Hz),
-  };
-}
 
 /** Each axis around the same plant. */
 export function reportForPlant(

@@ -7,10 +7,18 @@
 import { AXES, type AxisName, type Gains } from '../craft/gains.ts';
 import { magnitude } from './complex.ts';
 import type { ContinuousSystem, Plant } from './continuous.ts';
-import { closedLoopPoles, noiseAtMotor } from './analysis.ts';
 import { marginsOf } from './margins.ts';
-import { openLoopAt, rateLoop, type RateLoop } from './rateLoop.ts';
-import type { GyroNoise } from './report.ts';
+import { noiseAtMotor, type GyroNoise } from './noise.ts';
+import { closedLoopPoles } from './poles.ts';
+import { openLoopAt, rateLoop, withGainsOf, type RateLoop } from './rateLoop.ts';
+
+/** How far off the build may be; shares of the value, either way. */
+export interface Uncertainty {
+  /** Of mass and with it of inertia. */
+  readonly mass: number;
+  readonly voltage: number;
+  readonly thrust: number;
+}
 
 export interface StartingLimits {
   /** Largest Ms; Åström & Hägglund give 1.4 to 2.0 for robust loops. */
@@ -18,9 +26,8 @@ export interface StartingLimits {
   readonly phaseMargin_deg: number;
   readonly delayMargin_ms: number;
   readonly noiseAtMotor_us_rms: number;
-  /** The plant's gain may be off by this share either way. */
-  readonly gainUncertainty: number;
-  /** Largest p/i time share: the integral acts no faster than this many crossover periods. */
+  readonly uncertainty: Uncertainty;
+  /** The integral's time p/i is at least this many times 1/crossover: else the setpoint is overshot for long. */
   readonly leastIntegralTime_crossovers: number;
 }
 
@@ -29,9 +36,15 @@ export const STARTING_LIMITS: StartingLimits = {
   phaseMargin_deg: 45,
   delayMargin_ms: 4,
   noiseAtMotor_us_rms: 4,
-  gainUncertainty: 0.25,
+  uncertainty: { mass: 0.05, voltage: 0.1, thrust: 0.1 },
   leastIntegralTime_crossovers: 6,
 };
+
+/** Lowest and highest plant gain over the nominal one: thrust and voltage raise it, inertia lowers it. */
+export function plantGainRange(uncertainty: Uncertainty): readonly [number, number] {
+  const { mass, voltage, thrust } = uncertainty;
+  return [((1 - voltage) * (1 - thrust)) / (1 + mass), ((1 + voltage) * (1 + thrust)) / (1 - mass)];
+}
 
 export interface AxisGainsFound {
   readonly p_us_per_dps: number;
@@ -43,6 +56,8 @@ export interface StartingAxis extends AxisGainsFound {
   /** The limit that stops more gain, and what would loosen it. */
   readonly active: string;
   readonly loosenedBy: string;
+  /** Each limit's use, 1 = all of it. */
+  readonly used: Readonly<Record<LimitName, number>>;
 }
 
 interface AxisTask {
@@ -53,7 +68,7 @@ interface AxisTask {
   readonly limits: StartingLimits;
 }
 
-type LimitName = 'maxSensitivity' | 'phaseMargin' | 'delayMargin' | 'noise';
+export type LimitName = 'maxSensitivity' | 'phaseMargin' | 'delayMargin' | 'noise' | 'integralTime';
 
 const LOOSENED: Readonly<Record<LimitName, string>> = {
   maxSensitivity:
@@ -61,137 +76,156 @@ const LOOSENED: Readonly<Record<LimitName, string>> = {
   phaseMargin: 'less lag: a faster loop, a higher gyro and D cutoff, or a propeller and motor with less lag',
   delayMargin: 'less delay in the loop: a faster loop or a shorter compute delay',
   noise: 'a quieter gyro or mount, or a lower D cutoff',
+  integralTime: 'a higher crossover: less delay and lag, so that P can rise',
 };
 const ACTIVE: Readonly<Record<LimitName, string>> = {
   maxSensitivity: 'maximum sensitivity',
   phaseMargin: 'phase margin',
   delayMargin: 'delay margin',
   noise: 'noise at the motors',
+  integralTime: 'integral time against crossover',
 };
 
-/** Each limit's use: above 1 it is broken. Unstable: Infinity. */
-function usage(task: AxisTask, found: AxisGainsFound): Record<LimitName, number> {
-  const { limits } = task;
-  const used: Record<LimitName, number> = { maxSensitivity: 0, phaseMargin: 0, delayMargin: 0, noise: 0 };
-  for (const scale of [1 - limits.gainUncertainty, 1, 1 + limits.gainUncertainty]) {
-    const loop = loopWith(task, found, scale);
-    const nyquist = Math.PI / loop.tick_s;
-    if (closedLoopPoles(loop).some((pole) => Math.hypot(pole.re, pole.im) >= 1 - 1e-7)) {
-      return { maxSensitivity: Infinity, phaseMargin: Infinity, delayMargin: Infinity, noise: Infinity };
-    }
-    const margins = marginsOf({
-      at: (w) => openLoopAt(loop, w),
-      low: nyquist * 2e-4,
-      high: nyquist,
-      sampled: true,
-      coarse: true,
+const UNSTABLE: Readonly<Record<LimitName, number>> = {
+  maxSensitivity: Infinity,
+  phaseMargin: Infinity,
+  delayMargin: Infinity,
+  noise: Infinity,
+  integralTime: Infinity,
+};
+
+/** The loops of a task at the lowest, nominal and highest plant gain; gains are put in for each trial. */
+class Candidates {
+  private readonly loops: readonly RateLoop[];
+
+  constructor(private readonly task: AxisTask) {
+    const [low, high] = plantGainRange(task.limits.uncertainty);
+    this.loops = [1, low, high].map((scale) => {
+      const { system, gains, axis } = task;
+      const scaledSystem = scale === 1 ? system : { ...system, B: system.B.clone().mul(scale) };
+      return rateLoop(scaledSystem, gains, axis);
     });
-    used.maxSensitivity = Math.max(
-      used.maxSensitivity,
-      (margins.maxSensitivity - 1) / (limits.maxSensitivity - 1),
-    );
-    used.phaseMargin = Math.max(
-      used.phaseMargin,
-      limits.phaseMargin_deg / Math.max(1e-6, margins.phaseMargin_deg ?? 180),
-    );
-    used.delayMargin = Math.max(
-      used.delayMargin,
-      limits.delayMargin_ms / Math.max(1e-6, margins.delayMargin_ms ?? 1e6),
-    );
   }
-  const noise = noiseAtMotor(loopWith(task, found, 1), task.noise.sigma_dps, task.noise.correlation);
-  used.noise = noise === null ? Infinity : noise / limits.noiseAtMotor_us_rms;
-  return used;
+
+  at(found: AxisGainsFound): RateLoop {
+    return withGainsOf(this.loops[0], found);
+  }
+
+  /** Each limit's use: above 1 it is broken. Unstable: Infinity. */
+  usage(found: AxisGainsFound): Record<LimitName, number> {
+    const { limits } = this.task;
+    const used = { maxSensitivity: 0, phaseMargin: 0, delayMargin: 0, noise: 0, integralTime: 0 };
+    for (const base of this.loops) {
+      const loop = withGainsOf(base, found);
+      if (!closedLoopPoles(loop).stable) return { ...UNSTABLE };
+      const nyquist = Math.PI / loop.tick_s;
+      const margins = marginsOf({
+        at: (w) => openLoopAt(loop, w),
+        low: nyquist * 2e-4,
+        high: nyquist,
+        sampled: true,
+        coarse: true,
+      });
+      const raise = (name: LimitName, share: number) => (used[name] = Math.max(used[name], share));
+      raise('maxSensitivity', (margins.maxSensitivity - 1) / (limits.maxSensitivity - 1));
+      raise('phaseMargin', limits.phaseMargin_deg / Math.max(1e-6, margins.phaseMargin_deg ?? 180));
+      raise('delayMargin', limits.delayMargin_ms / Math.max(1e-6, margins.delayMargin_ms ?? 1e6));
+    }
+    const loop = this.at(found);
+    const noise = noiseAtMotor(loop, this.task.noise);
+    used.noise = noise === null ? Infinity : noise / limits.noiseAtMotor_us_rms;
+    const integralRate = found.i_us_per_deg / found.p_us_per_dps;
+    used.integralTime = (integralRate * limits.leastIntegralTime_crossovers) / lastCrossover(loop);
+    return used;
+  }
 }
 
-function loopWith(task: AxisTask, found: AxisGainsFound, plantScale: number): RateLoop {
-  const { gains, axis, system } = task;
-  const own = { ...gains.axes[axis], ...found };
-  const scaledSystem = plantScale === 1 ? system : { ...system, B: system.B.clone().mul(plantScale) };
-  return rateLoop(scaledSystem, { ...gains, axes: { ...gains.axes, [axis]: own } }, axis);
+/** Place in the search: log p, the ratio d/p (a time, s) and log of the ratio i/p (a rate, 1/s). */
+type Place = readonly [number, number, number];
+
+function gainsAt([logP, derivative_s, logRate]: Place): AxisGainsFound {
+  const p = Math.exp(logP);
+  return {
+    p_us_per_dps: p,
+    i_us_per_deg: p * Math.exp(logRate),
+    d_us_per_dps2: p * Math.max(0, derivative_s),
+  };
 }
 
-/** Crossover of the plant times a gain of one, to start the search at the right scale. */
-function startOf(task: AxisTask): AxisGainsFound {
-  const loop = loopWith(task, { p_us_per_dps: 1, i_us_per_deg: 0, d_us_per_dps2: 0 }, 1);
+/** Crossover of the plant with P alone at a modest bandwidth: the search starts at the plant's own scale. */
+function firstPlace(candidates: Candidates): Place {
+  const loop = candidates.at({ p_us_per_dps: 1, i_us_per_deg: 0, d_us_per_dps2: 0 });
   const omega = Math.min(20, 0.2 / loop.tick_s);
   const p = 1 / Math.max(1e-12, magnitude(openLoopAt(loop, omega)));
-  return { p_us_per_dps: p, i_us_per_deg: (p * omega) / 8, d_us_per_dps2: 0 };
+  return [Math.log(p), 0.004, Math.log(omega / 8)];
 }
 
+const MOST_ROUNDS = 70;
+const FIRST_STEPS: Place = [0.5, 0.006, 0.6];
+const FINEST_STEP = 0.004;
+/** Moves a round tries: each coordinate by itself, and more or less of everything along the ridge. */
+const MOVES: readonly Place[] = [
+  [1, 0, 0],
+  [-1, 0, 0],
+  [0, 1, 0],
+  [0, -1, 0],
+  [0, 0, 1],
+  [0, 0, -1],
+  [1, 0.5, 0.5],
+  [-1, -0.5, -0.5],
+];
+
 /**
- * Pattern search over log p, the ratio d/p (a time) and the ratio i/p (a rate), from the plant's own scale.
+ * Pattern search from the plant's own scale.
  * @throws RangeError when no gain at all is within the limits.
  */
 export function startingAxis(task: AxisTask): StartingAxis {
-  const first = startOf(task);
-  const p0 = first.p_us_per_dps;
-  let x = [Math.log(p0), 0.004, Math.log(first.i_us_per_deg / p0)];
-  const gainsOf = (v: readonly number[]): AxisGainsFound => {
-    const p = Math.exp(v[0]);
-    return { p_us_per_dps: p, i_us_per_deg: p * Math.exp(v[2]), d_us_per_dps2: p * Math.max(0, v[1]) };
+  const candidates = new Candidates(task);
+  const score = (place: Place): number => {
+    const found = gainsAt(place);
+    const used = Math.max(...Object.values(candidates.usage(found)));
+    if (!Number.isFinite(used)) return -1e9 - place[0];
+    return used > 1 ? -1e3 * (used - 1) : Math.log(found.i_us_per_deg) + 0.3 * place[0];
   };
-  const score = (v: readonly number[]): number => {
-    const found = gainsOf(v);
-    const used = Math.max(...Object.values(usage(task, found)));
-    const loop = loopWith(task, found, 1);
-    const crossover = crossoverOf(loop);
-    const tooFast = (Math.exp(v[2]) * task.limits.leastIntegralTime_crossovers) / Math.max(1e-9, crossover);
-    if (!Number.isFinite(used)) return -1e9 - v[0];
-    const broken = Math.max(0, used - 1) + Math.max(0, tooFast - 1);
-    return broken > 0 ? -1e3 * broken : Math.log(found.i_us_per_deg) + 0.3 * v[0];
-  };
-  let best = score(x);
-  let steps = [0.5, 0.006, 0.6];
-  for (let round = 0; round < 70 && Math.max(steps[0], steps[2]) > 0.004; round++) {
+  let place = firstPlace(candidates);
+  let best = score(place);
+  let steps = FIRST_STEPS;
+  for (let round = 0; round < MOST_ROUNDS && Math.max(steps[0], steps[2]) > FINEST_STEP; round++) {
     let improved = false;
-    for (let k = 0; k < 3; k++) {
-      for (const sign of [1, -1]) {
-        const next = x.slice();
-        next[k] += sign * steps[k];
-        if (next[1] < 0) next[1] = 0;
-        const value = score(next);
-        if (value > best) {
-          best = value;
-          x = next;
-          improved = true;
-        }
-      }
-    }
-    // Along the ridge: more of everything at once.
-    for (const sign of [1, -1]) {
-      const next = [x[0] + sign * steps[0], x[1] + sign * steps[1] * 0.5, x[2] + sign * steps[2] * 0.5].map(
-        (v, k) => (k === 1 ? Math.max(0, v) : v),
-      );
+    for (const move of MOVES) {
+      const next: Place = [
+        place[0] + move[0] * steps[0],
+        Math.max(0, place[1] + move[1] * steps[1]),
+        place[2] + move[2] * steps[2],
+      ];
       const value = score(next);
       if (value > best) {
         best = value;
-        x = next;
+        place = next;
         improved = true;
       }
     }
-    if (!improved) steps = steps.map((step) => step / 2);
+    if (!improved) steps = [steps[0] / 2, steps[1] / 2, steps[2] / 2];
   }
-  if (best < 0 && best <= -1) {
+  if (best <= -1) {
     throw new RangeError(
       `no gains for ${task.axis} keep all limits; the loop is too slow or too noisy for this craft`,
     );
   }
-  const found = rounded(gainsOf(x));
-  const used = usage(task, found);
+  const found = rounded(gainsAt(place));
+  const used = candidates.usage(found);
   const active = (Object.keys(used) as LimitName[]).reduce((a, b) => (used[b] > used[a] ? b : a));
-  return { ...found, active: ACTIVE[active], loosenedBy: LOOSENED[active] };
+  return { ...found, used, active: ACTIVE[active], loosenedBy: LOOSENED[active] };
 }
 
-function crossoverOf(loop: RateLoop): number {
+/** Highest frequency at which the loop gain still falls through 1, rad/s. */
+function lastCrossover(loop: RateLoop): number {
   const nyquist = Math.PI / loop.tick_s;
-  let omega = nyquist * 1e-3;
-  let last = omega;
-  for (let k = 0; k < 160; k++) {
-    if (magnitude(openLoopAt(loop, omega)) > 1) last = omega;
-    omega = nyquist * 1e-3 * 1000 ** ((k + 1) / 160);
+  const at = (share: number) => nyquist * 1e-3 ** (1 - share);
+  for (let k = 160; k > 0; k--) {
+    if (magnitude(openLoopAt(loop, at((k - 1) / 160))) > 1) return at((k - 1) / 160);
   }
-  return last;
+  return at(0);
 }
 
 /** Three significant digits, downward: what a person would type. */
