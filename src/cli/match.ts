@@ -167,7 +167,7 @@ function describe(options: MatchCliOptions, result: MatchResult, corrected: Corr
 
 function axisLines(axis: AxisName, result: AxisResult): string[] {
   const { estimates } = result;
-  if (estimates === null) return [`${axis.padEnd(6)} no numbers. ${result.note}`];
+  if (estimates === null) return [`${axis.padEnd(6)} no numbers: ${result.note}`];
   const { gain_dps2_per_us: gain, lag_s, delay_s } = estimates;
   const fit = result.fit_pct === null ? '' : `, fit ${result.fit_pct.toFixed(0)} %`;
   return [

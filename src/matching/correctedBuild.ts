@@ -36,11 +36,15 @@ const LARGEST_STEP = 1.5;
 /** @param logName for the note */
 export function correctedBuild(build: Build, result: MatchResult, logName: string): CorrectedBuild {
   const fitted = AXES.flatMap((axis) => {
-    const { estimates } = result.axes[axis];
-    return estimates === null ? [] : [{ axis, estimates }];
+    const { estimates, offers } = result.axes[axis];
+    return estimates === null || offers.length > 0 ? [] : [{ axis, estimates }];
   });
   if (fitted.length === 0) {
-    return { build: null, changes: [], kept: ['No axis has numbers; the build stays as it is.'] };
+    return {
+      build: null,
+      changes: [],
+      kept: ['No axis has numbers that are free of doubt; the build stays as it is.'],
+    };
   }
   const before = reducedModel(build);
   const kept: string[] = [];

@@ -27,10 +27,36 @@ export interface ExcitedParts {
   readonly leftOut: readonly LeftOut[];
   readonly spectra: CrossSpectra;
   readonly response: MeasuredResponse;
-  /** The setpoint moves and carries the response; otherwise the fit has to show that the command does. */
-  readonly bySetpoint: boolean;
-  /** Why the axis is not excited, or null. */
-  readonly refusal: string | null;
+  /** The rate follows the setpoint with coherence above 0.6 over an octave or more. */
+  readonly coherent: boolean;
+  readonly trusted: number;
+  readonly seconds: number;
+  readonly setpointRms_dps: number;
+  readonly rateRms_dps: number;
+}
+
+/** The setpoint moves and carries the response; otherwise the fit has to show that the command does. */
+export function excitedBySetpoint(parts: ExcitedParts, scale: number): boolean {
+  return parts.coherent && scale * parts.setpointRms_dps >= LEAST_SETPOINT_DPS;
+}
+
+/**
+ * Why the axis is not excited, or null.
+ * @param scale deg/s per unit of the rates, where the unit is in doubt
+ */
+export function refusalOf(axis: AxisName, parts: ExcitedParts, scale: number): string | null {
+  const { seconds, setpointRms_dps, rateRms_dps, trusted } = parts;
+  if (seconds < LEAST_USABLE_S) {
+    return `Not excited: ${axis} moves in only ${seconds.toFixed(1)} s of the usable log; ${LEAST_USABLE_S} s are the least.`;
+  }
+  if (excitedBySetpoint(parts, scale)) return null;
+  if (scale * rateRms_dps < LEAST_RATE_DPS) {
+    return `Not excited: the ${axis} setpoint moves by ${setpointRms_dps.toFixed(1)} deg/s rms and the rate by ${rateRms_dps.toFixed(1)} deg/s rms; noise and gusts alone do not show the plant. Fly ${axis} doublets or a sweep.`;
+  }
+  if (scale * setpointRms_dps >= LEAST_SETPOINT_DPS) {
+    return `Not excited enough: the ${axis} rate follows the setpoint with coherence above 0.6 in ${trusted} of the frequencies only; an octave is the least.`;
+  }
+  return null;
 }
 
 /**
@@ -38,7 +64,6 @@ export interface ExcitedParts {
  * @param setpoint null when the log has none
  */
 export function excitedParts(
-  axis: AxisName,
   usable: UsableRows,
   period_s: number,
   setpoint: Column | null,
@@ -61,16 +86,17 @@ export function excitedParts(
   const ratio = bins.length > 0 ? response.f_Hz[bins[bins.length - 1]] / response.f_Hz[bins[0]] : 0;
   const coherent =
     bins.length >= LEAST_BINS && ratio >= LEAST_BAND_RATIO && spectra.segments >= LEAST_SEGMENTS;
-  const bySetpoint = moving !== null && rms >= LEAST_SETPOINT_DPS && coherent;
-  let refusal: string | null = null;
-  if (seconds < LEAST_USABLE_S) {
-    refusal = `Not excited: ${axis} moves in only ${seconds.toFixed(1)} s of the usable log; ${LEAST_USABLE_S} s are the least.`;
-  } else if (!bySetpoint && rmsOver(spans, y_dps) < LEAST_RATE_DPS) {
-    refusal = `Not excited: the ${axis} setpoint moves by ${rms.toFixed(1)} deg/s rms and the rate by ${rmsOver(spans, y_dps).toFixed(1)} deg/s rms; noise and gusts alone do not show the plant. Fly ${axis} doublets or a sweep.`;
-  } else if (!bySetpoint && moving !== null && rms >= LEAST_SETPOINT_DPS && !coherent) {
-    refusal = `Not excited enough: the ${axis} rate follows the setpoint with coherence above 0.6 in ${bins.length} of the frequencies only; an octave is the least.`;
-  }
-  return { spans, leftOut, spectra, response, bySetpoint, refusal };
+  return {
+    spans,
+    leftOut,
+    spectra,
+    response,
+    coherent: moving !== null && coherent,
+    trusted: bins.length,
+    seconds,
+    setpointRms_dps: rms,
+    rateRms_dps: rmsOver(spans, y_dps),
+  };
 }
 
 function rmsOver(spans: readonly Span[], column: Column): number {

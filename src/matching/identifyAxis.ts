@@ -1,18 +1,26 @@
 /** One axis of a log: is it excited, what is its plant, how far can that be trusted. */
 import type { Build } from '../craft/build.ts';
 import type { AxisName } from '../craft/gains.ts';
+import { DEG_PER_RAD } from '../math/angles.ts';
 import type { TimeBase } from './align.ts';
 import type { AxisPiece, PlantParameters } from './axisData.ts';
 import type { AxisFit, Estimate, OptionalTerm } from './axisFitter.ts';
 import { axisPiece } from './axisPieces.ts';
 import { fitPlain, plantOf, withTerms } from './fitAxis.ts';
 import { describeFit, reasonsOf } from './axisNote.ts';
-import { excitedParts, FITTED_SHARE, LEAST_USABLE_S, type ExcitedParts } from './excited.ts';
+import {
+  excitedBySetpoint,
+  excitedParts,
+  FITTED_SHARE,
+  LEAST_USABLE_S,
+  refusalOf,
+  type ExcitedParts,
+} from './excited.ts';
 import type { Column, FlightLog } from './log.ts';
 import { reducedEstimates, type ReducedEstimates } from './reducedEstimates.ts';
 import type { MeasuredResponse } from './spectra.ts';
 import { plantFromResponse } from './startValues.ts';
-import { suspectAxis, type Offer } from './suspicions.ts';
+import { suspectAxis, turnedSign, type Offer } from './suspicions.ts';
 import { spanSeconds, splitSpans, type LeftOut, type Span, type UsableRows } from './usable.ts';
 import { explainedShare, residualOf, validate, type Residual, type Validation } from './validation.ts';
 
@@ -81,18 +89,20 @@ export function identifyAxis(
     return { ...NOTHING, note: why };
   }
   const setpoint = context.log.setpoint_dps[axis] ?? null;
-  const parts = excitedParts(axis, usable, context.base.period_s, setpoint, u_us, y_dps);
+  const parts = excitedParts(usable, context.base.period_s, setpoint, u_us, y_dps);
   const { response, spectra } = parts;
-  const offers = suspectAxis(axis, response, spectra, model);
-  const partial = { ...NOTHING, response, offers };
-  if (offers.length > 0) {
-    return {
-      ...partial,
-      note: `No numbers until this is settled: ${offers.map((one) => one.because).join(' ')}`,
-    };
-  }
-  if (parts.refusal !== null) return { ...partial, note: parts.refusal };
-  return fitParts(axis, context, u_us, y_dps, model, parts, response);
+  // A setpoint that stands still leaves only the controller's answer to noise, which tells no units.
+  const telling = setpoint === null || spectra.count === 3;
+  const offers = telling ? suspectAxis(axis, response, spectra, model) : [];
+  const scale = offers.some((offer) => offer.unit === 'rad/s') ? DEG_PER_RAD : 1;
+  const refusal = refusalOf(axis, parts, scale);
+  const result =
+    refusal === null
+      ? fitParts(axis, context, u_us, y_dps, model, parts, excitedBySetpoint(parts, scale))
+      : { ...NOTHING, response, note: refusal };
+  if (offers.length === 0) return result;
+  const doubts = offers.map((one) => one.because).join(' ');
+  return { ...result, offers: [...offers, ...result.offers], note: `${doubts} ${result.note}` };
 }
 
 // --- Fit ----------------------------------------------------------------------------------------------------
@@ -104,9 +114,10 @@ function fitParts(
   y_dps: Column,
   model: PlantParameters,
   parts: ExcitedParts,
-  response: MeasuredResponse,
+  bySetpoint: boolean,
 ): AxisResult {
   const { base, build } = context;
+  const { response } = parts;
   const { first, rest } = splitSpans(parts.spans, FITTED_SHARE);
   const piecesOf = (spans: readonly Span[], times: 'as logged' | 'regular') =>
     spans.map((span) => {
@@ -123,7 +134,11 @@ function fitParts(
   const held = piecesOf(rest, chosen.times);
   const partial = { ...NOTHING, response, leftOut: parts.leftOut, timesUsed: chosen.times };
   const estimates = reducedEstimates(fit);
-  const weak = weakness(axis, fit, estimates, parts, chosen.pieces, held, base.period_s);
+  if (!(fit.gain_dps2_per_us.value > 0) && bySetpoint) {
+    const offer = turnedSign(axis);
+    return { ...partial, offers: [offer], note: `No numbers: ${offer.because}` };
+  }
+  const weak = weakness(axis, fit, estimates, bySetpoint, chosen.pieces, held, base.period_s);
   if (weak !== null) return { ...partial, note: weak };
   const validation = validate(held, plant, fit);
   const residual = residualOf(
@@ -172,15 +187,12 @@ function weakness(
   axis: AxisName,
   fit: AxisFit,
   estimates: ReducedEstimates,
-  parts: ExcitedParts,
+  bySetpoint: boolean,
   fitted: readonly AxisPiece[],
   held: readonly AxisPiece[],
   period_s: number,
 ): string | null {
   const { gain_dps2_per_us: gain, lag_s, delay_s } = estimates;
-  if (!(gain.value > 0)) {
-    return `No numbers: the fit found the ${axis} rate going against the command. Is a sign turned, or are motors at other corners than the columns say?`;
-  }
   if (
     !(relative(gain) < LARGEST_GAIN_ERROR) ||
     !(lag_s.sigma < Math.max(0.01, LARGEST_LAG_ERROR * lag_s.value)) ||
@@ -188,8 +200,8 @@ function weakness(
   ) {
     return `Not excited enough: what ${axis} movement there is leaves the gain uncertain by ${(100 * relative(gain)).toFixed(0)} %, the lag by ${(1000 * lag_s.sigma).toFixed(0)} ms and the delay by ${(1000 * delay_s.sigma).toFixed(0)} ms. Fly larger or longer ${axis} doublets or a sweep.`;
   }
-  if (parts.bySetpoint) return null;
-  const explained = explainedShare([...fitted, ...held], fit, period_s);
+  if (bySetpoint) return null;
+  const explained = gain.value > 0 ? explainedShare([...fitted, ...held], fit, period_s) : 0;
   if (explained >= LEAST_EXPLAINED) return null;
   return `Not excited: the ${axis} setpoint does not move, and the command explains too little of the rate to be a manoeuvre (it answers noise and gusts). Fly ${axis} doublets or a sweep.`;
 }

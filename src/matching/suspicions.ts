@@ -43,13 +43,11 @@ export function suspectAxis(
   if (bins.length < 5) return [];
   const at = responseOf({ ...model, damping_per_s: 0 });
   let logs = 0;
-  let cosines = 0;
   for (const k of bins) {
     const wanted = at(2 * Math.PI * response.f_Hz[k]);
     const size = Math.hypot(response.re[k], response.im[k]);
     const wantedSize = Math.hypot(wanted.re, wanted.im);
     logs += Math.log(size / wantedSize) / bins.length;
-    cosines += (response.re[k] * wanted.re + response.im[k] * wanted.im) / (size * wantedSize) / bins.length;
   }
   const gyroUnit = mistaken(Math.exp(logs));
   const followed = setpointRatio(spectra, bins);
@@ -70,18 +68,21 @@ export function suspectAxis(
       because: `${axis}: the rate follows ${times(followed)} of the setpoint; that is the factor between rad/s and deg/s. Read sp_${axis} as ${unit}?`,
     });
   }
-  if (cosines < -0.6) {
-    offers.push({
-      signals: [`gyro_${axis}`],
-      sign: -1,
-      because: `${axis}: the rate goes against the command. Turn the sign of gyro_${axis}, or of the command?`,
-    });
-  }
   return offers;
 }
 
 function times(ratio: number): string {
-  return ratio < 1 ? `1/${(1 / ratio).toPrecision(2)}` : `${ratio.toPrecision(2)} times`;
+  const plain = (value: number) => String(Number(value.toPrecision(2)));
+  return ratio < 1 ? `1/${plain(1 / ratio)}` : `${plain(ratio)} times`;
+}
+
+/** A fit that found the rate going against the command. */
+export function turnedSign(axis: AxisName): Offer {
+  return {
+    signals: [`gyro_${axis}`],
+    sign: -1,
+    because: `${axis}: the rate goes against the command. Turn the sign of gyro_${axis}, or of the command, or are motors at other corners than the columns say?`,
+  };
 }
 
 /** Rate over setpoint at the lowest trusted bins, where a loop follows; null without a setpoint. */
