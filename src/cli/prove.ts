@@ -12,12 +12,13 @@ import {
   parseRun,
   PLAIN_RUN,
   runTasksOf,
+  sweepOf,
   type RunDescription,
   type RunSubject,
   type SpreadRequest,
 } from '../trials/runDescription.ts';
 import type { TrialTask } from '../trials/runTrial.ts';
-import { axisValue, parseSweep } from '../trials/sweep.ts';
+import { axisValue } from '../trials/sweep.ts';
 import { mapOf, runSweep, SweepCells } from '../trials/sweepResult.ts';
 import type { TrialResult } from '../trials/trial.ts';
 import {
@@ -264,7 +265,12 @@ async function proveSweep(plan: Plan): Promise<number> {
 function cellsOf({ run, file, subject, options }: Plan): SweepCells {
   const source = options.sweep ?? file;
   const base = { build: subject.build, gains: subject.gains, wind: subject.wind };
-  const parsed = parseSweep(options.sweep === undefined ? run.sweep : readJson(options.sweep), base, source);
+  const parsed = sweepOf(
+    run,
+    options.sweep === undefined ? run.sweep : readJson(options.sweep),
+    base,
+    source,
+  );
   const sweep = options.seed === undefined ? parsed : { ...parsed, seed: subject.seed };
   const fresh = new SweepCells(sweep, base);
   if (options.cells === undefined || !existsSync(options.cells)) return fresh;
@@ -329,56 +335,44 @@ function printSweep(kept: SweepCells, json: boolean): void {
 
 async function proveSpread(plan: Plan): Promise<number> {
   const { run, subject, workers, options } = plan;
-  const requests = spreadRequests(plan);
-  const found: { request: SpreadRequest; summary: SpreadSummary }[] = [];
-  for (const request of requests) {
-    const spreads = spreadsOf(request.shares);
-    const factors = latinHypercube(spreads, request.samples, subject.seed);
-    const { build, gains, wind } = subject;
-    const tasks = spreadTasks(request.trial, { build, gains, wind }, spreads, factors, subject.seed).map(
-      (task) => ({
-        ...task,
-        overrides: { ...run.overrides, ...task.overrides },
-        bands: run.bands[request.trial] ?? {},
-      }),
+  const { build, gains, wind, seed } = subject;
+  const request = spreadRequest(plan);
+  const spreads = spreadsOf(request.shares);
+  const factors = latinHypercube(spreads, request.samples, seed);
+  const summaries: SpreadSummary[] = [];
+  for (const trial of request.trials) {
+    const tasks = spreadTasks(trial, { build, gains, wind }, spreads, factors, seed, run.overrides).map(
+      (task) => ({ ...task, bands: run.bands[trial] ?? {} }),
     );
-    const answers = await flyAll(tasks, workers, `samples of ${request.trial}`);
+    const answers = await flyAll(tasks, workers, `samples of ${trial}`);
     if (answers === null) return INTERRUPTED;
-    found.push({ request, summary: summariseSpread(tasks, spreads, factors, answers) });
+    summaries.push(summariseSpread(tasks, spreads, factors, answers));
   }
   if (options.html !== undefined) {
-    const { build, gains, wind, seed } = subject;
-    const one = found[0];
+    const { notes, overrides, bands } = run;
+    const spread = { request, summaries };
     writeText(options.html, [
-      reportHtml({
-        build,
-        gains,
-        wind,
-        seed,
-        results: [],
-        notes: run.notes,
-        overrides: run.overrides,
-        bands: run.bands,
-        spread: one,
-      }),
+      reportHtml({ build, gains, wind, seed, results: [], notes, overrides, bands, spread }),
     ]);
   }
-  const pass = found.every(({ summary }) => summary.failures.share === 0 && summary.lost === 0);
+  const pass = summaries.every((one) => one.failures.share === 0 && one.lost === 0);
   if (options.json === true) {
-    printJson({ pass, seed: subject.seed, version: VERSION, spreads: found.map(({ summary }) => summary) });
+    printJson({ pass, seed, version: VERSION, spreads: summaries });
   } else {
-    for (const { summary } of found) describeSpread(summary);
+    for (const one of summaries) describeSpread(one);
     process.stdout.write('A simulated pass is no clearance to fly.\n');
   }
   return pass ? DONE : OUTSIDE_BAND;
 }
 
-/** Of the run description, or --spread N of each trial named. */
-function spreadRequests({ run, options }: Plan): SpreadRequest[] {
-  if (options.spread === undefined) return run.spread === null ? [] : [run.spread];
-  const samples = numberOption('spread', options.spread, 3, 10_000, 'samples', true);
-  const trials = options.trial ?? (run.spread === null ? run.trials : [run.spread.trial]);
-  return trials.map((trial) => ({ trial, samples, shares: run.spread?.shares ?? spreadSchema.parse({}) }));
+/** Of the run description, with --spread N and --trial before it. */
+function spreadRequest({ run, options }: Plan): SpreadRequest {
+  const described = run.spread ?? { trials: run.trials, samples: 100, shares: spreadSchema.parse({}) };
+  const samples =
+    options.spread === undefined
+      ? described.samples
+      : numberOption('spread', options.spread, 3, 10_000, 'samples', true);
+  return { ...described, trials: options.trial ?? described.trials, samples };
 }
 
 function describeSpread({ trial, flown, lost, failures, matters, worst }: SpreadSummary): void {

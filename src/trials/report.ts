@@ -8,7 +8,7 @@ import type { RatedFlight } from './rating.ts';
 import { sweepHtml } from './reportMap.ts';
 import { RUN_FORMAT, type SpreadRequest } from './runDescription.ts';
 import type { SweepCells } from './sweepResult.ts';
-import type { Bands } from './runTrial.ts';
+import type { Bands } from './bands.ts';
 import type { Band, Score, TrialResult } from './trial.ts';
 import { bandUse, type SpreadSummary } from './uncertainty.ts';
 
@@ -25,7 +25,7 @@ export interface ReportContent {
   readonly overrides?: Overrides;
   readonly bands?: Readonly<Record<string, Bands>>;
   readonly sweep?: SweepCells | null;
-  readonly spread?: { readonly request: SpreadRequest; readonly summary: SpreadSummary } | null;
+  readonly spread?: { readonly request: SpreadRequest; readonly summaries: readonly SpreadSummary[] } | null;
   readonly ratings?: readonly RatedFlight[];
 }
 
@@ -92,7 +92,7 @@ export function reportHtml(content: ReportContent): string {
     notes === '' ? '' : `<h2>Notes</h2><p class="notes">${escape(notes)}</p>`,
     results.length === 0 ? '' : resultsTable(results, baseline?.results ?? null),
     content.sweep == null ? '' : `<h2>Sweep</h2>${sweepHtml(content.sweep, escape)}`,
-    content.spread == null ? '' : spreadPart(content.spread.summary),
+    content.spread == null ? '' : content.spread.summaries.map(spreadPart).join(''),
     content.ratings === undefined || content.ratings.length === 0 ? '' : ratingsPart(content.ratings),
     `<h2>To repeat</h2><p>Save this as a file and give it to <code>gustbench prove --run FILE</code>; the same seed gives the same numbers.</p>`,
     `<pre>${escape(JSON.stringify(repeatDescription(content), null, 1))}</pre></body></html>\n`,

@@ -4,25 +4,24 @@
  */
 import { z } from 'zod';
 import { parseBuild, type Build } from '../craft/build.ts';
-import { formatTag, parseWith, quantity, title } from '../craft/fields.ts';
+import { formatTag, parseWith, title } from '../craft/fields.ts';
 import { parseGains, type Gains } from '../craft/gains.ts';
-import { refuse } from '../craft/problem.ts';
 import { parseWind, type Wind } from '../craft/wind.ts';
-import { resolve, type Overrides } from './overrides.ts';
+import { bandsSchema, checkBands, overridesSchema, type Bands } from './bands.ts';
+import { resolve, type Overrides, type Subject } from './overrides.ts';
 import { TRIALS, trialByName } from './registry.ts';
-import { checkBands, type Bands, type TrialTask } from './runTrial.ts';
+import type { TrialTask } from './runTrial.ts';
 import { parseSweep, type Sweep } from './sweep.ts';
 import { spreadSchema, type SpreadShares } from './uncertainty.ts';
 
 export const RUN_FORMAT = 'gustbench.run/1';
 
-const limit = quantity(-1e12, 1e12, '').optional();
-const band = z.strictObject({ least: limit, most: limit }, { error: 'an object with least, most or both' });
 const SAMPLES = 'a whole number from 3 to 10000';
 
 const spreadRequest = z.strictObject(
   {
-    trial: z.string({ error: 'the name of a trial' }),
+    /** The run's own trials when absent. */
+    trials: z.array(z.string(), { error: 'a list of names of trials' }).max(200).optional(),
     samples: z
       .int({ error: SAMPLES })
       .min(3, { error: SAMPLES })
@@ -30,7 +29,7 @@ const spreadRequest = z.strictObject(
       .default(100),
     shares: spreadSchema.prefault({}),
   },
-  { error: 'an object with trial and, where wanted, samples and shares' },
+  { error: 'an object with any of trials, samples, shares' },
 );
 
 export const runSchema = z.strictObject(
@@ -43,11 +42,9 @@ export const runSchema = z.strictObject(
     trials: z.array(z.string(), { error: 'a list of names of trials' }).max(200).optional(),
     seed: z.int({ error: 'a whole number from 0' }).min(0, { error: 'a whole number from 0' }).optional(),
     /** Numbers in place of those in the files and trials, by path. */
-    overrides: z.record(z.string(), quantity(-1e12, 1e12, ''), { error: 'numbers by path' }).default({}),
+    overrides: overridesSchema.default({}),
     /** Bands in place of the trials' own: trial → score → band. */
-    bands: z
-      .record(z.string(), z.record(z.string(), band), { error: 'bands by trial and score' })
-      .default({}),
+    bands: z.record(z.string(), bandsSchema, { error: 'bands by trial and score' }).default({}),
     notes: z.string({ error: 'a text of up to 10000 characters' }).max(10_000).default(''),
     sweep: z.unknown().optional(),
     spread: spreadRequest.optional(),
@@ -61,8 +58,9 @@ export const runSchema = z.strictObject(
   { error: 'a run description' },
 );
 
+/** Each of the trials over samples of an uncertain build. */
 export interface SpreadRequest {
-  readonly trial: string;
+  readonly trials: readonly string[];
   readonly samples: number;
   readonly shares: SpreadShares;
 }
@@ -74,7 +72,7 @@ export interface RunDescription {
   readonly overrides: Overrides;
   readonly bands: Readonly<Record<string, Bands>>;
   readonly notes: string;
-  /** Checked against build and gains when those are known, see `sweepOf`. */
+  /** Null when there is none; checked when build and gains are known, see `sweepOf`. */
   readonly sweep: unknown;
   readonly spread: SpreadRequest | null;
   readonly build: Build | null;
@@ -93,15 +91,8 @@ export function parseRun(raw: unknown, file = 'run'): RunDescription {
     value === undefined || value === null ? null : parse(value, `${file}: ${part}`);
   const trials = run.trials ?? TRIALS.map((trial) => trial.name);
   for (const name of trials) trialByName(name, file);
-  for (const [name, bands] of Object.entries(run.bands)) {
-    checkBands(trialByName(name, file), bands, file);
-    for (const [score, { least, most }] of Object.entries(bands)) {
-      if (least !== undefined && most !== undefined && least > most) {
-        throw refuse(file, `bands.${name}.${score}.least`, least, `at most ${most}, the greatest`);
-      }
-    }
-  }
-  if (run.spread !== undefined) trialByName(run.spread.trial, file);
+  for (const [name, bands] of Object.entries(run.bands)) checkBands(trialByName(name, file), bands, file);
+  for (const name of run.spread?.trials ?? []) trialByName(name, file);
   return {
     ...(run.name === undefined ? {} : { name: run.name }),
     trials,
@@ -110,7 +101,7 @@ export function parseRun(raw: unknown, file = 'run'): RunDescription {
     bands: run.bands,
     notes: run.notes,
     sweep: run.sweep ?? null,
-    spread: run.spread ?? null,
+    spread: run.spread === undefined ? null : { ...run.spread, trials: run.spread.trials ?? trials },
     build: optional(run.build, parseBuild, 'build'),
     gains: optional(run.gains, parseGains, 'gains'),
     baseline: optional(run.baseline, parseGains, 'baseline'),
@@ -147,7 +138,16 @@ export function runTasksOf(run: RunDescription, subject: RunSubject, file = 'run
   });
 }
 
-/** The run's sweep on this subject; null when it has none. @throws InputError as parseSweep */
-export function sweepOf(run: RunDescription, subject: RunSubject, file = 'run'): Sweep | null {
-  return run.sweep === null ? null : parseSweep(run.sweep, subject, file);
+/**
+ * The run's sweep on this subject, with the run's own overrides and bands put in.
+ * @throws InputError as parseSweep
+ */
+export function sweepOf(run: RunDescription, raw: unknown, subject: Subject, file: string): Sweep {
+  const sweep = parseSweep(raw, subject, file);
+  const overrides = { ...run.overrides, ...sweep.overrides };
+  return parseSweep(
+    { ...sweep, overrides, bands: { ...run.bands[sweep.trial], ...sweep.bands } },
+    subject,
+    file,
+  );
 }

@@ -4,13 +4,11 @@ import { InputError, refuse } from '../craft/problem.ts';
 import { Flight, type FlightSetup } from '../flight/flight.ts';
 import { NEUTRAL_STICKS, type Sticks } from '../flight/pilot.ts';
 import { Recorder } from '../flight/record.ts';
+import { checkBands, type Bands } from './bands.ts';
 import { rowsBetween, TRIAL_SIGNALS } from './measures.ts';
 import { resolve, type Overrides, type Resolved, type Subject } from './overrides.ts';
 import { trialByName } from './registry.ts';
 import type { Band, Score, ScoreDefinition, Trial, TrialResult, TrialRun } from './trial.ts';
-
-/** Bands in place of a trial's own, by score name. */
-export type Bands = Readonly<Record<string, Band>>;
 
 export interface TrialOptions extends Subject {
   readonly seed: number;
@@ -86,19 +84,6 @@ function scoreOf(definition: ScoreDefinition, raw: number | null, bands: Bands):
 /** A value that was never reached is outside every band. */
 function within(value: number | null, band: Band): boolean {
   return value !== null && value >= (band.least ?? -Infinity) && value <= (band.most ?? Infinity);
-}
-
-/** @throws InputError for a band of a score that the trial does not have */
-export function checkBands(trial: Trial, bands: Bands, file = 'bands'): void {
-  for (const name of Object.keys(bands)) {
-    if (trial.scores.some((score) => score.name === name)) continue;
-    throw refuse(
-      file,
-      `${trial.name}.${name}`,
-      name,
-      `one of ${trial.scores.map((score) => score.name).join(', ')}`,
-    );
-  }
 }
 
 function flyResolved(

@@ -5,6 +5,7 @@
 import { z } from 'zod';
 import { formatTag, parseWith, quantity, title } from '../craft/fields.ts';
 import { refuse } from '../craft/problem.ts';
+import { bandsSchema, checkBands, overridesSchema } from './bands.ts';
 import { resolve, valueAt, type Overrides, type Subject } from './overrides.ts';
 import { trialByName } from './registry.ts';
 import type { TrialTask } from './runTrial.ts';
@@ -38,6 +39,10 @@ export const sweepSchema = z.strictObject(
     trial: z.string({ error: 'the name of a trial' }),
     x: axisSchema,
     y: axisSchema.optional(),
+    /** Numbers that hold in every cell. */
+    overrides: overridesSchema.default({}),
+    /** Bands in place of the trial's own. */
+    bands: bandsSchema.default({}),
     seed: z.int({ error: 'a whole number from 0' }).min(0, { error: 'a whole number from 0' }).default(1),
   },
   { error: 'a sweep object' },
@@ -65,6 +70,8 @@ function asCount(raw: unknown, axis: 'x' | 'y'): number {
 /** Told before the first flight, not in every cell. */
 function checkSweep(sweep: Sweep, subject: Subject, file: string): void {
   const trial = trialByName(sweep.trial, file);
+  checkBands(trial, sweep.bands, file);
+  for (const one of Object.keys(sweep.overrides)) valueAt(trial, subject, one, file);
   const paths: string[] = [];
   for (const [name, axis] of [
     ['x', sweep.x],
@@ -124,7 +131,7 @@ export function cellsInOrder(columns: number, rows: number): Cell[] {
 
 /** The numbers that one cell sets. */
 export function cellOverrides(sweep: Sweep, { column, row }: Pick<Cell, 'column' | 'row'>): Overrides {
-  const overrides: Record<string, number> = {};
+  const overrides: Record<string, number> = { ...sweep.overrides };
   for (const one of [sweep.x.path, ...sweep.x.also]) overrides[one] = axisValue(sweep.x, column);
   if (sweep.y === undefined) return overrides;
   for (const one of [sweep.y.path, ...sweep.y.also]) overrides[one] = axisValue(sweep.y, row);
@@ -133,7 +140,13 @@ export function cellOverrides(sweep: Sweep, { column, row }: Pick<Cell, 'column'
 
 /** The task of one cell: also what a click on the cell flies. */
 export function cellTask(sweep: Sweep, subject: Subject, cell: Pick<Cell, 'column' | 'row'>): TrialTask {
-  return { ...subject, trial: sweep.trial, seed: sweep.seed, overrides: cellOverrides(sweep, cell) };
+  return {
+    ...subject,
+    trial: sweep.trial,
+    seed: sweep.seed,
+    overrides: cellOverrides(sweep, cell),
+    bands: sweep.bands,
+  };
 }
 
 /** The map of derivative gain against its cutoff, roll and pitch together, around the gains given. */

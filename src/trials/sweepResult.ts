@@ -161,7 +161,10 @@ export function runSweep(
   return runTasks(makeWorker, workers, {
     count: todo.length,
     taskAt: (index) => cellTask(kept.sweep, kept.subject, todo[index]),
-    hear: (index, answer) => hearing.cell?.(kept.take(todo[index], answer), todo[index].block),
+    hear: (index, answer) => {
+      const cell = kept.take(todo[index], answer);
+      hearing.cell?.(cell, todo[index].block);
+    },
     progress: (progress) => hearing.progress?.(progress),
   });
 }
@@ -193,7 +196,7 @@ export function mapOf(kept: SweepCells): SweepMap {
   const layers = trialByName(sweep.trial).scores.map(({ name, unit, band }) => ({
     name,
     unit,
-    band,
+    band: sweep.bands[name] ?? band,
     values: new Float64Array(columns * rows).fill(NaN),
   }));
   const acceptable = new Uint8Array(columns * rows);

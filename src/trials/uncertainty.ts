@@ -158,7 +158,10 @@ export function spreadTasks(
   spreads: readonly Spread[],
   factors: readonly Float64Array[],
   seed: number,
+  overrides: Overrides = {},
 ): TrialTask[] {
+  // What is uncertain is the value after the overrides that hold in every sample.
+  const base = resolve(trialByName(trial), subject, overrides);
   const count = factors[0]?.length ?? 0;
   return Array.from({ length: count }, (_, k) => ({
     ...subject,
@@ -166,7 +169,8 @@ export function spreadTasks(
     seed,
     overrides: Object.assign(
       {},
-      ...spreads.map((one, i) => one.overrides(subject, factors[i][k])),
+      overrides,
+      ...spreads.map((one, i) => one.overrides(base, factors[i][k])),
     ) as Overrides,
   }));
 }
