@@ -13,7 +13,13 @@ interface Field {
   readonly max: number;
 }
 
-const f = (path: string, label: string, unit: string, min: number, max: number): Field => ({ path: path.split('.'), label, unit, min, max });
+const f = (path: string, label: string, unit: string, min: number, max: number): Field => ({
+  path: path.split('.'),
+  label,
+  unit,
+  min,
+  max,
+});
 
 const FIELDS: Readonly<Record<Group, readonly Field[]>> = {
   airframe: [
@@ -61,7 +67,8 @@ const FIELDS: Readonly<Record<Group, readonly Field[]>> = {
 
 function read(build: Build, path: readonly string[]): number | null {
   let at: unknown = build;
-  for (const key of path) at = typeof at === 'object' && at !== null ? (at as Record<string, unknown>)[key] : undefined;
+  for (const key of path)
+    at = typeof at === 'object' && at !== null ? (at as Record<string, unknown>)[key] : undefined;
   return typeof at === 'number' ? at : null;
 }
 
@@ -97,7 +104,9 @@ export function BuildFields() {
                 max={field.max}
                 noSlider
                 onChange={(next) => {
-                  const problem = store.setBuild((now) => written(now, field.path, next), field.label, { quiet: true })[0];
+                  const problem = store.setBuild((now) => written(now, field.path, next), field.label, {
+                    quiet: true,
+                  })[0];
                   return problem === undefined ? null : `${problem.path}: ${problem.allowed}`;
                 }}
               />

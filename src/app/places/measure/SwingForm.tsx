@@ -33,14 +33,56 @@ export function SwingForm(props: { onSwing: (text: string) => void }) {
     ].join('\n');
   return (
     <div class="panel">
-      <Select label={words.axis} value={axis} options={AXES.map((value) => ({ value, label: value }))} onChange={setAxis} />
-      <NumberField label={words.mass} value={mass} unit="kg" min={0.01} max={150} noSlider onChange={setMass} />
-      <NumberField label={words.distance} value={distance} unit="m" min={0.01} max={5} noSlider onChange={setDistance} />
-      <NumberField label={words.length} value={length} unit="m" min={0.05} max={20} noSlider onChange={setLength} />
-      <NumberField label={words.swings} value={swings} min={1} max={500} step={1} noSlider onChange={(value) => setSwings(Math.round(value))} />
+      <Select
+        label={words.axis}
+        value={axis}
+        options={AXES.map((value) => ({ value, label: value }))}
+        onChange={setAxis}
+      />
+      <NumberField
+        label={words.mass}
+        value={mass}
+        unit="kg"
+        min={0.01}
+        max={150}
+        noSlider
+        onChange={setMass}
+      />
+      <NumberField
+        label={words.distance}
+        value={distance}
+        unit="m"
+        min={0.01}
+        max={5}
+        noSlider
+        onChange={setDistance}
+      />
+      <NumberField
+        label={words.length}
+        value={length}
+        unit="m"
+        min={0.05}
+        max={20}
+        noSlider
+        onChange={setLength}
+      />
+      <NumberField
+        label={words.swings}
+        value={swings}
+        min={1}
+        max={500}
+        step={1}
+        noSlider
+        onChange={(value) => setSwings(Math.round(value))}
+      />
       <label class="measure-timings">
         {words.timings} <span class="faint">{words.timingsHint}</span>
-        <input class="text-input" type="text" value={timings} onInput={(event) => setTimings(event.currentTarget.value)} />
+        <input
+          class="text-input"
+          type="text"
+          value={timings}
+          onInput={(event) => setTimings(event.currentTarget.value)}
+        />
       </label>
       <Button primary onClick={() => props.onSwing(text())}>
         {words.go}

@@ -37,9 +37,11 @@ self.onmessage = ({ data }: MessageEvent<ToBenchWorker>) => {
 
 function analyse(task: ToBenchWorker): BenchResult {
   const { files } = task;
-  if (task.kind === 'swing') return joinSwings(files.flatMap(({ name, text }) => analyseSwing(readSwing(text, name), name).tests));
+  if (task.kind === 'swing')
+    return joinSwings(files.flatMap(({ name, text }) => analyseSwing(readSwing(text, name), name).tests));
   const tables = files.map(({ name, text }) => readTable(text, name));
-  if (task.kind === 'stand') return analyseStand(tables, { diameter_m: task.diameter_m, elevation_m: task.elevation_m });
+  if (task.kind === 'stand')
+    return analyseStand(tables, { diameter_m: task.diameter_m, elevation_m: task.elevation_m });
   if (task.kind === 'spinup') return joinSpinup(tables.map((table) => analyseSpinup(table)));
   return joinStill(tables.map((table) => analyseStill(table)));
 }

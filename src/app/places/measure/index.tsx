@@ -31,7 +31,12 @@ export default function Measure() {
   const [sheet, setSheet] = useState<Sheet>('numbers');
   return (
     <div class="measure">
-      <Tabs label={words.sheets} value={sheet} tabs={SHEETS.map((value) => ({ value, label: words.tabs[value] }))} onChange={setSheet}>
+      <Tabs
+        label={words.sheets}
+        value={sheet}
+        tabs={SHEETS.map((value) => ({ value, label: words.tabs[value] }))}
+        onChange={setSheet}
+      >
         <Cautions sheet={sheet} />
         {sheet === 'numbers' ? <BuildFields /> : <Bench key={sheet} kind={sheet} />}
         <Papers sheet={sheet} />
@@ -80,17 +85,26 @@ function Bench(props: { kind: BenchKind }) {
       if (data.kind === 'done') setResult(data.result);
       else {
         const first = data.problems[0];
-        setRefused(`${data.file}: ${first?.path ?? ''} ${first?.value ?? ''}. ${words.allowed}: ${first?.allowed ?? ''}`);
+        setRefused(
+          `${data.file}: ${first?.path ?? ''} ${first?.value ?? ''}. ${words.allowed}: ${first?.allowed ?? ''}`,
+        );
       }
     };
     one.onerror = (event) => {
       end();
       setRefused(event.message);
     };
-    one.postMessage({ kind, files, diameter_m: diameter, elevation_m: store.scene.value.elevation_m } satisfies ToBenchWorker);
+    one.postMessage({
+      kind,
+      files,
+      diameter_m: diameter,
+      elevation_m: store.scene.value.elevation_m,
+    } satisfies ToBenchWorker);
   };
   const take = async (files: readonly File[]): Promise<void> => {
-    const texts = await Promise.all(files.map(async (file) => ({ name: file.name, text: await file.text() })));
+    const texts = await Promise.all(
+      files.map(async (file) => ({ name: file.name, text: await file.text() })),
+    );
     analyse(texts);
   };
   const accept = (): void => {
@@ -105,10 +119,23 @@ function Bench(props: { kind: BenchKind }) {
       <section>
         <p>{words.what[kind]}</p>
         {kind === 'stand' && (
-          <NumberField label={words.diameter} value={diameter} unit="m" min={0.02} max={5} noSlider onChange={setDiameter} />
+          <NumberField
+            label={words.diameter}
+            value={diameter}
+            unit="m"
+            min={0.02}
+            max={5}
+            noSlider
+            onChange={setDiameter}
+          />
         )}
         {kind === 'swing' && <SwingForm onSwing={(text) => analyse([{ name: words.typed, text }])} />}
-        <FileDrop label={words.drop[kind]} accept=".csv,.txt,.json" multiple onFiles={(files) => void take(files)} />
+        <FileDrop
+          label={words.drop[kind]}
+          accept=".csv,.txt,.json"
+          multiple
+          onFiles={(files) => void take(files)}
+        />
         {busy && <p role="status">{words.busy}</p>}
         {refused !== null && <NoticeBox kind="error">{refused}</NoticeBox>}
       </section>
@@ -187,7 +214,15 @@ function plotOf(result: BenchResult) {
     const table = result.propeller.staticTable ?? [];
     if (table.length < 2) return null;
     const series: PlotSeries[] = [{ label: 'C_T', axis: 'roll', values: table.map((row) => row.ct) }];
-    return { label: words.plots.stand, x: table.map((row) => row.rpm), series, xLabel: '', xUnit: 'rev/min', yLabel: 'C_T', yUnit: '' };
+    return {
+      label: words.plots.stand,
+      x: table.map((row) => row.rpm),
+      series,
+      xLabel: '',
+      xUnit: 'rev/min',
+      yLabel: 'C_T',
+      yUnit: '',
+    };
   }
   if (result.measurement === 'still') {
     const axes = ['roll', 'pitch', 'yaw'] as const;
@@ -199,7 +234,12 @@ function plotOf(result: BenchResult) {
     return {
       label: words.plots.still,
       x: found[0].spectrum.frequency_Hz,
-      series: found.map(({ axis, spectrum }): PlotSeries => ({ label: axis, axis, values: spectrum.density, x: spectrum.frequency_Hz })),
+      series: found.map(({ axis, spectrum }): PlotSeries => ({
+        label: axis,
+        axis,
+        values: spectrum.density,
+        x: spectrum.frequency_Hz,
+      })),
       xLabel: '',
       xUnit: 'Hz',
       yLabel: words.plots.still,
@@ -246,10 +286,13 @@ function print(paper: Worksheet): void {
 }
 
 function paperHtml(paper: Worksheet): string {
-  const list = (tag: 'ol' | 'ul', items: readonly string[]) => `<${tag}>${items.map((item) => `<li>${item}</li>`).join('')}</${tag}>`;
+  const list = (tag: 'ol' | 'ul', items: readonly string[]) =>
+    `<${tag}>${items.map((item) => `<li>${item}</li>`).join('')}</${tag}>`;
   const fields = paper.fields
-    .map((field) => `<tr><td>${field.label}, ${field.unit}</td>${'<td class="box"></td>'.repeat(field.repeats)}</tr>`)
+    .map(
+      (field) =>
+        `<tr><td>${field.label}, ${field.unit}</td>${'<td class="box"></td>'.repeat(field.repeats)}</tr>`,
+    )
     .join('');
   return `<!doctype html><meta charset="utf-8"><title>${paper.title}</title><style>body{font:12px/1.45 system-ui,sans-serif;margin:15mm}td{border-bottom:1px solid #999;padding:4px 8px}.box{min-width:60px;border:1px solid #000}.c{border:2px solid #000;padding:4px 8px}</style><h1>${paper.title}</h1><p>${paper.purpose}</p><div class="c">${list('ul', paper.cautions)}</div><h2>${words.tools}</h2>${list('ul', paper.tools)}<h2>${words.steps}</h2>${list('ol', paper.steps)}<table>${fields}</table><p>${paper.result}</p>`;
 }
-

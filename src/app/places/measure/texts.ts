@@ -1,11 +1,19 @@
 /** English texts of Measure. */
 export const measureTexts = {
   sheets: 'Worksheets',
-  tabs: { numbers: 'Numbers of the build', swing: 'Swing test', stand: 'Thrust stand', spinup: 'Spin-up', still: 'Gyro at rest and idle' },
+  tabs: {
+    numbers: 'Numbers of the build',
+    swing: 'Swing test',
+    stand: 'Thrust stand',
+    spinup: 'Spin-up',
+    still: 'Gyro at rest and idle',
+  },
   cautions: 'Cautions',
   what: {
-    swing: 'Hang the craft on two wires, or as a pendulum, and time the swings: inertia comes from the period.',
-    stand: 'A thrust stand’s file: thrust, torque and speed make the propeller’s coefficients; voltage and current the motor’s.',
+    swing:
+      'Hang the craft on two wires, or as a pendulum, and time the swings: inertia comes from the period.',
+    stand:
+      'A thrust stand’s file: thrust, torque and speed make the propeller’s coefficients; voltage and current the motor’s.',
     spinup: 'A recording of speed while the command steps up and down: the motor’s lags.',
     still: 'The gyro’s own record on the bench and at idle: noise, bias, resolution, vibration.',
   },
