@@ -50,11 +50,11 @@ describeInBrowser('Measure and Match', (site) => {
     const { page } = opened;
     await page.getByRole('tab', { name: 'Thrust stand' }).click();
     await page.locator('.measure input[type="file"]').setInputFiles(stand);
-    await page.locator('.measure-found tr', { hasText: 'thrustCoefficient' }).waitFor({ timeout: 30_000 });
+    await page.locator('.measure-found tr', { hasText: 'thrust coefficient' }).waitFor({ timeout: 30_000 });
     await opened.shot('measure-stand-dark');
     await page.locator('.measure input[type="file"]').setInputFiles(junk);
     await page.getByText(/junk\.csv/).waitFor();
-    expect(await page.locator('.measure-found tr', { hasText: 'thrustCoefficient' }).count()).toBe(1);
+    expect(await page.locator('.measure-found tr', { hasText: 'thrust coefficient' }).count()).toBe(1);
     await opened.close();
   }, 120_000);
 

@@ -273,9 +273,7 @@ function Result(props: {
             const one = result.axes[axis];
             return (
               <tr key={axis}>
-                <th scope="row" class={`axis-${axis}`}>
-                  {axis}
-                </th>
+                <th scope="row">{axis}</th>
                 <td>{interval(one.gain_dps2_per_us, 1)}</td>
                 <td>{interval(one.lag_s, 1000)}</td>
                 <td>{interval(one.delay_s, 1000)}</td>

@@ -173,7 +173,7 @@ function Quantities(props: { result: BenchResult }) {
         {rows.map(([name, one]) =>
           one === undefined ? null : (
             <tr key={name}>
-              <th scope="row">{name.replace(/_/g, ' ')}</th>
+              <th scope="row">{spoken(name)}</th>
               <td>
                 <b>{readable(one.value)}</b> <span class="unit">{one.unit === '1' ? '' : one.unit}</span>
               </td>
@@ -188,6 +188,14 @@ function Quantities(props: { result: BenchResult }) {
       </tbody>
     </table>
   );
+}
+
+/** "thrustCoefficient", "inertia_xx_kgm2" as words; the unit stands beside the value. */
+function spoken(name: string): string {
+  return name
+    .replace(/_(kgm2|s|ohm|dps|Hz|A|V|W|rpm_per_V|dps_per_rtHz|g_per_W)$/, '')
+    .replace(/_/g, ' ')
+    .replace(/([a-z])([A-Z])/g, (_all, a: string, b: string) => `${a} ${b.toLowerCase()}`);
 }
 
 function Notes(props: { result: BenchResult }) {
