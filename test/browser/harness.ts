@@ -30,6 +30,8 @@ const SHOTS = path.join(root, 'test/browser/shots');
 const SITES = path.join(root, 'node_modules/.cache/gustbench/sites');
 /** A page with every widget and plot, built beside the program for the tests only. */
 export const GALLERY = 'test/browser/gallery/index.html';
+/** A page with the flight view alone, on an invented path. */
+export const VIEW_PAGE = 'test/browser/view/index.html';
 const SOURCES = [
   'index.html',
   'vite.config.ts',
@@ -38,6 +40,7 @@ const SOURCES = [
   'scenes',
   'public',
   'test/browser/gallery',
+  'test/browser/view',
 ];
 
 export interface OpenOptions {
@@ -209,7 +212,7 @@ async function builtSite(): Promise<string> {
     build: {
       outDir: aside,
       emptyOutDir: true,
-      rollupOptions: { input: [path.join(root, 'index.html'), path.join(root, GALLERY)] },
+      rollupOptions: { input: ['index.html', GALLERY, VIEW_PAGE].map((page) => path.join(root, page)) },
     },
   });
   dropOldSites();
