@@ -5,7 +5,7 @@
 import { mkdtempSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import path from 'node:path';
-import { chromium } from 'playwright-core';
+import { chromium, type Page } from 'playwright-core';
 import { build, preview } from 'vite';
 import { findChromium } from '../../src/cli/setup.mjs';
 
@@ -58,7 +58,7 @@ async function measure(
   await browser.close();
 }
 
-async function ticks(page: import('playwright-core').Page): Promise<string> {
+async function ticks(page: Page): Promise<string> {
   return page.locator('.fly-read div', { hasText: 'ticks on time' }).locator('b').innerText();
 }
 
