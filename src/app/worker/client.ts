@@ -29,6 +29,7 @@ const ATTITUDE = signalIndex('qw');
 const SPEED = signalIndex('speed_FL_rpm');
 const THRUST = signalIndex('thrust_FL_N');
 const WIND = signalIndex('wind_n_mps');
+const STRUCK = signalIndex('struck_FL');
 const RAD_PER_S_PER_RPM = Math.PI / 30;
 
 export interface ClientState {
@@ -54,6 +55,7 @@ export class FlightClient {
   private readonly speeds = new Float64Array(4);
   private readonly thrusts = new Float64Array(4);
   private readonly wind = new Float64Array(3);
+  private readonly struck = new Uint8Array(4);
   private loaded = true;
 
   /** Told when input was refused, the page was away for long, or the flight began anew. */
@@ -189,12 +191,14 @@ export class FlightClient {
     for (let i = 0; i < 4; i++) this.speeds[i] = mixed(SPEED + i) * RAD_PER_S_PER_RPM;
     for (let i = 0; i < 4; i++) this.thrusts[i] = mixed(THRUST + i);
     for (let i = 0; i < 3; i++) this.wind[i] = mixed(WIND + i);
+    for (let i = 0; i < 4; i++) this.struck[i] = ring.channels[STRUCK + i][b] > 0.5 ? 1 : 0;
     return {
       pose: this.pose,
       rotorSpeeds: this.speeds,
       thrusts_N: this.thrusts,
       wind_mps: this.wind,
       loaded: this.loaded,
+      struck: this.struck,
     };
   }
 

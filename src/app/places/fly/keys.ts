@@ -4,6 +4,9 @@ import type { FlightView } from '../../view3d/flightView.ts';
 import type { FlightSession } from './session.ts';
 
 const BACK_S = 5;
+/** One key press of the view: a turn, a factor of distance. */
+const VIEW_TURN_RAD = Math.PI / 12;
+const VIEW_ZOOM = 1.25;
 
 /** Listens while mounted; returns the end of it. */
 export function flightKeys(
@@ -65,6 +68,16 @@ function actionOf(
         const now = view();
         if (now !== null) now.setCamera(CAMERAS[(CAMERAS.indexOf(now.camera) + 1) % CAMERAS.length]);
       };
+    case 'BracketLeft':
+      return () => view()?.lookBy(-VIEW_TURN_RAD, 0);
+    case 'BracketRight':
+      return () => view()?.lookBy(VIEW_TURN_RAD, 0);
+    case 'Equal':
+    case 'NumpadAdd':
+      return () => view()?.zoomBy(1 / VIEW_ZOOM);
+    case 'Minus':
+    case 'NumpadSubtract':
+      return () => view()?.zoomBy(VIEW_ZOOM);
     case 'Period':
       return () => session.client.singleTick();
     case 'Comma':

@@ -202,6 +202,7 @@ function shownFolder(gui: GUI, shows: ViewShows): () => void {
   folder.add(shows, 'thrust').name(words.thrust);
   folder.add(shows, 'wind').name(words.wind);
   folder.add(shows, 'streaks').name(words.streaks);
+  folder.add(shows, 'trail').name(words.trail);
   folder.close();
   return () => undefined;
 }

@@ -85,6 +85,8 @@ export const flyTexts = {
       ['H', 'height hold on and off'],
       ['G', 'a gust from the wind’s side, now'],
       ['C', 'next view'],
+      ['[ ]', 'turn the view; dragging does it too'],
+      ['+ −', 'nearer, farther'],
       ['P', 'pause'],
       ['.', 'one tick while paused'],
       [', ', 'back five seconds'],
@@ -128,6 +130,7 @@ export const flyTexts = {
     thrust: 'thrust arrows',
     wind: 'wind arrow',
     streaks: 'wind streaks',
+    trail: 'trail',
   },
   sticks: {
     title: 'Sticks',
