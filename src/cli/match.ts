@@ -139,7 +139,7 @@ function asJson(options: MatchCliOptions, t_s: Float64Array, result: MatchResult
     log: options.log,
     rows: t_s.length,
     duration_s: t_s[t_s.length - 1],
-    timeBase: { ...timeBase, timesUsed: result.timesUsed },
+    timeBase: { ...timeBase, reading: result.reading },
     axes: Object.fromEntries(AXES.map((axis) => [axis, axisJson(result.axes[axis])])),
     fitIs: `100 (1 − ‖y − ŷ‖/‖y − mean y‖) on a piece held back, simulated ${HORIZON_S} s at a time`,
     leftOut: result.leftOut,

@@ -27,7 +27,7 @@ interface ShapeOptions {
   charge?: string;
   elevation?: string;
   released?: boolean;
-  noise?: string;
+  noise_dps_per_rtHz?: string;
   json?: boolean;
 }
 
@@ -53,7 +53,11 @@ export function addShapeCommand(program: Command): void {
     .option('--charge <share>', 'state of charge of the battery')
     .option('--elevation <m>', 'site elevation', '0')
     .option('--released', 'with the payload let go')
-    .option('--noise <dps/rtHz>', 'gyro noise density for --plant', String(DEFAULT_NOISE_DPS_PER_RTHZ))
+    .option(
+      '--noise_dps_per_rtHz <density>',
+      'gyro noise density for --plant, deg/s per √Hz',
+      String(DEFAULT_NOISE_DPS_PER_RTHZ),
+    )
     .option('--json', 'print one JSON object')
     .action((options: ShapeOptions) => runVerb(() => shape(options)));
 }
@@ -71,14 +75,17 @@ function shape(options: ShapeOptions): number {
     throw refuse('command line', '--gains', undefined, 'a gains file (or --start)');
   }
   const gains = options.gains === undefined ? DEFAULT_GAINS : readGains(options.gains);
-  const noise = numberOption('noise', options.noise ?? '', 0, 10, 'deg/s per √Hz');
+  const noise = numberOption('noise_dps_per_rtHz', options.noise_dps_per_rtHz ?? '', 0, 10, 'deg/s per √Hz');
   if (options.start === true) return start(options, gains, noise);
   const report =
     options.plant !== undefined
       ? reportForPlant(readPlant(options.plant), gains, noise)
       : atTrim(options, (choice) => reportForBuild(readBuild(options.build ?? ''), gains, choice));
-  if (options.json === true) printJson({ ...report, loop_Hz: gains.loop_Hz });
-  else describe(report);
+  if (options.json === true) {
+    const density = options.plant === undefined ? readBuild(options.build ?? '').gyro.noise_dps_per_rtHz : noise;
+    // Each axis by its own name and, as `match` gives them, under `axes`.
+    printJson({ ...report, axes: report, loop_Hz: gains.loop_Hz, noise_dps_per_rtHz: density });
+  } else describe(report);
   return DONE;
 }
 

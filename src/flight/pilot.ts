@@ -39,7 +39,7 @@ export const NEUTRAL_STICKS: Readonly<Sticks> = {
 };
 
 /** Used where the gains file says nothing of levelling. */
-const DEFAULT_LEVELLING = { attitude_per_s: 5, maxAngle_deg: 35 };
+export const DEFAULT_LEVELLING = { attitude_per_s: 5, maxAngle_deg: 35 };
 const DEFAULT_RESET_THROTTLE = 0.03;
 
 export class Pilot implements Stateful {

@@ -9,7 +9,8 @@ const LONGEST_BRIDGE = 5;
 const IRREGULAR_SHARE = 0.45;
 /** Weight of a new row in the tracked phase of the tick. */
 const PHASE_BLEND = 0.02;
-const PERIOD_SPAN = 16;
+const PERIOD_SPAN = 8;
+const PERIOD_QUANTILE = 0.25;
 
 /** A run of rows without a pause. Index −1 in `row` marks a lost row that was put in. */
 export interface Stretch {
@@ -38,7 +39,7 @@ export interface TimeBase {
  */
 export function findTimeBase(t_s: Float64Array): TimeBase {
   const period_s = typicalPeriod_s(t_s);
-  const index = tickIndices(t_s, period_s);
+  const index = tickIndices(t_s, period_s, PHASE_BLEND);
   const stretches: Stretch[] = [];
   let lostRows = 0;
   let square = 0;
@@ -71,7 +72,10 @@ export function findTimeBase(t_s: Float64Array): TimeBase {
   };
 }
 
-/** Median over spans of several rows: neither jitter nor a few lost rows move it. */
+/**
+ * First by a low quantile over spans of several rows, which neither jitter nor lost rows move much; then by
+ * the ticks counted along the log.
+ */
 function typicalPeriod_s(t_s: Float64Array): number {
   const span = Math.min(PERIOD_SPAN, Math.floor(t_s.length / 4));
   const count = Math.min(20_000, t_s.length - span);
@@ -80,11 +84,26 @@ function typicalPeriod_s(t_s: Float64Array): number {
     const k = Math.floor(i * stride);
     return (t_s[k + span] - t_s[k]) / span;
   }).sort();
-  return periods[count >> 1];
+  let period_s = periods[Math.floor(count * PERIOD_QUANTILE)];
+  for (const blend of [0.1, PHASE_BLEND]) period_s = refinedPeriod_s(t_s, tickIndices(t_s, period_s, blend));
+  return period_s;
+}
+
+/** Time over ticks, pauses left out. */
+function refinedPeriod_s(t_s: Float64Array, index: Float64Array): number {
+  let time = 0;
+  let ticks = 0;
+  for (let k = 1; k < t_s.length; k++) {
+    const step = index[k] - index[k - 1];
+    if (step > LONGEST_BRIDGE + 1) continue;
+    time += t_s[k] - t_s[k - 1];
+    ticks += step;
+  }
+  return time / ticks;
 }
 
 /** Number of the controller's tick for each row, by a phase that is tracked along the log. */
-function tickIndices(t_s: Float64Array, period_s: number): Float64Array {
+function tickIndices(t_s: Float64Array, period_s: number, blend: number): Float64Array {
   const index = new Float64Array(t_s.length);
   let phase = t_s[0];
   for (let k = 1; k < t_s.length; k++) {
@@ -92,7 +111,7 @@ function tickIndices(t_s: Float64Array, period_s: number): Float64Array {
     index[k] = index[k - 1] + ticks;
     phase += ticks * period_s;
     // After a pause the clock starts anew.
-    phase += (ticks > LONGEST_BRIDGE + 1 ? 1 : PHASE_BLEND) * (t_s[k] - phase);
+    phase += (ticks > LONGEST_BRIDGE + 1 ? 1 : blend) * (t_s[k] - phase);
   }
   return index;
 }

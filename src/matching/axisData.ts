@@ -30,3 +30,11 @@ export interface AxisPiece {
   /** Standard error of u_us, µs: 0 where it was logged, above 0 where it was put in. */
   readonly uError_us: Float64Array;
 }
+
+/** How rows are read as a course in time; which reading is right shows in how well it explains the rates. */
+export interface Reading {
+  /** Time stamps as they stand, or a regular tick fitted through them (the clock jittered, not the tick). */
+  readonly stamps: 'as logged' | 'regular';
+  /** The command was held from row to row, or went on in ticks between the rows (a thinned-out log). */
+  readonly command: 'held' | 'between';
+}

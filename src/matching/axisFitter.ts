@@ -50,9 +50,11 @@ const SIZE = 8;
 
 const WARM_UP_S = 0.3;
 const MOST_ITERATIONS = 40;
+const SCOUT_ITERATIONS = 12;
 const SHORTEST_LAG_S = 2e-4;
 const LONGEST_LAG_S = 2;
 const LONGEST_DELAY_S = 0.25;
+const SHORTEST_DELAY_S = -0.003;
 const LARGEST_ORDER = 48;
 const MOST_WHITENED_ITERATIONS = 12;
 const WHITENESS_LAGS = 60;
@@ -133,13 +135,25 @@ export class AxisFitter {
     this.rows = rows;
   }
 
+  /** Searches and, if the prediction errors are coloured, goes on with a whitening filter. */
   run(): AxisFit {
+    const { p, last, cost, converged } = this.search(MOST_ITERATIONS);
+    return this.whitened(p, last, cost, converged);
+  }
+
+  /** The search alone: the plant it ends at and minus its log likelihood, to compare places to begin. */
+  scout(): { plant: PlantParameters; cost: number } {
+    const { p, cost } = this.search(SCOUT_ITERATIONS);
+    return { plant: { gain_dps2_per_us: p[GAIN], lag_s: p[LAG], delay_s: p[DELAY] }, cost };
+  }
+
+  private search(most: number) {
     let p = this.startVector();
     let cost = this.cost(p);
     let damping = 1e-3;
     let converged = false;
     let last = this.derivatives(p);
-    for (let iteration = 0; iteration < MOST_ITERATIONS; iteration++) {
+    for (let iteration = 0; iteration < most; iteration++) {
       const step = dampedStep(last, damping);
       const trial = this.bounded(p, step);
       const trialCost = this.cost(trial);
@@ -164,7 +178,7 @@ export class AxisFitter {
       }
     }
     this.cost(p);
-    return this.whitened(p, last, cost, converged);
+    return { p, last, cost, converged };
   }
 
   private startVector(): Float64Array {
@@ -173,6 +187,7 @@ export class AxisFitter {
     p[LAG] = this.start.lag_s;
     p[DELAY] = this.start.delay_s;
     p[LEAD] = this.start.lead_s ?? 0;
+    if (this.active.includes(LEAD)) p[DELAY] = Math.max(p[DELAY], 1e-4);
     p[DAMPING] = this.start.damping_per_s ?? 0;
     const { gyroVariance, drive, decay_per_s } = this.startNoise ?? this.guessNoise(p);
     p[VARIANCE] = Math.log(gyroVariance);
@@ -337,7 +352,9 @@ export class AxisFitter {
       else if (trial[a] >= high) trial[a] = (p[a] + high) / 2;
     };
     inside(LAG, SHORTEST_LAG_S, LONGEST_LAG_S);
-    inside(DELAY, -0.02, LONGEST_DELAY_S);
+    // Below zero the model would see commands that were computed from the very sample it foretells: through a
+    // lead that is a leak; without one it is harmless for a little way and keeps the estimate unbiased.
+    inside(DELAY, this.active.includes(LEAD) ? 0 : SHORTEST_DELAY_S, LONGEST_DELAY_S);
     inside(LEAD, -0.2, 2);
     inside(DAMPING, -2, 60);
     inside(DECAY, -7, 7);

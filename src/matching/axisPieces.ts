@@ -8,6 +8,7 @@ const SAMPLE_ROWS = 20_000;
 /**
  * Axis pieces of rows `begin` to before `end` of a stretch.
  * @param times the stretch's logged or regular times
+ * @param command how the command went on between rows: held, or changing in ticks that were not logged
  */
 export function axisPiece(
   stretch: Stretch,
@@ -16,6 +17,7 @@ export function axisPiece(
   end: number,
   u_us: ArrayLike<number>,
   y_dps: ArrayLike<number>,
+  command: 'held' | 'between' = 'held',
 ): AxisPiece {
   const n = end - begin;
   const piece = {
@@ -31,7 +33,13 @@ export function axisPiece(
     piece.y_dps[i] = y_dps[row];
   }
   putInCommands(piece);
+  if (command === 'between') meanToNext(piece.u_us);
   return piece;
+}
+
+/** What acts from row to row where the controller ran on between the rows: the mean of the two commands. */
+function meanToNext(u_us: Float64Array): void {
+  for (let k = 0; k + 1 < u_us.length; k++) u_us[k] = (u_us[k] + u_us[k + 1]) / 2;
 }
 
 function putInCommands(piece: { u_us: Float64Array; y_dps: Float64Array; uError_us: Float64Array }): void {

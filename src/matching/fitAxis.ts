@@ -40,6 +40,33 @@ export function fitPlain(
   return new AxisFitter(pieces, start, [], noise).run();
 }
 
+/** Rows on which places to begin are compared. */
+const SCOUT_ROWS = 6000;
+
+/**
+ * The best place to begin: the likelihood has more than one hollow where the manoeuvre is slow. Each start is
+ * followed on a part of the rows; the plant of the deepest hollow is returned.
+ */
+export function bestStart(pieces: readonly AxisPiece[], starts: readonly PlantParameters[]): PlantParameters {
+  const part: AxisPiece[] = [];
+  let left = SCOUT_ROWS;
+  for (const piece of pieces) {
+    if (left <= 0) break;
+    const rows = Math.min(left, piece.t_s.length);
+    part.push({
+      t_s: piece.t_s.subarray(0, rows),
+      u_us: piece.u_us.subarray(0, rows),
+      y_dps: piece.y_dps.subarray(0, rows),
+      uError_us: piece.uError_us.subarray(0, rows),
+    });
+    left -= rows;
+  }
+  const ends = starts.map((start) => new AxisFitter(part, start, []).scout());
+  // A rate that goes against the command is believed only when no start says otherwise.
+  const forward = ends.filter((end) => end.plant.gain_dps2_per_us > 0);
+  return (forward.length > 0 ? forward : ends).reduce((a, b) => (b.cost < a.cost ? b : a)).plant;
+}
+
 /**
  * Tries the offered terms one after the other on top of a plain fit.
  * @param other a second place to begin from, with its lead (a build's own plant)

@@ -3,10 +3,10 @@ import type { Build } from '../craft/build.ts';
 import type { AxisName } from '../craft/gains.ts';
 import { DEG_PER_RAD } from '../math/angles.ts';
 import type { TimeBase } from './align.ts';
-import type { AxisPiece, PlantParameters } from './axisData.ts';
+import type { AxisPiece, PlantParameters, Reading } from './axisData.ts';
 import type { AxisFit, Estimate, OptionalTerm } from './axisFitter.ts';
 import { axisPiece } from './axisPieces.ts';
-import { fitPlain, plantOf, withTerms } from './fitAxis.ts';
+import { bestStart, fitPlain, plantOf, withTerms } from './fitAxis.ts';
 import { describeFit, reasonsOf } from './axisNote.ts';
 import {
   excitedBySetpoint,
@@ -28,6 +28,10 @@ import { explainedShare, residualOf, validate, type Residual, type Validation } 
 const LARGEST_GAIN_ERROR = 0.15;
 const LARGEST_LAG_ERROR = 0.6;
 const LARGEST_DELAY_ERROR_S = 0.006;
+/** Stamps that jitter by less than this share of the period are regular. */
+const JITTER_SHARE = 0.01;
+/** Drop of the deviance that the less usual reading of the commands must bring. */
+const CLEARLY_BETTER = 20;
 /** Without a moving setpoint the model must explain this much of the rate's power between 0.7 and 10 Hz. */
 const LEAST_EXPLAINED = 0.75;
 
@@ -36,8 +40,8 @@ export interface AxisContext {
   readonly build: Build;
   readonly base: TimeBase;
   readonly usable: UsableRows;
-  /** Null while it is not known which times are better. */
-  readonly times: 'as logged' | 'regular' | null;
+  /** Null while it is not known which is right. */
+  readonly reading: Reading | null;
   readonly rotor_Hz: number | null;
 }
 
@@ -55,7 +59,7 @@ export interface AxisResult {
   readonly residual: Residual | null;
   readonly leftOut: readonly LeftOut[];
   readonly offers: readonly Offer[];
-  readonly timesUsed: 'as logged' | 'regular' | null;
+  readonly reading: Reading | null;
 }
 
 const NOTHING = {
@@ -68,7 +72,7 @@ const NOTHING = {
   residual: null,
   leftOut: [],
   offers: [],
-  timesUsed: null,
+  reading: null,
 } as const;
 
 /** Identifies one axis. */
@@ -119,20 +123,18 @@ function fitParts(
   const { base, build } = context;
   const { response } = parts;
   const { first, rest } = splitSpans(parts.spans, FITTED_SHARE);
-  const piecesOf = (spans: readonly Span[], times: 'as logged' | 'regular') =>
+  const piecesOf = (spans: readonly Span[], { stamps, command }: Reading) =>
     spans.map((span) => {
-      const stamps = times === 'regular' ? span.stretch.regular_s : span.stretch.logged_s;
-      return axisPiece(span.stretch, stamps, span.begin, span.end, u_us, y_dps);
+      const times = stamps === 'regular' ? span.stretch.regular_s : span.stretch.logged_s;
+      return axisPiece(span.stretch, times, span.begin, span.end, u_us, y_dps, command);
     });
-  const start = plantFromResponse(response) ?? model;
-  const positive = start.gain_dps2_per_us > 0 ? start : model;
-  const chosen = bestTimes(context, positive, (times) => piecesOf(first, times));
+  const chosen = bestReading(context, startsOf(response, model), (reading) => piecesOf(first, reading));
   // The rotors' reaction about yaw is a lead; the inflow damps roll and pitch.
   const terms: OptionalTerm[] = axis === 'yaw' ? ['lead_s', 'damping_per_s'] : ['damping_per_s'];
   const fit = withTerms(chosen.pieces, chosen.fit, terms, model);
   const plant = plantOf(fit);
-  const held = piecesOf(rest, chosen.times);
-  const partial = { ...NOTHING, response, leftOut: parts.leftOut, timesUsed: chosen.times };
+  const held = piecesOf(rest, chosen.reading);
+  const partial = { ...NOTHING, response, leftOut: parts.leftOut, reading: chosen.reading };
   const estimates = reducedEstimates(fit);
   if (!(fit.gain_dps2_per_us.value > 0) && bySetpoint) {
     const offer = turnedSign(axis);
@@ -163,23 +165,44 @@ function fitParts(
   };
 }
 
-/** Fits with the stamps as logged and, if they jitter, on the regular tick; the likelihood decides. */
-function bestTimes(
+/** Places to begin: the measured response's plant, the model's with the measured gain, the model's own. */
+function startsOf(response: MeasuredResponse, model: PlantParameters): PlantParameters[] {
+  const plain = { gain_dps2_per_us: model.gain_dps2_per_us, lag_s: model.lag_s, delay_s: model.delay_s };
+  const measured = plantFromResponse(response);
+  if (measured === null) return [plain];
+  return [measured, { ...plain, lag_s: 0.035, gain_dps2_per_us: measured.gain_dps2_per_us }, plain];
+}
+
+interface ReadFit {
+  readonly reading: Reading;
+  readonly fit: AxisFit;
+  readonly pieces: AxisPiece[];
+}
+
+/**
+ * Fits with the readings that are possible; the likelihood decides. That the command went on between rows is
+ * taken only on clear evidence: most logs hold every tick.
+ */
+function bestReading(
   context: AxisContext,
-  start: PlantParameters,
-  piecesOf: (times: 'as logged' | 'regular') => AxisPiece[],
-): { times: 'as logged' | 'regular'; fit: AxisFit; pieces: AxisPiece[] } {
+  starts: readonly PlantParameters[],
+  piecesOf: (reading: Reading) => AxisPiece[],
+): ReadFit {
   const { base } = context;
-  const attempt = (times: 'as logged' | 'regular', from?: AxisFit) => {
-    const pieces = piecesOf(times);
-    const fit = fitPlain(pieces, from === undefined ? start : plantOf(from), from?.noise);
-    return { times, fit, pieces };
+  const attempt = (reading: Reading, from?: AxisFit): ReadFit => {
+    const pieces = piecesOf(reading);
+    const start = from === undefined ? bestStart(pieces, starts) : plantOf(from);
+    return { reading, fit: fitPlain(pieces, start, from?.noise), pieces };
   };
-  if (context.times !== null) return attempt(context.times);
-  const regular = base.irregular ? null : attempt('regular');
-  if (regular !== null && base.jitter_s < 0.01 * base.period_s) return regular;
-  const logged = attempt('as logged', regular?.fit);
-  return regular !== null && regular.fit.deviance < logged.fit.deviance ? regular : logged;
+  if (context.reading !== null) return attempt(context.reading);
+  const first = attempt({ stamps: base.irregular ? 'as logged' : 'regular', command: 'held' });
+  let best = first;
+  if (!base.irregular && base.jitter_s >= JITTER_SHARE * base.period_s) {
+    const logged = attempt({ stamps: 'as logged', command: 'held' }, first.fit);
+    if (logged.fit.deviance < best.fit.deviance) best = logged;
+  }
+  const between = attempt({ ...best.reading, command: 'between' }, best.fit);
+  return between.fit.deviance < best.fit.deviance - CLEARLY_BETTER ? between : best;
 }
 
 /** Why a fit is no number, or null. */

@@ -6,6 +6,7 @@ import type { Build } from '../craft/build.ts';
 import { AXES, parseGains, type AxisName } from '../craft/gains.ts';
 import { refuse } from '../craft/problem.ts';
 import { findTimeBase, type TimeBase } from './align.ts';
+import type { Reading } from './axisData.ts';
 import { axisCommand_us, motorCommands_us } from './axisCommand.ts';
 import { identifyAxis, type AxisContext, type AxisResult } from './identifyAxis.ts';
 import type { FlightLog } from './log.ts';
@@ -16,8 +17,8 @@ import { usableRows, type LeftOut, type UsableRows } from './usable.ts';
 export interface MatchResult {
   readonly axes: Readonly<Record<AxisName, AxisResult>>;
   readonly timeBase: Omit<TimeBase, 'stretches'>;
-  /** Which times explained the rates better: the stamps as logged, or a regular tick through them. */
-  readonly timesUsed: 'as logged' | 'regular';
+  /** What explained the rates best; null when no axis was fitted. */
+  readonly reading: Reading | null;
   readonly leftOut: readonly LeftOut[];
   readonly offers: readonly Offer[];
   readonly remarks: readonly string[];
@@ -46,16 +47,23 @@ export function matchLog(log: FlightLog, build: Build, options: MatchOptions = {
   const computeDelay_s = computeDelayOf(log);
   const model = modelPlant(build, computeDelay_s);
   const usable = usableRows(log, base, build, model.hoverCommand_us);
-  const context: AxisContext = { log, build, base, usable, times: null, rotor_Hz: meanRotor_Hz(log, usable) };
+  const context: AxisContext = {
+    log,
+    build,
+    base,
+    usable,
+    reading: null,
+    rotor_Hz: meanRotor_Hz(log, usable),
+  };
   const results = new Map<AxisName, AxisResult>();
-  let timesUsed: 'as logged' | 'regular' | null = null;
+  let reading: Reading | null = null;
   const order = AXES.slice().sort((a, b) => liveliness(log, b) - liveliness(log, a));
   order.forEach((axis, i) => {
     report((0.1 + i) / 3.2, axis);
     const u_us = axisCommand_us(log, build, axis);
-    const result = identifyAxis(axis, { ...context, times: timesUsed }, u_us, model[axis]);
+    const result = identifyAxis(axis, { ...context, reading }, u_us, model[axis]);
     // One clock stamped all axes: the liveliest one decides.
-    if (result.timesUsed !== null) timesUsed ??= result.timesUsed;
+    reading ??= result.reading;
     results.set(axis, result);
   });
   report(1, 'done');
@@ -67,10 +75,10 @@ export function matchLog(log: FlightLog, build: Build, options: MatchOptions = {
   return {
     axes,
     timeBase,
-    timesUsed: timesUsed ?? 'as logged',
+    reading,
     leftOut: usable.leftOut,
     offers: merged([...AXES.flatMap((axis) => axes[axis].offers), ...suspectAttitude(log)]),
-    remarks: [...log.remarks, ...remarksOn(base, usable)],
+    remarks: [...log.remarks, ...remarksOn(base, usable, reading)],
     meanCommand_us: meanMotorCommand_us(log, usable),
     model,
     computeDelay_s,
@@ -134,8 +142,13 @@ function merged(offers: readonly Offer[]): Offer[] {
   });
 }
 
-function remarksOn(base: TimeBase, usable: UsableRows): string[] {
+function remarksOn(base: TimeBase, usable: UsableRows, reading: Reading | null): string[] {
   const remarks: string[] = [];
+  if (reading?.command === 'between') {
+    remarks.push(
+      'The commands changed between the rows: the log seems to hold only some of the controller’s ticks. A log of every tick would tell the delay better.',
+    );
+  }
   const rate_Hz = 1 / base.period_s;
   if (base.irregular) {
     remarks.push('The rows follow no regular tick; their times were used as they stand.');

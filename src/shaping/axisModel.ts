@@ -10,9 +10,10 @@ import { AXES, type AxisName } from '../craft/gains.ts';
 import { withoutPayload } from '../craft/payload.ts';
 import { mixerMatrix } from '../control/mixer.ts';
 import { DEG_PER_RAD, RAD_PER_DEG } from '../math/angles.ts';
+import { quaternionFromEuler } from '../math/quaternion.ts';
 import { siteAir } from '../physics/atmosphere.ts';
 import { FlightDynamics } from '../physics/dynamics.ts';
-import { INFLOW, RATES, ROTOR_SPEED, STATE_SIZE } from '../physics/state.ts';
+import { ATTITUDE, INFLOW, RATES, ROTOR_SPEED, STATE_SIZE, VELOCITY } from '../physics/state.ts';
 import { findTrim, HOVER, type Trim } from '../physics/trim.ts';
 import { argument, complex, magnitude, over, times, unit, type Complex } from './complex.ts';
 import { withSensor, type ContinuousSystem, type Plant } from './continuous.ts';
@@ -44,6 +45,11 @@ export interface AxisModel {
   readonly craft: ContinuousSystem;
   /** The same behind the gyro's bandwidth and delay: what the controller sees. */
   readonly measured: ContinuousSystem;
+  /**
+   * `measured` with the tilt and the sideways speed that follow from roll, or pitch and forward speed: true below
+   * some 2 Hz as well, where speed bends the short-term model's phase. Yaw has none.
+   */
+  readonly drifting: ContinuousSystem;
   readonly plant: Plant;
   /** Null where the build gives only a motor lag. */
   readonly current: PatternCurrent | null;
@@ -84,6 +90,8 @@ export function axisModels(build: Build, choice: TrimChoice = {}): Record<AxisNa
 interface Jacobian {
   /** ∂(rate of state i)/∂(state j); i from CURRENT on: the motors' currents. */
   readonly state: (i: number, j: number) => number;
+  /** Per rad of roll, pitch, yaw. */
+  readonly angle: (i: number, axis: number) => number;
   readonly duty: (i: number, motor: number) => number;
   /** Per m/s of air velocity north, east, down. */
   readonly wind: (i: number, direction: number) => number;
@@ -91,17 +99,37 @@ interface Jacobian {
 
 const CURRENT = STATE_SIZE;
 
-/** Central differences; duties last. */
+/** Sink and climb about the trim at which the derivatives are taken and averaged, m/s. */
+const BESIDE_MPS = 1e-3;
+
+/**
+ * The mean of the derivatives a little to either side of level flight: a rotor in climb and one in descent follow
+ * different laws of inflow, and a hovering craft's rotors go to and fro between the two.
+ */
 function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
+  const [up, down] = [-BESIDE_MPS, BESIDE_MPS].map((vd) => differentiateAt(craft, trim, density, vd));
+  return {
+    state: (i, j) => (up.state(i, j) + down.state(i, j)) / 2,
+    angle: (i, j) => (up.angle(i, j) + down.angle(i, j)) / 2,
+    duty: (i, motor) => (up.duty(i, motor) + down.duty(i, motor)) / 2,
+    wind: (i, j) => (up.wind(i, j) + down.wind(i, j)) / 2,
+  };
+}
+
+/** Central differences. */
+function differentiateAt(craft: Craft, trim: Trim, density: number, sink_mps: number): Jacobian {
   const dynamics = new FlightDynamics(craft, density);
   dynamics.groundDown_m = 1e6;
   const s = trim.state.slice();
+  s[VELOCITY + 2] += sink_mps;
   const duty = trim.duty.slice();
   const wind = new Float64Array(3);
+  const angle = new Float64Array(3);
   const rate = new Float64Array(STATE_SIZE);
   const run = (): Float64Array => {
     dynamics.duty.set(duty);
     [dynamics.windNorth_mps, dynamics.windEast_mps, dynamics.windDown_mps] = wind;
+    s.set(quaternionFromEuler(trim.roll_rad + angle[0], trim.pitch_rad + angle[1], angle[2]), ATTITUDE);
     dynamics.prepare(s);
     dynamics.derivative(s, rate);
     // Twice, since a lagged motor's battery sees the loads of the call before.
@@ -117,13 +145,16 @@ function differentiate(craft: Craft, trim: Trim, density: number): Jacobian {
     array[index] = kept;
     return high.map((value, i) => (value - low[i]) / (2 * step));
   };
+  // Steps of velocity and rate stay well inside the sink, so that no difference straddles the two laws.
   const states = Array.from({ length: STATE_SIZE }, (_, j) =>
-    column(s, j, j >= ROTOR_SPEED && j < INFLOW ? 0.05 : 1e-4),
+    column(s, j, j >= ROTOR_SPEED && j < INFLOW ? 0.05 : 1e-5),
   );
+  const angles = [0, 1, 2].map((axis) => column(angle, axis, 1e-5));
   const duties = [0, 1, 2, 3].map((motor) => column(duty, motor, 1e-5));
-  const winds = [0, 1, 2].map((direction) => column(wind, direction, 0.05));
+  const winds = [0, 1, 2].map((direction) => column(wind, direction, 1e-5));
   return {
     state: (i, j) => states[j][i],
+    angle: (i, axis) => angles[axis][i],
     duty: (i, motor) => duties[motor][i],
     wind: (i, direction) => winds[direction][i],
   };
@@ -160,10 +191,34 @@ function axisModel(craft: Craft, jacobian: Jacobian, axis: AxisName): AxisModel 
     commandUpdate_Hz: craft.escUpdate_Hz,
   };
   const { gyro } = craft.build;
+  const behindGyro = (one: ContinuousSystem) => withSensor(one, gyro.bandwidth_Hz, gyro.delay_s);
+  /** Speed along the world axis that tilt about this axis leads to, and the tilt itself, as two more states. */
+  const withDrift = (short: ContinuousSystem): ContinuousSystem => {
+    const speedState = VELOCITY + (axis === 'roll' ? 1 : 0);
+    const A = Matrix.zeros(5, 5);
+    A.setSubMatrix(short.A, 0, 0);
+    A.set(0, 3, jacobian.state(rate, speedState));
+    A.set(1, 3, meanOf(ROTOR_SPEED, speedState));
+    A.set(2, 3, meanOf(INFLOW, speedState));
+    A.setRow(3, [
+      jacobian.state(speedState, rate),
+      sumOver(speedState, speed),
+      sumOver(speedState, inflow),
+      jacobian.state(speedState, speedState),
+      jacobian.angle(speedState, k),
+    ]);
+    A.set(0, 4, jacobian.angle(rate, k));
+    A.set(4, 0, 1);
+    const B = Matrix.zeros(5, 1);
+    B.setSubMatrix(short.B, 0, 0);
+    B.set(3, 0, sumOver(speedState, command));
+    return { ...short, A, B, C: new Matrix([[DEG_PER_RAD, 0, 0, 0, 0]]), disturbance: undefined };
+  };
   const gust = (direction: number) => DEG_PER_RAD * jacobian.wind(rate, direction);
   return {
     craft: system,
-    measured: withSensor(system, gyro.bandwidth_Hz, gyro.delay_s),
+    measured: behindGyro(system),
+    drifting: behindGyro(axis === 'yaw' ? system : withDrift(system)),
     current: !craft.motor.electric
       ? null
       : {

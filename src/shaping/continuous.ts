@@ -122,6 +122,8 @@ export interface SampledSystem {
   /** The body's rate, deg/s. */
   readonly bodyRate: Float64Array;
   readonly wholeTicks: number;
+  /** Share of a tick in which the command before is still in force. */
+  readonly oldShare: number;
   readonly tick_s: number;
   /** det(wI − (Φ − I)). */
   readonly denominator: Float64Array;
@@ -157,6 +159,7 @@ export function sampled(system: ContinuousSystem, tick_s: number): SampledSystem
     disturbance: heldDisturbance(system, tick_s),
     bodyRate: Float64Array.from((system.bodyRate ?? system.C).to1DArray()),
     wholeTicks,
+    oldShare: part_s / tick_s,
     tick_s,
     denominator: adjugate.determinant,
     numeratorNow: numerator(now),

@@ -21,33 +21,51 @@ export function gyroNoise(density: number, bandwidth_Hz: number, loop_Hz: number
 }
 
 const LARGEST_MATRIX = 64;
+const MOST_DOUBLINGS = 60;
 
 /** Standard deviation of the axis command of a stable loop, µs; null when it does not settle. */
 export function noiseAtMotor(loop: RateLoop, noise: GyroNoise): number | null {
   if (loop.layout.size > LARGEST_MATRIX) return noiseBySpectrum(loop, noise);
+  const noisy = noisyLoop(loop, noise);
+  const covariance = stationary(noisy);
+  return covariance === null ? null : deviation(covariance, noisy.command);
+}
+
+/** The closed loop with one more state, the noise itself: x ← F x + drive on the last; row that gives u. */
+export interface NoisyLoop {
+  readonly size: number;
+  readonly F: Float64Array;
+  readonly drive: number;
+  readonly command: Float64Array;
+}
+
+export function noisyLoop(loop: RateLoop, noise: GyroNoise): NoisyLoop {
   const { A, noiseIn, commandOut, noiseToCommand } = closedLoopMatrices(loop);
   const n = A.rows + 1;
   const F = new Float64Array(n * n);
-  const row = new Float64Array(n);
+  const command = new Float64Array(n);
   for (let i = 0; i < n - 1; i++) {
     for (let j = 0; j < n - 1; j++) F[i * n + j] = A.get(i, j);
     F[i * n + n - 1] = noiseIn.get(i, 0);
-    row[i] = commandOut.get(0, i);
+    command[i] = commandOut.get(0, i);
   }
   F[n * n - 1] = noise.correlation;
-  row[n - 1] = noiseToCommand;
-  return deviation(F, row, n, noise.sigma_dps ** 2 * (1 - noise.correlation ** 2));
+  command[n - 1] = noiseToCommand;
+  return { size: n, F, drive: noise.sigma_dps ** 2 * (1 - noise.correlation ** 2), command };
 }
 
+/** Whether the covariance of this loop is small enough to be worked out. */
+export const hasCovariance = (loop: RateLoop): boolean => loop.layout.size <= LARGEST_MATRIX;
+
 /**
- * √(r Σ rᵀ) with Σ = F Σ Fᵀ + drive on the last state, by doubling: Σ ← Σ + S Σ Sᵀ, S ← S².
- * @returns null when the sum does not settle
+ * Σ = F Σ Fᵀ + drive, by doubling: Σ ← Σ + S Σ Sᵀ, S ← S².
+ * @returns row by row; null when the sum does not settle
  */
-export function deviation(F: Float64Array, row: Float64Array, n: number, drive: number): number | null {
+export function stationary({ size: n, F, drive }: NoisyLoop): Float64Array | null {
   let step = F;
-  let sum: Float64Array = new Float64Array(n * n);
+  const sum = new Float64Array(n * n);
   sum[n * n - 1] = drive;
-  for (let k = 0; k < 60; k++) {
+  for (let k = 0; k < MOST_DOUBLINGS; k++) {
     const add = sandwich(step, sum, n);
     let most = 0;
     let change = 0;
@@ -57,11 +75,17 @@ export function deviation(F: Float64Array, row: Float64Array, n: number, drive: 
       change = Math.max(change, Math.abs(add[i]));
     }
     if (!(most < 1e60)) return null;
-    if (change <= 1e-13 * most) break;
+    if (change <= 1e-13 * most) return sum;
     step = product(step, step, n);
   }
+  return null;
+}
+
+/** √(r Σ rᵀ). */
+export function deviation(covariance: Float64Array, row: Float64Array): number | null {
+  const n = row.length;
   let variance = 0;
-  for (let i = 0; i < n; i++) for (let j = 0; j < n; j++) variance += row[i] * sum[i * n + j] * row[j];
+  for (let i = 0; i < n; i++) for (let j = 0; j < n; j++) variance += row[i] * covariance[i * n + j] * row[j];
   return variance >= 0 && Number.isFinite(variance) ? Math.sqrt(variance) : null;
 }
 

@@ -3,9 +3,9 @@
  * that matrix large without making the loop hard: then the poles that matter are found by Newton's method on
  * 1 + L = 0 from the frequency axis, and stability by counting the turns of 1 + L about 0 (Nyquist).
  */
-import { EigenvalueDecomposition } from 'ml-matrix';
-import { argument, complex, magnitude, over, plus, type Complex } from './complex.ts';
-import { closedLoopMatrices, openLoopAtPlace, type RateLoop } from './rateLoop.ts';
+import { EigenvalueDecomposition, type Matrix } from 'ml-matrix';
+import { argument, complex, magnitude, over, plus, times, type Complex } from './complex.ts';
+import { closedLoopMatrices, partsAt, placeAt, type Place, type RateLoop } from './rateLoop.ts';
 
 export interface Pole {
   readonly re: number;
@@ -23,9 +23,37 @@ export interface Poles {
 const ON_CIRCLE = 1e-9;
 const LARGEST_MATRIX = 64;
 
+/** What poles are found from: the transition matrix, or L where that would be too large. */
+export interface PoleSource {
+  readonly size: number;
+  readonly transition: () => Matrix;
+  readonly openLoop: (at: Place) => Complex;
+  readonly wholeTicks: number;
+  /** Nothing feeds the plant's integrator back: its pole at 1 stays, unseen by L. */
+  readonly unheld: boolean;
+}
+
 export function closedLoopPoles(loop: RateLoop): Poles {
-  if (loop.layout.size > LARGEST_MATRIX) return polesOfLongLoop(loop);
-  const { realEigenvalues, imaginaryEigenvalues } = new EigenvalueDecomposition(closedLoopMatrices(loop).A);
+  return polesOf(sourceOf(loop));
+}
+
+/** The rate loop by itself. */
+export function sourceOf(loop: RateLoop): PoleSource {
+  return {
+    size: loop.layout.size,
+    transition: () => closedLoopMatrices(loop).A,
+    openLoop: (at) => {
+      const { plant, feedback } = partsAt(loop, at);
+      return times(plant, feedback);
+    },
+    wholeTicks: loop.plant.wholeTicks,
+    unheld: loop.p === 0 && loop.i === 0,
+  };
+}
+
+export function polesOf(source: PoleSource): Poles {
+  if (source.size > LARGEST_MATRIX) return polesOfLongLoop(source);
+  const { realEigenvalues, imaginaryEigenvalues } = new EigenvalueDecomposition(source.transition());
   const poles = realEigenvalues.map((re, i) => ({ re, im: imaginaryEigenvalues[i] }));
   const maxRadius = largestRadius(poles);
   return { poles, maxRadius, stable: maxRadius < 1 - ON_CIRCLE };
@@ -39,10 +67,10 @@ const STARTS = 120;
 const NEWTON_STEPS = 40;
 
 /** For loops whose delay is many ticks; also what the small ones are checked against. */
-export function polesOfLongLoop(loop: RateLoop): Poles {
+export function polesOfLongLoop(source: PoleSource): Poles {
   const found: Complex[] = [];
   const keep = (start: Complex) => {
-    const s = newton(loop, start);
+    const s = newton(source, start);
     if (s !== null && !found.some((one) => distance(one, s) < 1e-7 * magnitude(s) + 1e-12)) found.push(s);
   };
   for (let k = 0; k < STARTS; k++) {
@@ -56,13 +84,13 @@ export function polesOfLongLoop(loop: RateLoop): Poles {
     return Math.abs(pole.im) < 1e-12 ? [{ re: pole.re, im: 0 }] : [pole, { re: pole.re, im: -pole.im }];
   });
   // Without proportional and integral action the plant's own integrator stays, cancelled in L.
-  const unheld = loop.p === 0 && loop.i === 0 ? [{ re: 1, im: 0 }] : [];
+  const unheld = source.unheld ? [{ re: 1, im: 0 }] : [];
   const all = [...poles, ...unheld];
   const maxRadius = largestRadius(all);
   return {
     poles: all,
     maxRadius,
-    stable: unheld.length === 0 && unstablePoles(loop) === 0 && maxRadius < 1 - ON_CIRCLE,
+    stable: unheld.length === 0 && unstablePoles(source) === 0 && maxRadius < 1 - ON_CIRCLE,
   };
 }
 
@@ -71,8 +99,8 @@ function distance(a: Complex, b: Complex): number {
 }
 
 /** Root of 1 + L at z = e^s near `start`; null when there is none to be reached. */
-function newton(loop: RateLoop, start: Complex): Complex | null {
-  const f = (s: Complex) => plus(openLoopAtPlace(loop, s.re, s.im), complex(1));
+function newton(source: PoleSource, start: Complex): Complex | null {
+  const f = (s: Complex) => plus(source.openLoop(placeAt(s.re, s.im)), complex(1));
   let s = start;
   for (let k = 0; k < NEWTON_STEPS; k++) {
     const size = magnitude(s);
@@ -96,8 +124,8 @@ const FIRST_POINTS = 600;
 const MOST_HALVINGS = 40;
 
 /** Closed-loop poles outside the unit circle, by the argument of 1 + L along its upper half. */
-function unstablePoles(loop: RateLoop): number {
-  const at = (s: Complex) => plus(openLoopAtPlace(loop, s.re, s.im), complex(1));
+function unstablePoles(source: PoleSource): number {
+  const at = (s: Complex) => plus(source.openLoop(placeAt(s.re, s.im)), complex(1));
   const turned = (from: Complex, to: Complex, a: Complex, b: Complex, depth: number): number => {
     const step = argument(over(b, a));
     if (depth === 0 || (Math.abs(step) < 0.5 && depth < MOST_HALVINGS)) return step;
@@ -111,7 +139,7 @@ function unstablePoles(loop: RateLoop): number {
     const angle = (Math.PI / 2) * (k / 16);
     path.push(complex(ARC * Math.cos(angle), ARC * Math.sin(angle)));
   }
-  const linear = Math.min(80_000, 8 * (loop.plant.wholeTicks + 1));
+  const linear = Math.min(80_000, 8 * (source.wholeTicks + 1));
   const thetas = [
     ...Array.from({ length: FIRST_POINTS }, (_, k) => ARC * (Math.PI / ARC) ** ((k + 1) / FIRST_POINTS)),
     ...Array.from({ length: linear }, (_, k) => (Math.PI * (k + 1)) / (linear + 1)),

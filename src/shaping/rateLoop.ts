@@ -125,14 +125,14 @@ function filterAt(filters: readonly BiquadCoefficients[], z: Complex): Complex {
 }
 
 /** A place z = e^{ln r + jθ} with w = z − 1, which does not cancel near 1. */
-interface Place {
+export interface Place {
   readonly logRadius: number;
   readonly theta: number;
   readonly z: Complex;
   readonly w: Complex;
 }
 
-function onCircle(theta: number): Place {
+export function onCircle(theta: number): Place {
   const half = Math.sin(theta / 2);
   return { logRadius: 0, theta, z: unit(theta), w: complex(-2 * half * half, Math.sin(theta)) };
 }
@@ -183,13 +183,27 @@ export function openLoopAt(loop: RateLoop, omega: number): Complex {
   return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
 }
 
-/** L at any z = e^{ln r + jθ}: for poles. */
-export function openLoopAtPlace(loop: RateLoop, logRadius: number, theta: number): Complex {
+/** Any z = e^{ln r + jθ}: for poles. */
+export function placeAt(logRadius: number, theta: number): Place {
   const half = Math.sin(theta / 2);
   const grown = Math.expm1(logRadius);
   const w = complex(grown * Math.cos(theta) - 2 * half * half, (1 + grown) * Math.sin(theta));
-  const at = { logRadius, theta, z: complex(1 + w.re, w.im), w };
-  return times(plantAt(loop.plant, at), times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)));
+  return { logRadius, theta, z: complex(1 + w.re, w.im), w };
+}
+
+/** The loop's parts at one place: u to measured rate, measured rate to −u, setpoint to u. */
+export interface Parts {
+  readonly plant: Complex;
+  readonly feedback: Complex;
+  readonly forward: Complex;
+}
+
+export function partsAt(loop: RateLoop, at: Place): Parts {
+  return {
+    plant: plantAt(loop.plant, at),
+    feedback: times(filterAt(loop.gyroFilters, at.z), controllerAt(loop, at)),
+    forward: forwardAt(loop, at),
+  };
 }
 
 /** Measured rate to −u: gyro filters and controller. */
@@ -200,15 +214,11 @@ export function feedbackAt(loop: RateLoop, omega: number): Complex {
 
 /** Setpoint to plant output at `omega`. */
 export function closedLoopAt(loop: RateLoop, omega: number): Complex {
-  const at = onCircle(omega * loop.tick_s);
-  return over(times(plantAt(loop.plant, at), forwardAt(loop, at)), plus(complex(1), openLoopAt(loop, omega)));
+  const { plant, feedback, forward } = partsAt(loop, onCircle(omega * loop.tick_s));
+  return over(times(plant, forward), plus(complex(1), times(plant, feedback)));
 }
 
 /** Setpoint to u with the feedback cut. */
-export function setpointToCommandAt(loop: RateLoop, omega: number): Complex {
-  return forwardAt(loop, onCircle(omega * loop.tick_s));
-}
-
 function forwardAt(loop: RateLoop, at: Place): Complex {
   const onMeasurement = loop.derivativeOnError ? complex(0) : scaled(derivativeAt(loop, at), -1);
   return plus(

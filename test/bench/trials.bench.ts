@@ -20,10 +20,17 @@ function subject() {
   return { build: parseBuild(raw('sandpiper.build')), gains: parseGains(raw('sandpiper.gains')) };
 }
 
-/** Wall time of `count` flights of 8 s over threads, from the first answer on: starting them is not the work. */
-async function flightsOver(workers: number, count: number): Promise<number> {
+interface Took {
+  readonly wall_s: number;
+  /** Processor time of all threads, which other programs on the machine do not add to. */
+  readonly cpu_s: number;
+}
+
+/** `count` flights of 8 s over threads, once they are warm: starting them is not the work. */
+async function flightsOver(workers: number, count: number): Promise<Took> {
   const { build, gains } = subject();
   let begun_ms = 0;
+  let begun = process.cpuUsage();
   const taskAt = (index: number): TrialTask => ({ build, gains, trial: 'gust-and-noise', seed: index });
   // Each worker's first flights are compiled as they go; they are flown but not counted.
   const warm = 6 * workers;
@@ -32,24 +39,33 @@ async function flightsOver(workers: number, count: number): Promise<number> {
     count: count + warm,
     taskAt,
     hear: () => {
-      if (++done === warm) begun_ms = performance.now();
+      if (++done !== warm) return;
+      begun_ms = performance.now();
+      begun = process.cpuUsage();
     },
   }).done;
-  return (performance.now() - begun_ms) / 1000;
+  const { user, system } = process.cpuUsage(begun);
+  return { wall_s: (performance.now() - begun_ms) / 1000, cpu_s: (user + system) / 1e6 };
 }
 
 async function twoOverOne(): Promise<void> {
-  const count = 120;
+  const count = 80;
   const rounds = [];
   for (let round = 0; round < 3; round++) {
     const one = await flightsOver(1, count);
     const two = await flightsOver(2, count);
-    rounds.push({ one, two, ratio: one / two });
+    rounds.push({ one, two, ratio: one.wall_s / two.wall_s });
   }
-  const best = rounds.reduce((a, b) => (b.ratio > a.ratio ? b : a));
-  console.log(`${count} flights of 8 s: one worker ${best.one.toFixed(2)} s, two ${best.two.toFixed(2)} s`);
+  const { one, two, ratio } = rounds.reduce((a, b) => (b.ratio > a.ratio ? b : a));
   console.log(
-    `  ratio two/one: ${rounds.map(({ ratio }) => ratio.toFixed(2)).join(', ')}, best ${best.ratio.toFixed(2)} (wanted 1.8)`,
+    `${count} flights of 8 s: one worker ${one.wall_s.toFixed(2)} s, two ${two.wall_s.toFixed(2)} s`,
+  );
+  console.log(
+    `  ratio: ${rounds.map((round) => round.ratio.toFixed(2)).join(', ')}, best ${ratio.toFixed(2)} (wanted 1.8)`,
+  );
+  const share = one.cpu_s / one.wall_s;
+  console.log(
+    `  processor time: one ${one.cpu_s.toFixed(2)} s, two ${two.cpu_s.toFixed(2)} s; one worker had ${(100 * share).toFixed(0)} % of a core${share < 0.9 ? ': the machine is busy, the ratio says little' : ''}`,
   );
 }
 
