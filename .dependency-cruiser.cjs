@@ -28,8 +28,18 @@ const upward = order.slice(0, -1).map((name, level) => ({
   to: { path: `^src/(${order.slice(level + 1).join('|')})/` },
 }));
 const separate = apart.flatMap(([a, b]) => [
-  { name: `${a}-apart-from-${b}`, severity: 'error', from: { path: `^src/${a}/` }, to: { path: `^src/${b}/` } },
-  { name: `${b}-apart-from-${a}`, severity: 'error', from: { path: `^src/${b}/` }, to: { path: `^src/${a}/` } },
+  {
+    name: `${a}-apart-from-${b}`,
+    severity: 'error',
+    from: { path: `^src/${a}/` },
+    to: { path: `^src/${b}/` },
+  },
+  {
+    name: `${b}-apart-from-${a}`,
+    severity: 'error',
+    from: { path: `^src/${b}/` },
+    to: { path: `^src/${a}/` },
+  },
 ]);
 module.exports = {
   forbidden: [
@@ -49,7 +59,12 @@ module.exports = {
       from: { path: '^src/', pathNot: '^src/app/' },
       to: { path: 'node_modules/(three|lil-gui|preact|uplot|idb)/' },
     },
-    { name: 'source-never-imports-tests', severity: 'error', from: { path: '^src/' }, to: { path: '^test/' } },
+    {
+      name: 'source-never-imports-tests',
+      severity: 'error',
+      from: { path: '^src/' },
+      to: { path: '^test/' },
+    },
   ],
   options: {
     doNotFollow: { path: 'node_modules' },

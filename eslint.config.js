@@ -1,7 +1,16 @@
 import tseslint from 'typescript-eslint';
 
 export default tseslint.config(
-  { ignores: ['dist', 'node_modules', 'test/reference', '**/*.mjs', '.dependency-cruiser.cjs', 'eslint.config.js'] },
+  {
+    ignores: [
+      'dist',
+      'node_modules',
+      'test/reference',
+      '**/*.mjs',
+      '.dependency-cruiser.cjs',
+      'eslint.config.js',
+    ],
+  },
   ...tseslint.configs.recommended,
   {
     languageOptions: { parserOptions: { projectService: true } },

@@ -23,7 +23,10 @@ export default defineConfig({
         theme_color: '#F6F4EE',
         icons: [{ src: 'icon.svg', sizes: 'any', type: 'image/svg+xml', purpose: 'any' }],
       },
-      workbox: { globPatterns: ['**/*.{js,css,html,svg,json,webmanifest}'], maximumFileSizeToCacheInBytes: 4_000_000 },
+      workbox: {
+        globPatterns: ['**/*.{js,css,html,svg,json,webmanifest}'],
+        maximumFileSizeToCacheInBytes: 4_000_000,
+      },
     }),
   ],
   test: {

@@ -11,12 +11,13 @@ import { matchLog, type MatchResult } from '../matching/matchLog.ts';
 import type { AxisResult } from '../matching/identifyAxis.ts';
 import { readHead, readLog, type LogSource } from '../matching/readLog.ts';
 import { HORIZON_S } from '../matching/validation.ts';
-import { DONE, printJson, readBuild, readJson, runVerb, writeText } from './io.ts';
+import { DONE, numberOption, printJson, readBuild, readJson, runVerb, writeText } from './io.ts';
 
 interface MatchCliOptions {
   build: string;
   log: string;
   columns?: string;
+  loop?: string;
   json?: boolean;
   out?: string;
 }
@@ -30,6 +31,7 @@ export function addMatchCommand(program: Command): void {
     .requiredOption('--build <file>', 'build file')
     .requiredOption('--log <file>', 'log: CSV, JSON lines, or a record of the bench')
     .option('--columns <file>', 'which column is what; a record of the bench needs none')
+    .option('--loop <Hz>', 'rate of the controller, when the log holds only some of its ticks')
     .option('--json', 'print one JSON object')
     .option('--out <file>', 'corrected build to write')
     .action((options: MatchCliOptions) => runVerb(() => match(options)));
@@ -39,6 +41,8 @@ async function match(options: MatchCliOptions): Promise<number> {
   const build = readBuild(options.build);
   const given =
     options.columns === undefined ? null : parseColumns(readJson(options.columns), options.columns);
+  const loop =
+    options.loop === undefined ? {} : { loop_Hz: numberOption('loop', options.loop, 20, 20_000, 'Hz') };
   const source = fileSource(options.log);
   const proposal = inspectLog(await readHead(source), options.log);
   const columns = chooseColumns(options, proposal, given);
@@ -48,11 +52,14 @@ async function match(options: MatchCliOptions): Promise<number> {
     onProgress: (share) => tell(`reading ${(100 * share).toFixed(0)} %`),
   });
   const result = tryMatch(options, build, () =>
-    matchLog(log, build, { onProgress: (_share, doing) => tell(`matching: ${doing}`) }),
+    matchLog(log, build, { ...loop, onProgress: (_share, doing) => tell(`matching: ${doing}`) }),
   );
   const corrected = tryMatch(options, build, () => correctedBuild(build, result, options.log));
   if (options.out !== undefined && corrected.build !== null) {
     writeText(options.out, [`${JSON.stringify(corrected.build, null, 2)}\n`]);
+  }
+  if (options.out !== undefined && corrected.build === null) {
+    process.stderr.write(`${options.out} was not written: ${corrected.kept.join(' ')}\n`);
   }
   if (options.json === true) printJson(asJson(options, log.t_s, result, corrected));
   else describe(options, result, corrected);

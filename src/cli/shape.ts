@@ -14,7 +14,7 @@ import {
   type AxisReport,
   type ShapeReport,
 } from '../shaping/report.ts';
-import { startingGains } from '../shaping/startingGains.ts';
+import { amigoGains, simcGains, startingGains, type AxisGainsFound } from '../shaping/startingGains.ts';
 import { DONE, numberOption, printJson, readBuild, readGains, runVerb } from './io.ts';
 
 interface ShapeOptions {
@@ -82,7 +82,8 @@ function shape(options: ShapeOptions): number {
       ? reportForPlant(readPlant(options.plant), gains, noise)
       : atTrim(options, (choice) => reportForBuild(readBuild(options.build ?? ''), gains, choice));
   if (options.json === true) {
-    const density = options.plant === undefined ? readBuild(options.build ?? '').gyro.noise_dps_per_rtHz : noise;
+    const density =
+      options.plant === undefined ? readBuild(options.build ?? '').gyro.noise_dps_per_rtHz : noise;
     // Each axis by its own name and, as `match` gives them, under `axes`.
     printJson({ ...report, axes: report, loop_Hz: gains.loop_Hz, noise_dps_per_rtHz: density });
   } else describe(report);
@@ -104,7 +105,7 @@ const DEFAULT_GAINS: Gains = parseGains({
 });
 
 function start(options: ShapeOptions, gains: Gains, noiseDensity: number): number {
-  const { systems, noise } = systemsOf(options, gains, noiseDensity);
+  const { systems, plants, noise } = systemsOf(options, gains, noiseDensity);
   let found;
   try {
     found = startingGains(systems, gains, noise);
@@ -116,16 +117,31 @@ function start(options: ShapeOptions, gains: Gains, noiseDensity: number): numbe
   for (const axis of AXES) {
     const one = found.axes[axis];
     process.stderr.write(`${axis}: limited by ${one.active}; loosened by ${one.loosenedBy}\n`);
+    const [best] = one.loosening;
+    if (best !== undefined && best.gain_pct >= 1)
+      process.stderr.write(`  most by ${best.change}: I ${Math.round(best.gain_pct)} % higher\n`);
+    process.stderr.write(`  found  ${gainsLine(one)}\n`);
+    // The rules are made for a lag; a plant without one gets the same numbers with no derivative.
+    const extra_s = gains.computeDelay_s + (systems[axis].delay_s - plants[axis].delay_s);
+    process.stderr.write(`  SIMC   ${gainsLine(simcGains(plants[axis], 1 / gains.loop_Hz, extra_s))}\n`);
+    process.stderr.write(`  AMIGO  ${gainsLine(amigoGains(plants[axis], 1 / gains.loop_Hz, extra_s))}\n`);
   }
   process.stderr.write('A simulated result is no clearance to fly.\n');
   process.stdout.write(`${JSON.stringify(found.gains, null, options.json === true ? 0 : 2)}\n`);
   return DONE;
 }
 
+function gainsLine(found: AxisGainsFound): string {
+  const shown = (value: number) => Number(value.toPrecision(3));
+  return `P ${shown(found.p_us_per_dps)} µs/(deg/s), I ${shown(found.i_us_per_deg)} µs/deg, D ${shown(found.d_us_per_dps2)} µs/(deg/s²)`;
+}
+
 function systemsOf(options: ShapeOptions, gains: Gains, noiseDensity: number) {
   if (options.plant !== undefined) {
-    const system = plantSystem(readPlant(options.plant));
+    const plant = readPlant(options.plant);
+    const system = plantSystem(plant);
     return {
+      plants: { roll: plant, pitch: plant, yaw: plant } satisfies Record<AxisName, Plant>,
       systems: { roll: system, pitch: system, yaw: system } satisfies Record<AxisName, ContinuousSystem>,
       noise: gyroNoise(noiseDensity, 0, gains.loop_Hz),
     };
@@ -133,6 +149,7 @@ function systemsOf(options: ShapeOptions, gains: Gains, noiseDensity: number) {
   const build = readBuild(options.build ?? '');
   const models = atTrim(options, (choice) => axisModels(build, choice));
   return {
+    plants: { roll: models.roll.plant, pitch: models.pitch.plant, yaw: models.yaw.plant },
     systems: { roll: models.roll.measured, pitch: models.pitch.measured, yaw: models.yaw.measured },
     noise: gyroNoise(build.gyro.noise_dps_per_rtHz, build.gyro.bandwidth_Hz, gains.loop_Hz),
   };
@@ -163,6 +180,7 @@ function atTrim<T>(options: ShapeOptions, run: (choice: TrimChoice) => T): T {
 function describe(report: ShapeReport): void {
   const shown = (value: number | null, unit: string, digits = 3) =>
     value === null ? '—' : `${Number(value.toPrecision(digits))} ${unit}`;
+  const millis = (value: number | null) => (value === null ? null : value * 1000);
   const rows: [string, (axis: AxisReport) => string][] = [
     ['plant gain', (a) => shown(a.plant.gain_dps2_per_us, 'deg/s²/µs')],
     ['plant lag', (a) => shown(a.plant.lag_s * 1000, 'ms')],
@@ -175,7 +193,13 @@ function describe(report: ShapeReport): void {
     ['rise 10–90 %', (a) => shown(a.step.rise_s === null ? null : a.step.rise_s * 1000, 'ms')],
     ['overshoot', (a) => shown(a.step.overshoot_pct, '%')],
     ['settling 2 %', (a) => shown(a.step.settle_s === null ? null : a.step.settle_s * 1000, 'ms')],
+    ['bandwidth', (a) => shown(a.handling?.bandwidth_Hz ?? null, 'Hz')],
+    ['phase delay', (a) => shown(millis(a.handling?.phaseDelay_s ?? null), 'ms')],
+    ['rejects below', (a) => shown(a.disturbanceRejection?.bandwidth_Hz ?? null, 'Hz')],
+    ['push leaves', (a) => shown(a.push?.lastingAngle_deg ?? null, 'deg')],
     ['noise at motors', (a) => shown(a.noiseAtMotor_us_rms, 'µs rms')],
+    ['heat by noise', (a) => shown(millis(a.noiseHeat_W), 'mW a motor')],
+    ['levelled PM', (a) => shown(a.levelled?.phaseMarginAtMotors_deg ?? null, 'deg')],
   ];
   const lines = [['', ...AXES].map((cell) => cell.padEnd(18)).join('')];
   for (const [name, cell] of rows)

@@ -4,7 +4,7 @@ import { parseWith } from './fields.ts';
 import { checkPlausible } from './plausible.ts';
 
 export { BUILD_FORMAT, buildSchema, CORNERS, isElectric } from './buildSchema.ts';
-export type { Build, Corner, Payload } from './buildSchema.ts';
+export type { Build, Corner } from './buildSchema.ts';
 
 /**
  * Validates a build: form, then physical plausibility.

@@ -199,8 +199,6 @@ export const buildSchema = z.strictObject(
 
 export type Build = z.output<typeof buildSchema>;
 export type ElectricMotor = z.output<typeof electricMotor>;
-export type LaggedMotor = z.output<typeof laggedMotor>;
-export type Payload = z.output<typeof payload>;
 
 export function isElectric(motor: Build['motor']): motor is ElectricMotor {
   return 'kv_rpm_per_V' in motor;

@@ -17,20 +17,6 @@ import type { NoiseParameters } from './disturbanceFilter.ts';
  */
 const WORTH_A_TERM = 15;
 
-/**
- * Fits the plant to all pieces together; a lead or a damping is added where the log clearly asks for it.
- * @param start where the search begins
- * @param other a second place to begin from, with its lead (a build's own plant)
- */
-export function fitAxis(
-  pieces: readonly AxisPiece[],
-  start: PlantParameters,
-  offered: readonly OptionalTerm[] = [],
-  other?: PlantParameters,
-): AxisFit {
-  return withTerms(pieces, fitPlain(pieces, start), offered, other);
-}
-
 /** Gain, lag and delay alone. */
 export function fitPlain(
   pieces: readonly AxisPiece[],

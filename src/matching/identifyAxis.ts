@@ -30,8 +30,6 @@ const LARGEST_LAG_ERROR = 0.6;
 const LARGEST_DELAY_ERROR_S = 0.006;
 /** Stamps that jitter by less than this share of the period are regular. */
 const JITTER_SHARE = 0.01;
-/** Drop of the deviance that the less usual reading of the commands must bring. */
-const CLEARLY_BETTER = 20;
 /** Without a moving setpoint the model must explain this much of the rate's power between 0.7 and 10 Hz. */
 const LEAST_EXPLAINED = 0.75;
 
@@ -42,6 +40,9 @@ export interface AxisContext {
   readonly usable: UsableRows;
   /** Null while it is not known which is right. */
   readonly reading: Reading | null;
+  readonly command: Reading['command'];
+  /** Tick of the controller, s. */
+  readonly tick_s: number;
   readonly rotor_Hz: number | null;
 }
 
@@ -135,7 +136,9 @@ function fitParts(
   const plant = plantOf(fit);
   const held = piecesOf(rest, chosen.reading);
   const partial = { ...NOTHING, response, leftOut: parts.leftOut, reading: chosen.reading };
-  const estimates = reducedEstimates(fit);
+  // Held from tick to tick, a command acts half a tick later than the mean between two rows does.
+  const hold_s = chosen.reading.command === 'between' ? context.tick_s / 2 : 0;
+  const estimates = reducedEstimates(fit, hold_s);
   if (!(fit.gain_dps2_per_us.value > 0) && bySetpoint) {
     const offer = turnedSign(axis);
     return { ...partial, offers: [offer], note: `No numbers: ${offer.because}` };
@@ -180,8 +183,8 @@ interface ReadFit {
 }
 
 /**
- * Fits with the readings that are possible; the likelihood decides. That the command went on between rows is
- * taken only on clear evidence: most logs hold every tick.
+ * Fits with the stamps as logged and, if they jitter, on the regular tick; the likelihood decides. Whether the
+ * command went on between rows the likelihood cannot tell from a delay: the loop rate says it.
  */
 function bestReading(
   context: AxisContext,
@@ -195,14 +198,14 @@ function bestReading(
     return { reading, fit: fitPlain(pieces, start, from?.noise), pieces };
   };
   if (context.reading !== null) return attempt(context.reading);
-  const first = attempt({ stamps: base.irregular ? 'as logged' : 'regular', command: 'held' });
+  const { command } = context;
+  const first = attempt({ stamps: base.irregular ? 'as logged' : 'regular', command });
   let best = first;
   if (!base.irregular && base.jitter_s >= JITTER_SHARE * base.period_s) {
-    const logged = attempt({ stamps: 'as logged', command: 'held' }, first.fit);
+    const logged = attempt({ stamps: 'as logged', command }, first.fit);
     if (logged.fit.deviance < best.fit.deviance) best = logged;
   }
-  const between = attempt({ ...best.reading, command: 'between' }, best.fit);
-  return between.fit.deviance < best.fit.deviance - CLEARLY_BETTER ? between : best;
+  return best;
 }
 
 /** Why a fit is no number, or null. */

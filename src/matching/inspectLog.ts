@@ -3,7 +3,6 @@
  * the reason for each, for the user to confirm. Nothing here is certain unless it says so.
  */
 import Papa from 'papaparse';
-import { CORNERS } from '../craft/build.ts';
 import { refuse, showValue } from '../craft/problem.ts';
 import { recogniseHead, type RecognisedHead } from '../measuring/heads.ts';
 import { missingSignals, ownColumns, UNITS, SIGNALS, type ColumnChoice, type Columns } from './columns.ts';
@@ -296,9 +295,4 @@ function timeUnit(values: readonly number[]): UnitGuess {
     }
   }
   return { unit: 's', because: 'the step from row to row fits no usual rate', sure: false };
-}
-
-/** Corners whose command column is missing: motors named by number are for the user to place. */
-export function unplacedMotors(columns: Columns): string[] {
-  return CORNERS.filter((corner) => columns[`cmd_${corner}`] === undefined);
 }

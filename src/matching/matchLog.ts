@@ -3,7 +3,7 @@
  * fit, a piece held back to check it on, and sentences on where the model fails.
  */
 import type { Build } from '../craft/build.ts';
-import { AXES, parseGains, type AxisName } from '../craft/gains.ts';
+import { AXES, parseGains, type AxisName, type Gains } from '../craft/gains.ts';
 import { refuse } from '../craft/problem.ts';
 import { findTimeBase, type TimeBase } from './align.ts';
 import type { Reading } from './axisData.ts';
@@ -30,8 +30,13 @@ export interface MatchResult {
 }
 
 export interface MatchOptions {
+  /** Rate of the controller that flew, where it is known; a record of the bench says it. */
+  readonly loop_Hz?: number;
   readonly onProgress?: (share: number, doing: string) => void;
 }
+
+/** A controller that is faster than the rows by this ratio was logged only in part. */
+const THINNED_RATIO = 1.4;
 
 /**
  * Identifies all three axes.
@@ -44,7 +49,10 @@ export function matchLog(log: FlightLog, build: Build, options: MatchOptions = {
   if (base.stretches.length === 0) {
     throw refuse(log.name, 't', 'pauses all over', 'at least 32 rows that follow each other');
   }
-  const computeDelay_s = computeDelayOf(log);
+  const flown = flownGains(log);
+  const computeDelay_s = flown?.computeDelay_s ?? 0;
+  const loop_Hz = options.loop_Hz ?? flown?.loop_Hz ?? null;
+  const thinned = loop_Hz !== null && loop_Hz * base.period_s > THINNED_RATIO;
   const model = modelPlant(build, computeDelay_s);
   const usable = usableRows(log, base, build, model.hoverCommand_us);
   const context: AxisContext = {
@@ -53,6 +61,8 @@ export function matchLog(log: FlightLog, build: Build, options: MatchOptions = {
     base,
     usable,
     reading: null,
+    command: thinned ? 'between' : 'held',
+    tick_s: loop_Hz === null ? base.period_s : 1 / loop_Hz,
     rotor_Hz: meanRotor_Hz(log, usable),
   };
   const results = new Map<AxisName, AxisResult>();
@@ -78,20 +88,20 @@ export function matchLog(log: FlightLog, build: Build, options: MatchOptions = {
     reading,
     leftOut: usable.leftOut,
     offers: merged([...AXES.flatMap((axis) => axes[axis].offers), ...suspectAttitude(log)]),
-    remarks: [...log.remarks, ...remarksOn(base, usable, reading)],
+    remarks: [...log.remarks, ...remarksOn(base, usable, build, loop_Hz)],
     meanCommand_us: meanMotorCommand_us(log, usable),
     model,
     computeDelay_s,
   };
 }
 
-function computeDelayOf(log: FlightLog): number {
-  if (log.gainsJson === undefined) return 0;
+/** Gains of a record's header; null when there are none, or were edited beyond reading. */
+function flownGains(log: FlightLog): Gains | null {
+  if (log.gainsJson === undefined) return null;
   try {
-    return parseGains(JSON.parse(log.gainsJson), log.name).computeDelay_s;
+    return parseGains(JSON.parse(log.gainsJson), log.name);
   } catch {
-    // A record's header that was edited says nothing; the fit needs it only for the delay's share.
-    return 0;
+    return null;
   }
 }
 
@@ -142,19 +152,23 @@ function merged(offers: readonly Offer[]): Offer[] {
   });
 }
 
-function remarksOn(base: TimeBase, usable: UsableRows, reading: Reading | null): string[] {
+function remarksOn(base: TimeBase, usable: UsableRows, build: Build, loop_Hz: number | null): string[] {
   const remarks: string[] = [];
-  if (reading?.command === 'between') {
-    remarks.push(
-      'The commands changed between the rows: the log seems to hold only some of the controller’s ticks. A log of every tick would tell the delay better.',
-    );
-  }
   const rate_Hz = 1 / base.period_s;
   if (base.irregular) {
     remarks.push('The rows follow no regular tick; their times were used as they stand.');
   } else if (base.lostRows > 0) {
     remarks.push(
       `${base.lostRows} rows were lost from a tick of ${rate_Hz.toFixed(0)} Hz; they were bridged.`,
+    );
+  }
+  if (loop_Hz !== null && loop_Hz * base.period_s > THINNED_RATIO) {
+    remarks.push(
+      `The log holds ${rate_Hz.toFixed(0)} of ${loop_Hz.toFixed(0)} ticks a second; a log of every tick tells lag and delay better.`,
+    );
+  } else if (loop_Hz === null && build.esc.update_Hz * base.period_s > THINNED_RATIO) {
+    remarks.push(
+      `The rows come at ${rate_Hz.toFixed(0)} Hz, the motors’ commands at up to ${build.esc.update_Hz} Hz. If the controller runs faster than the rows, its rate must be told: the delay comes out too short otherwise.`,
     );
   }
   if (usable.airborneUnknown) {

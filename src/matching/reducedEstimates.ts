@@ -20,21 +20,23 @@ export interface ReducedEstimates {
 /** Step of the differentiation, in standard errors. */
 const STEP = 0.3;
 
-export function reducedEstimates(fit: AxisFit): ReducedEstimates {
+/** @param hold_s part of the fitted delay that is the hold between ticks, not the plant's */
+export function reducedEstimates(fit: AxisFit, hold_s = 0): ReducedEstimates {
   if (fit.lead_s === undefined && fit.damping_per_s === undefined) {
-    const below = fit.delay_s.value < 0;
+    const delay_s = fit.delay_s.value - hold_s;
+    const below = delay_s < 0;
     return {
       gain_dps2_per_us: fit.gain_dps2_per_us,
       lag_s: fit.lag_s,
-      delay_s: below ? { ...fit.delay_s, value: 0 } : fit.delay_s,
+      delay_s: { ...fit.delay_s, value: below ? 0 : delay_s },
       error_dB: 0,
       error_deg: 0,
-      delayBelowZero_s: below ? fit.delay_s.value : null,
+      delayBelowZero_s: below ? delay_s : null,
     };
   }
   const places = ['gain_dps2_per_us', 'lag_s', 'delay_s', 'lead_s', 'damping_per_s'] as const;
   const present = places.filter((place) => fit[place] !== undefined);
-  const centre = plantOf(fit);
+  const centre = { ...plantOf(fit), delay_s: Math.max(0, fit.delay_s.value - hold_s) };
   const { plant, error_dB, error_deg } = reducePlant(responseOf(centre));
   const keys = ['gain_dps2_per_us', 'lag_s', 'delay_s'] as const;
   const slopes = present.map((place) => {

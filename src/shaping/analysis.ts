@@ -1,9 +1,10 @@
 /** Everything that is asked of one axis: stability, margins, step, noise; numbers or null, never NaN. */
 import { magnitude } from './complex.ts';
+import { LoopRun } from './loopRun.ts';
 import { marginsOf, type Margins } from './margins.ts';
 import { noiseAtMotor } from './noise.ts';
 import { closedLoopPoles, type Pole } from './poles.ts';
-import { linearTick, openLoopAt, type RateLoop, type TickOutput } from './rateLoop.ts';
+import { openLoopAt, type RateLoop } from './rateLoop.ts';
 import { NO_STEP, stepInfo, type StepMetrics } from './stepInfo.ts';
 
 export interface StepResponse {
@@ -154,17 +155,14 @@ export function stepResponse(loop: RateLoop, polesMaxRadius: number): StepRespon
   const final = loop.i !== 0 ? 1 : null;
   const y = new Float64Array(count);
   const u_us = new Float64Array(count);
-  let state = new Float64Array(loop.layout.size);
-  let next = new Float64Array(loop.layout.size);
-  const out: TickOutput = { y: 0, u: 0 };
+  const run = new LoopRun(loop);
   let moved = 0;
   let length = count;
   for (let k = 0; k < count; k++) {
-    linearTick(loop, state, 1, 0, next, out);
-    y[k] = out.y;
-    u_us[k] = out.u;
-    [state, next] = [next, state];
-    if (final === null || Math.abs(out.y - final) > SETTLED_SHARE) moved = k;
+    run.tick(1, 0);
+    y[k] = run.out.y;
+    u_us[k] = run.out.u;
+    if (final === null || Math.abs(y[k] - final) > SETTLED_SHARE) moved = k;
     else if (k - moved > quiet && k > LEAST_TICKS) {
       length = k + 1;
       break;

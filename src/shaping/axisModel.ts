@@ -265,11 +265,6 @@ export function responseAt(system: ContinuousSystem, omega: number): Complex {
   return times(y, unit(-omega * system.delay_s));
 }
 
-export function plantResponseAt(plant: Plant, omega: number): Complex {
-  const denominator = times(complex(0, omega), complex(1, omega * plant.lag_s));
-  return times(over(complex(plant.gain_dps2_per_us), denominator), unit(-omega * plant.delay_s));
-}
-
 /**
  * Least squares in log magnitude and phase over the band: K and Td in closed form for each τ, τ by a search over
  * its logarithm. A craft's damping and inflow make no delay of their own, so Td may come out 0.

@@ -51,28 +51,6 @@ export function plantSystem(plant: Plant): ContinuousSystem {
   };
 }
 
-/**
- * A strictly proper transfer b(s)/a(s), coefficients highest power first, in controllable canonical form.
- * @throws RangeError when it is not strictly proper.
- */
-export function transferSystem(b: readonly number[], a: readonly number[]): ContinuousSystem {
-  const n = a.length - 1;
-  if (n < 1 || b.length > n || a[0] === 0)
-    throw new RangeError(
-      `a transfer of order ${b.length - 1} over ${n}: the lower one must be of higher order`,
-    );
-  const A = Matrix.zeros(n, n);
-  const C = Matrix.zeros(1, n);
-  for (let j = 0; j < n; j++) {
-    A.set(n - 1, j, -a[n - j] / a[0]);
-    if (j < n - 1) A.set(j, j + 1, 1);
-    C.set(0, j, (b[b.length - 1 - j] ?? 0) / a[0]);
-  }
-  const B = Matrix.zeros(n, 1);
-  B.set(n - 1, 0, 1);
-  return { A, B, C, delay_s: 0 };
-}
-
 /** `first` followed by a first-order low-pass and a further delay: a sensor behind a plant. */
 export function withSensor(first: ContinuousSystem, bandwidth_Hz: number, delay_s: number): ContinuousSystem {
   const total = first.delay_s + delay_s;

@@ -1,5 +1,6 @@
 /** The loop's answer to a push from outside: a step of angular acceleration, as a gust on the rotors gives. */
-import { linearTick, type RateLoop, type TickOutput } from './rateLoop.ts';
+import { LoopRun } from './loopRun.ts';
+import type { RateLoop } from './rateLoop.ts';
 
 export interface GustResponse {
   readonly t_s: Float64Array;
@@ -23,23 +24,16 @@ const RECOVERED = 0.1;
  */
 export function gustResponse(loop: RateLoop, acceleration_dps2: number, length_s = LENGTH_S): GustResponse {
   const count = Math.min(MOST_TICKS, Math.ceil(length_s / loop.tick_s) + 1);
-  const { plant, layout } = loop;
   const rate_dps = new Float64Array(count);
   const angle_deg = new Float64Array(count);
-  let state = new Float64Array(layout.size);
-  let next = new Float64Array(layout.size);
-  const out: TickOutput = { y: 0, u: 0 };
+  const run = new LoopRun(loop);
   let peak = 0;
   let outside = 0;
   for (let k = 0; k < count; k++) {
-    let rate = 0;
-    for (let j = 0; j < plant.states; j++) rate += plant.bodyRate[j] * state[layout.plant + j];
-    rate_dps[k] = rate;
-    angle_deg[k] = k === 0 ? 0 : angle_deg[k - 1] + (loop.tick_s / 2) * (rate_dps[k - 1] + rate);
-    peak = Math.max(peak, Math.abs(rate));
-    linearTick(loop, state, 0, 0, next, out);
-    for (let j = 0; j < plant.states; j++) next[layout.plant + j] += plant.disturbance[j] * acceleration_dps2;
-    [state, next] = [next, state];
+    rate_dps[k] = run.bodyRate_dps;
+    angle_deg[k] = k === 0 ? 0 : angle_deg[k - 1] + (loop.tick_s / 2) * (rate_dps[k - 1] + rate_dps[k]);
+    peak = Math.max(peak, Math.abs(rate_dps[k]));
+    run.tick(0, acceleration_dps2);
   }
   for (let k = 0; k < count; k++) if (Math.abs(rate_dps[k]) > RECOVERED * peak) outside = k;
   return {

@@ -12,6 +12,7 @@ import {
   type DisturbanceRejection,
   type HandlingBandwidth,
 } from './handling.ts';
+import { LoopRun } from './loopRun.ts';
 import { marginsOf, type Margins } from './margins.ts';
 import { polesOf, type Pole, type Poles } from './poles.ts';
 import { linearTick, onCircle, partsAt, type Place, type RateLoop, type TickOutput } from './rateLoop.ts';
@@ -139,15 +140,13 @@ function attitudeStep(
   const slow_s = -loop.tick_s / Math.log(Math.max(1e-9, maxRadius));
   const length_s = Math.min(LONGEST_STEP_S, 9 * slow_s + 60 * loop.tick_s);
   const count = Math.min(MOST_TICKS, Math.ceil(length_s / loop.tick_s) + 1);
-  const n = loop.layout.size + 1;
-  let state = new Float64Array(n);
-  let next = new Float64Array(n);
-  const out: TickOutput = { y: 0, u: 0 };
+  const run = new LoopRun(loop);
   const y = new Float64Array(count);
+  let attitude = 0;
   for (let k = 0; k < count; k++) {
-    levelledTick(loop, attitude_per_s, state, 1, next, out);
-    y[k] = next[n - 1];
-    [state, next] = [next, state];
+    attitude += loop.tick_s * run.sensed_dps;
+    y[k] = attitude;
+    run.tick(attitude_per_s * (1 - attitude), 0);
   }
   return { t_s: Float64Array.from({ length: count }, (_, k) => k * loop.tick_s), y };
 }

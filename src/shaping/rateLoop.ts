@@ -237,7 +237,10 @@ export interface TickOutput {
   u: number;
 }
 
-/** One tick of the unlimited loop: `state` to `next`, with setpoint and additive noise on the measured rate. */
+/**
+ * One tick of the unlimited loop: `state` to `next`, with setpoint and additive noise on the measured rate. The
+ * commands on their way stand in the state; LoopRun keeps them apart, which long delays need.
+ */
 export function linearTick(
   loop: RateLoop,
   state: Float64Array,
@@ -246,34 +249,57 @@ export function linearTick(
   next: Float64Array,
   out: TickOutput,
 ): void {
+  const { layout: at, plant } = loop;
+  control(loop, state, setpoint, noise, next, out);
+  // Past commands, newest first: u_{k−1}, u_{k−2}, …; the plant takes u_{k−m} and u_{k−m−1}.
+  const m = plant.wholeTicks;
+  const newer = m === 0 ? out.u : state[at.pastCommands + m - 1];
+  movePlant(loop, state, newer, state[at.pastCommands + m], next);
+  next.set(state.subarray(at.pastCommands, at.pastCommands + at.pastCommandCount - 1), at.pastCommands + 1);
+  next[at.pastCommands] = out.u;
+}
+
+/** Sensor, filters and PID of one tick: all of `next` but the plant and the past commands; y and u into `out`. */
+export function control(
+  loop: RateLoop,
+  state: Float64Array,
+  setpoint: number,
+  noise: number,
+  next: Float64Array,
+  out: TickOutput,
+): void {
   const { layout: at, plant, tick_s } = loop;
-  const n = plant.states;
   let y = 0;
-  for (let j = 0; j < n; j++) y += plant.C[j] * state[at.plant + j];
+  for (let j = 0; j < plant.states; j++) y += plant.C[j] * state[at.plant + j];
   const measured = runFilters(loop.gyroFilters, state, next, at.gyroFilters, y + noise);
   const error = setpoint - measured;
   const integral = state[at.integral] + loop.i * (tick_s / 2) * (error + state[at.lastError]);
   const input = loop.derivativeOnError ? error : -measured;
   const rawDerivative = (loop.d * (input - state[at.lastDerivativeInput])) / tick_s;
   const derivative = runFilters(loop.derivativeFilters, state, next, at.derivativeFilters, rawDerivative);
-  const u = loop.p * (loop.setpointWeight * setpoint - measured) + integral + derivative + loop.ff * setpoint;
-  // Past commands, newest first: u_{k−1}, u_{k−2}, …; the plant takes u_{k−m} and u_{k−m−1}.
-  const m = plant.wholeTicks;
-  const newer = m === 0 ? u : state[at.pastCommands + m - 1];
-  const older = state[at.pastCommands + m];
-  for (let i = 0; i < n; i++) {
-    let sum = plant.now[i] * newer + plant.before[i] * older;
-    for (let j = 0; j < n; j++) sum += plant.transition[i * n + j] * state[at.plant + j];
-    next[at.plant + i] = sum;
-  }
-  next.set(state.subarray(at.pastCommands, at.pastCommands + at.pastCommandCount - 1), at.pastCommands + 1);
-  next[at.pastCommands] = u;
   // Without integral gain there is no integrator, and no pole of its own at z = 1.
   next[at.integral] = loop.i === 0 ? 0 : integral;
   next[at.lastError] = error;
   next[at.lastDerivativeInput] = input;
   out.y = y;
-  out.u = u;
+  out.u = loop.p * (loop.setpointWeight * setpoint - measured) + integral + derivative + loop.ff * setpoint;
+}
+
+/** The plant over one tick, in which the older command holds first and then the newer. */
+export function movePlant(
+  loop: RateLoop,
+  state: Float64Array,
+  newer: number,
+  older: number,
+  next: Float64Array,
+): void {
+  const { layout: at, plant } = loop;
+  const n = plant.states;
+  for (let i = 0; i < n; i++) {
+    let sum = plant.now[i] * newer + plant.before[i] * older;
+    for (let j = 0; j < n; j++) sum += plant.transition[i * n + j] * state[at.plant + j];
+    next[at.plant + i] = sum;
+  }
 }
 
 function runFilters(

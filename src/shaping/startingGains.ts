@@ -5,12 +5,12 @@
  * Published rules stand beside it for comparison.
  */
 import { AXES, type AxisName, type Gains } from '../craft/gains.ts';
-import { magnitude } from './complex.ts';
 import type { ContinuousSystem, Plant } from './continuous.ts';
-import { marginsOf } from './margins.ts';
-import { noiseAtMotor, type GyroNoise } from './noise.ts';
+import { GridLoop, type PidGains } from './gridLoop.ts';
+import { LoopRun } from './loopRun.ts';
+import type { GyroNoise } from './noise.ts';
 import { closedLoopPoles } from './poles.ts';
-import { openLoopAt, rateLoop, withGainsOf, type RateLoop } from './rateLoop.ts';
+import { rateLoop, withGainsOf, type RateLoop } from './rateLoop.ts';
 
 /** How far off the build may be; shares of the value, either way. */
 export interface Uncertainty {
@@ -29,6 +29,8 @@ export interface StartingLimits {
   readonly uncertainty: Uncertainty;
   /** The integral's time p/i is at least this many times 1/crossover: else the setpoint is overshot for long. */
   readonly leastIntegralTime_crossovers: number;
+  /** Of a rate step at the nominal plant gain, with the gains' own setpoint weight. */
+  readonly overshoot_pct: number;
 }
 
 export const STARTING_LIMITS: StartingLimits = {
@@ -38,6 +40,7 @@ export const STARTING_LIMITS: StartingLimits = {
   noiseAtMotor_us_rms: 4,
   uncertainty: { mass: 0.05, voltage: 0.1, thrust: 0.1 },
   leastIntegralTime_crossovers: 6,
+  overshoot_pct: 18,
 };
 
 /** Lowest and highest plant gain over the nominal one: thrust and voltage raise it, inertia lowers it. */
@@ -46,11 +49,7 @@ export function plantGainRange(uncertainty: Uncertainty): readonly [number, numb
   return [((1 - voltage) * (1 - thrust)) / (1 + mass), ((1 + voltage) * (1 + thrust)) / (1 - mass)];
 }
 
-export interface AxisGainsFound {
-  readonly p_us_per_dps: number;
-  readonly i_us_per_deg: number;
-  readonly d_us_per_dps2: number;
-}
+export type AxisGainsFound = PidGains;
 
 export interface StartingAxis extends AxisGainsFound {
   /** The limit that stops more gain, and what would loosen it. */
@@ -58,6 +57,13 @@ export interface StartingAxis extends AxisGainsFound {
   readonly loosenedBy: string;
   /** Each limit's use, 1 = all of it. */
   readonly used: Readonly<Record<LimitName, number>>;
+  /** What each change of the bench would make of the integral gain, %; the best first. */
+  readonly loosening: readonly Loosening[];
+}
+
+export interface Loosening {
+  readonly change: string;
+  readonly gain_pct: number;
 }
 
 interface AxisTask {
@@ -68,7 +74,8 @@ interface AxisTask {
   readonly limits: StartingLimits;
 }
 
-export type LimitName = 'maxSensitivity' | 'phaseMargin' | 'delayMargin' | 'noise' | 'integralTime';
+export type LimitName =
+  'maxSensitivity' | 'phaseMargin' | 'delayMargin' | 'noise' | 'integralTime' | 'overshoot';
 
 const LOOSENED: Readonly<Record<LimitName, string>> = {
   maxSensitivity:
@@ -77,6 +84,7 @@ const LOOSENED: Readonly<Record<LimitName, string>> = {
   delayMargin: 'less delay in the loop: a faster loop or a shorter compute delay',
   noise: 'a quieter gyro or mount, or a lower D cutoff',
   integralTime: 'a higher crossover: less delay and lag, so that P can rise',
+  overshoot: 'a setpoint weight below 1, or less delay and lag in the loop',
 };
 const ACTIVE: Readonly<Record<LimitName, string>> = {
   maxSensitivity: 'maximum sensitivity',
@@ -84,61 +92,78 @@ const ACTIVE: Readonly<Record<LimitName, string>> = {
   delayMargin: 'delay margin',
   noise: 'noise at the motors',
   integralTime: 'integral time against crossover',
-};
-
-const UNSTABLE: Readonly<Record<LimitName, number>> = {
-  maxSensitivity: Infinity,
-  phaseMargin: Infinity,
-  delayMargin: Infinity,
-  noise: Infinity,
-  integralTime: Infinity,
+  overshoot: 'overshoot of a rate step',
 };
 
 /** The loops of a task at the lowest, nominal and highest plant gain; gains are put in for each trial. */
 class Candidates {
+  private readonly grid: GridLoop;
   private readonly loops: readonly RateLoop[];
+  private readonly scales: readonly number[];
 
   constructor(private readonly task: AxisTask) {
-    const [low, high] = plantGainRange(task.limits.uncertainty);
-    this.loops = [1, low, high].map((scale) => {
-      const { system, gains, axis } = task;
-      const scaledSystem = scale === 1 ? system : { ...system, B: system.B.clone().mul(scale) };
-      return rateLoop(scaledSystem, gains, axis);
-    });
+    const { system, gains, axis, noise, limits } = task;
+    this.scales = [1, ...plantGainRange(limits.uncertainty)];
+    this.loops = this.scales.map((scale) =>
+      rateLoop({ ...system, B: system.B.clone().mul(scale) }, gains, axis),
+    );
+    this.grid = new GridLoop(this.loops[0], noise);
   }
 
-  at(found: AxisGainsFound): RateLoop {
-    return withGainsOf(this.loops[0], found);
-  }
-
-  /** Each limit's use: above 1 it is broken. Unstable: Infinity. */
+  /** Each limit's use: above 1 it is broken. The overshoot is only looked at when the others hold. */
   usage(found: AxisGainsFound): Record<LimitName, number> {
     const { limits } = this.task;
-    const used = { maxSensitivity: 0, phaseMargin: 0, delayMargin: 0, noise: 0, integralTime: 0 };
-    for (const base of this.loops) {
-      const loop = withGainsOf(base, found);
-      if (!closedLoopPoles(loop).stable) return { ...UNSTABLE };
-      const nyquist = Math.PI / loop.tick_s;
-      const margins = marginsOf({
-        at: (w) => openLoopAt(loop, w),
-        low: nyquist * 2e-4,
-        high: nyquist,
-        sampled: true,
-        coarse: true,
-      });
-      const raise = (name: LimitName, share: number) => (used[name] = Math.max(used[name], share));
+    const used = {
+      maxSensitivity: 0,
+      phaseMargin: 0,
+      delayMargin: 0,
+      noise: 0,
+      integralTime: 0,
+      overshoot: 0,
+    };
+    const raise = (name: LimitName, share: number) => (used[name] = Math.max(used[name], share));
+    this.scales.forEach((scale, index) => {
+      const margins = this.grid.margins(found, scale);
       raise('maxSensitivity', (margins.maxSensitivity - 1) / (limits.maxSensitivity - 1));
-      raise('phaseMargin', limits.phaseMargin_deg / Math.max(1e-6, margins.phaseMargin_deg ?? 180));
-      raise('delayMargin', limits.delayMargin_ms / Math.max(1e-6, margins.delayMargin_ms ?? 1e6));
-    }
-    const loop = this.at(found);
-    const noise = noiseAtMotor(loop, this.task.noise);
-    used.noise = noise === null ? Infinity : noise / limits.noiseAtMotor_us_rms;
-    const integralRate = found.i_us_per_deg / found.p_us_per_dps;
-    used.integralTime = (integralRate * limits.leastIntegralTime_crossovers) / lastCrossover(loop);
+      raise('phaseMargin', limits.phaseMargin_deg / Math.max(1e-6, margins.phaseMargin_deg));
+      raise('delayMargin', limits.delayMargin_ms / Math.max(1e-6, margins.delayMargin_ms));
+      if (index > 0) return;
+      raise('noise', margins.noise_us / limits.noiseAtMotor_us_rms);
+      const integralRate = found.i_us_per_deg / found.p_us_per_dps;
+      const least = limits.leastIntegralTime_crossovers / Math.max(1e-9, margins.lastCrossover_radps);
+      raise('integralTime', integralRate * least);
+    });
+    if (Math.max(...Object.values(used)) <= 1) raise('overshoot', this.overshootUse(found));
     return used;
   }
+
+  /** Stable at all plant gains, by the poles themselves. */
+  stable(found: AxisGainsFound): boolean {
+    return this.loops.every((loop) => closedLoopPoles(withGainsOf(loop, found)).stable);
+  }
+
+  private overshootUse(found: AxisGainsFound): number {
+    const loop = withGainsOf(this.loops[0], found);
+    const count = Math.min(MOST_STEP_TICKS, Math.ceil(STEP_S / loop.tick_s));
+    const run = new LoopRun(loop);
+    let peak = 0;
+    for (let k = 0; k < count; k++) {
+      run.tick(1, 0);
+      peak = Math.max(peak, run.out.y);
+    }
+    return Math.max(0, peak - 1) / (this.task.limits.overshoot_pct / 100);
+  }
+
+  /** Where the search starts: P alone at a modest bandwidth, by the plant's own scale. */
+  firstPlace(): Place {
+    const omega = Math.min(20, 0.2 / this.loops[0].tick_s);
+    return [Math.log(this.grid.gainForCrossover(omega)), 0.004, Math.log(omega / 8)];
+  }
 }
+
+/** How long a step is watched for its overshoot. */
+const STEP_S = 0.6;
+const MOST_STEP_TICKS = 2400;
 
 /** Place in the search: log p, the ratio d/p (a time, s) and log of the ratio i/p (a rate, 1/s). */
 type Place = readonly [number, number, number];
@@ -152,18 +177,10 @@ function gainsAt([logP, derivative_s, logRate]: Place): AxisGainsFound {
   };
 }
 
-/** Crossover of the plant with P alone at a modest bandwidth: the search starts at the plant's own scale. */
-function firstPlace(candidates: Candidates): Place {
-  const loop = candidates.at({ p_us_per_dps: 1, i_us_per_deg: 0, d_us_per_dps2: 0 });
-  const omega = Math.min(20, 0.2 / loop.tick_s);
-  const p = 1 / Math.max(1e-12, magnitude(openLoopAt(loop, omega)));
-  return [Math.log(p), 0.004, Math.log(omega / 8)];
-}
-
-const MOST_ROUNDS = 70;
+const MOST_ROUNDS = 90;
 const FIRST_STEPS: Place = [0.5, 0.006, 0.6];
-const FINEST_STEP = 0.004;
-/** Moves a round tries: each coordinate by itself, and more or less of everything along the ridge. */
+const FINEST_STEP = 0.002;
+/** Moves a round tries: each coordinate by itself, and pairs along the ridges between limits. */
 const MOVES: readonly Place[] = [
   [1, 0, 0],
   [-1, 0, 0],
@@ -173,22 +190,30 @@ const MOVES: readonly Place[] = [
   [0, 0, -1],
   [1, 0.5, 0.5],
   [-1, -0.5, -0.5],
+  [1, 0, -1],
+  [-1, 0, 1],
+  [0, 1, 1],
+  [0, -1, -1],
 ];
 
-/**
- * Pattern search from the plant's own scale.
- * @throws RangeError when no gain at all is within the limits.
- */
-export function startingAxis(task: AxisTask): StartingAxis {
+interface Found {
+  readonly gains: AxisGainsFound;
+  readonly candidates: Candidates;
+}
+
+/** Pattern search from the plant's own scale; null when no gain at all is within the limits. */
+function search(task: AxisTask): Found | null {
   const candidates = new Candidates(task);
-  const score = (place: Place): number => {
+  const score = (place: Place, toBeat: number): number => {
     const found = gainsAt(place);
     const used = Math.max(...Object.values(candidates.usage(found)));
-    if (!Number.isFinite(used)) return -1e9 - place[0];
-    return used > 1 ? -1e3 * (used - 1) : Math.log(found.i_us_per_deg) + 0.3 * place[0];
+    if (used > 1) return -1e3 * (used - 1);
+    const value = Math.log(found.i_us_per_deg) + 0.3 * place[0];
+    // The poles are only asked where it would be an improvement: a small Ms alone does not prove stability.
+    return value <= toBeat || candidates.stable(found) ? value : -1e6;
   };
-  let place = firstPlace(candidates);
-  let best = score(place);
+  let place = candidates.firstPlace();
+  let best = score(place, -Infinity);
   let steps = FIRST_STEPS;
   for (let round = 0; round < MOST_ROUNDS && Math.max(steps[0], steps[2]) > FINEST_STEP; round++) {
     let improved = false;
@@ -198,7 +223,7 @@ export function startingAxis(task: AxisTask): StartingAxis {
         Math.max(0, place[1] + move[1] * steps[1]),
         place[2] + move[2] * steps[2],
       ];
-      const value = score(next);
+      const value = score(next, best);
       if (value > best) {
         best = value;
         place = next;
@@ -207,25 +232,69 @@ export function startingAxis(task: AxisTask): StartingAxis {
     }
     if (!improved) steps = [steps[0] / 2, steps[1] / 2, steps[2] / 2];
   }
-  if (best <= -1) {
+  const gains = rounded(gainsAt(place));
+  const held = Math.max(...Object.values(candidates.usage(gains))) <= 1.02 && candidates.stable(gains);
+  return held ? { gains, candidates } : null;
+}
+
+/**
+ * Starting gains of one axis.
+ * @throws RangeError when no gain at all is within the limits.
+ */
+export function startingAxis(task: AxisTask): StartingAxis {
+  const found = search(task);
+  if (found === null) {
     throw new RangeError(
       `no gains for ${task.axis} keep all limits; the loop is too slow or too noisy for this craft`,
     );
   }
-  const found = rounded(gainsAt(place));
-  const used = candidates.usage(found);
+  const used = found.candidates.usage(found.gains);
   const active = (Object.keys(used) as LimitName[]).reduce((a, b) => (used[b] > used[a] ? b : a));
-  return { ...found, used, active: ACTIVE[active], loosenedBy: LOOSENED[active] };
+  return {
+    ...found.gains,
+    used,
+    active: ACTIVE[active],
+    loosenedBy: LOOSENED[active],
+    loosening: looseningOf(task, found.gains),
+  };
 }
 
-/** Highest frequency at which the loop gain still falls through 1, rad/s. */
-function lastCrossover(loop: RateLoop): number {
-  const nyquist = Math.PI / loop.tick_s;
-  const at = (share: number) => nyquist * 1e-3 ** (1 - share);
-  for (let k = 160; k > 0; k--) {
-    if (magnitude(openLoopAt(loop, at((k - 1) / 160))) > 1) return at((k - 1) / 160);
-  }
-  return at(0);
+/** The same search with one thing of the bench bettered. */
+function looseningOf(task: AxisTask, found: AxisGainsFound): Loosening[] {
+  const { gains, noise, system } = task;
+  const changes: [string, AxisTask | null][] = [
+    [
+      'half the delay in loop and sensor',
+      {
+        ...task,
+        system: { ...system, delay_s: system.delay_s / 2 },
+        gains: { ...gains, computeDelay_s: gains.computeDelay_s / 2 },
+      },
+    ],
+    [
+      'a D cutoff half as high again',
+      gains.derivativeLowPass_Hz === 0 || gains.derivativeLowPass_Hz * 1.5 >= gains.loop_Hz / 2
+        ? null
+        : { ...task, gains: { ...gains, derivativeLowPass_Hz: gains.derivativeLowPass_Hz * 1.5 } },
+    ],
+    ['half the gyro noise', { ...task, noise: { ...noise, sigma_dps: noise.sigma_dps / 2 } }],
+    [
+      'mass, voltage and thrust known twice as well',
+      { ...task, limits: { ...task.limits, uncertainty: halved(task.limits.uncertainty) } },
+    ],
+  ];
+  return changes
+    .flatMap(([change, bettered]) => {
+      const other = bettered === null ? null : search(bettered);
+      if (other === null) return [];
+      return [{ change, gain_pct: 100 * (other.gains.i_us_per_deg / found.i_us_per_deg - 1) }];
+    })
+    .sort((a, b) => b.gain_pct - a.gain_pct);
+}
+
+function halved(uncertainty: Uncertainty): Uncertainty {
+  const { mass, voltage, thrust } = uncertainty;
+  return { mass: mass / 2, voltage: voltage / 2, thrust: thrust / 2 };
 }
 
 /** Three significant digits, downward: what a person would type. */

@@ -112,13 +112,11 @@ describeInBrowser(
       await page.keyboard.press('Control+KeyZ');
       await expect.poll(() => field.inputValue()).toBe(saved);
       await page.keyboard.press('Alt+KeyW');
-      await page
-        .locator('dialog input[type="file"]')
-        .setInputFiles({
-          name: 'x.build.json',
-          mimeType: 'application/json',
-          buffer: Buffer.from('{"format":"gustbench.build/1","name":1e308}'),
-        });
+      await page.locator('dialog input[type="file"]').setInputFiles({
+        name: 'x.build.json',
+        mimeType: 'application/json',
+        buffer: Buffer.from('{"format":"gustbench.build/1","name":1e308}'),
+      });
       await page.keyboard.press('Escape');
       const before = await readOut(page, 'height');
       expect(before).toBeGreaterThan(0.3);

@@ -4,10 +4,16 @@ import { describeInBrowser } from './harness.ts';
 
 describeInBrowser('Offline and size', (site) => {
   test('after one visit the page opens with the network cut', async () => {
-    const opened = await site.open({ at: '#/measure', expectedErrors: /ERR_INTERNET_DISCONNECTED|Failed to fetch/ });
+    const opened = await site.open({
+      at: '#/measure',
+      expectedErrors: /ERR_INTERNET_DISCONNECTED|Failed to fetch/,
+    });
     const { page, context } = opened;
     await expect
-      .poll(() => page.evaluate(async () => (await navigator.serviceWorker.getRegistration())?.active?.state), { timeout: 30_000 })
+      .poll(
+        () => page.evaluate(async () => (await navigator.serviceWorker.getRegistration())?.active?.state),
+        { timeout: 30_000 },
+      )
       .toBe('activated');
     // The precache is complete once the worker is active.
     await expect.poll(() => page.evaluate(async () => (await caches.keys()).length)).toBeGreaterThan(0);
@@ -35,7 +41,10 @@ describeInBrowser('Offline and size', (site) => {
     await page.waitForTimeout(1500);
     const total = [...scripts.values()].reduce((sum, bytes) => sum + bytes, 0);
     expect(scripts.size).toBeGreaterThan(1);
-    expect(total / 1000, [...scripts].map(([url, bytes]) => `${url.split('/').at(-1)} ${bytes}`).join(', ')).toBeLessThan(350);
+    expect(
+      total / 1000,
+      [...scripts].map(([url, bytes]) => `${url.split('/').at(-1)} ${bytes}`).join(', '),
+    ).toBeLessThan(350);
     await page.context().close();
   }, 90_000);
 });

@@ -74,10 +74,12 @@ export function flyLoop(setup: LoopSetup): LoopLog {
       if (h > 0) {
         const decay = Math.exp(-h / tau);
         const input = plant.gain_dps2_per_us * active;
-        rate += input * h + (acceleration - input) * tau * (1 - decay) + (disturbance + (setup.trim_dps2 ?? 0)) * h;
+        rate +=
+          input * h + (acceleration - input) * tau * (1 - decay) + (disturbance + (setup.trim_dps2 ?? 0)) * h;
         acceleration = input + (acceleration - input) * decay;
         const forget = Math.exp(-setup.gustDecay_per_s * h);
-        disturbance = forget * disturbance + setup.gust_dps2 * Math.sqrt(1 - forget * forget) * gust.gaussian();
+        disturbance =
+          forget * disturbance + setup.gust_dps2 * Math.sqrt(1 - forget * forget) * gust.gaussian();
       }
       now = stop;
       while (nextEvent < events.length && events[nextEvent].at <= now) active = events[nextEvent++].u;
@@ -130,5 +132,8 @@ export function doublets(amplitude_dps: number): (t_s: number) => number {
 /** Sum of sines with fixed phases. */
 export function multisine(amplitude_dps: number, frequencies_Hz: readonly number[]): (t_s: number) => number {
   return (t) =>
-    frequencies_Hz.reduce((sum, f, i) => sum + amplitude_dps * Math.sin(2 * Math.PI * f * t + 1.7 * i * i), 0);
+    frequencies_Hz.reduce(
+      (sum, f, i) => sum + amplitude_dps * Math.sin(2 * Math.PI * f * t + 1.7 * i * i),
+      0,
+    );
 }

@@ -13,11 +13,12 @@ export const PLANTS: Readonly<Record<AxisName, PlantParameters>> = {
   yaw: { gain_dps2_per_us: 6, lag_s: 0.045, delay_s: 0.0052 },
 };
 
-const GAINS: Readonly<Record<AxisName, Pick<LoopSetup, 'p_us_per_dps' | 'i_us_per_deg' | 'd_us_per_dps2'>>> = {
-  roll: { p_us_per_dps: 0.7, i_us_per_deg: 2, d_us_per_dps2: 0.011 },
-  pitch: { p_us_per_dps: 0.75, i_us_per_deg: 2, d_us_per_dps2: 0.012 },
-  yaw: { p_us_per_dps: 2, i_us_per_deg: 3, d_us_per_dps2: 0.03 },
-};
+const GAINS: Readonly<Record<AxisName, Pick<LoopSetup, 'p_us_per_dps' | 'i_us_per_deg' | 'd_us_per_dps2'>>> =
+  {
+    roll: { p_us_per_dps: 0.7, i_us_per_deg: 2, d_us_per_dps2: 0.011 },
+    pitch: { p_us_per_dps: 0.75, i_us_per_deg: 2, d_us_per_dps2: 0.012 },
+    yaw: { p_us_per_dps: 2, i_us_per_deg: 3, d_us_per_dps2: 0.03 },
+  };
 
 export type LoopChange = Partial<LoopSetup>;
 

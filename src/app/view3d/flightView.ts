@@ -123,6 +123,9 @@ export class FlightView {
     this.painter = new CanvasPainter();
     this.scale = 1;
     this.attach();
+    const { build, flyingSite } = this;
+    this.build = null;
+    if (build !== null && flyingSite !== null) this.setContent(build, flyingSite, this.theme);
   }
 
   get camera(): CameraName {
@@ -162,7 +165,8 @@ export class FlightView {
       air: new AirModel(craft.reach_m, palette),
     };
     const { marks, air } = content;
-    this.scene.add(content.ground.group, content.site.group, marks.shadow, marks.ring, marks.pole);
+    const site = this.webgl === null ? content.site.group : content.site.merged();
+    this.scene.add(content.ground.group, site, marks.shadow, marks.ring, marks.pole);
     this.scene.add(craft.group, air.arrow, content.trail.lines, air.streaks);
     this.content = content;
     this.rig.setPilot(scene.pilot_m[0], scene.pilot_m[1], scene.pilot_m[2]);

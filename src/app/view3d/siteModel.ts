@@ -42,6 +42,39 @@ export class SiteModel {
     this.meshes = [...standing.map((solid) => solidMesh(solid, palette)), this.pilot];
     this.group.add(...this.meshes);
   }
+
+  /** The same in a few pieces instead of two a solid: for WebGL, which pays by the piece. */
+  merged(): Group {
+    const standing = this.meshes.filter((mesh) => mesh !== this.pilot);
+    const edges = standing.flatMap((mesh) => mesh.children.filter((child) => child instanceof LineSegments));
+    const group = new Group();
+    if (standing.length > 0) {
+      const faces = new Mesh(joined(standing.map((mesh) => mesh.geometry)), standing[0].material);
+      const lines = new LineSegments(joined(edges.map((edge) => edge.geometry)), edges[0].material);
+      for (const part of [faces, lines]) {
+        part.renderOrder = LAYER.solid;
+        part.frustumCulled = false;
+        group.add(part);
+      }
+    }
+    return group.add(this.pilot);
+  }
+}
+
+/** Geometries of places and colours in one. */
+function joined(all: readonly BufferGeometry[]): BufferGeometry {
+  const geometry = new BufferGeometry();
+  for (const name of ['position', 'color']) {
+    const parts = all.map((one) => one.getAttribute(name).array);
+    const whole = new Float32Array(parts.reduce((sum, part) => sum + part.length, 0));
+    let at = 0;
+    for (const part of parts) {
+      whole.set(part, at);
+      at += part.length;
+    }
+    geometry.setAttribute(name, new BufferAttribute(whole, 3));
+  }
+  return geometry;
 }
 
 /** Water is drawn as a sheet on the ground (ground.ts). */
