@@ -2,7 +2,6 @@
  * Physical plausibility of a build: things each field may say alone but no real craft says together.
  * Every rule names the field to mend, the value found and the bound it broke.
  */
-import { EigenvalueDecomposition, Matrix } from 'ml-matrix';
 import { GRAVITY_MPS2, RPM_PER_RAD_PER_S } from '../math/angles.ts';
 import type { Build } from './buildSchema.ts';
 import { fullCellVoltage_V } from './cell.ts';
@@ -30,16 +29,22 @@ function problem(path: string, value: unknown, allowed: string): Problem {
   return { path, value: showValue(value), allowed };
 }
 
+/** Eigenvalues of a symmetric 3 × 3 tensor, ascending, by Smith's trigonometric form (CACM 4, 1961, 168). */
+function principalMoments(xx: number, yy: number, zz: number, xy: number, xz: number, yz: number): number[] {
+  const mean = (xx + yy + zz) / 3;
+  const [a, b, c] = [xx - mean, yy - mean, zz - mean];
+  const p = Math.sqrt((a * a + b * b + c * c + 2 * (xy * xy + xz * xz + yz * yz)) / 6);
+  if (p === 0) return [mean, mean, mean];
+  const determinant = a * (b * c - yz * yz) - xy * (xy * c - yz * xz) + xz * (xy * yz - b * xz);
+  const angle = Math.acos(Math.max(-1, Math.min(1, determinant / (2 * p * p * p)))) / 3;
+  const most = mean + 2 * p * Math.cos(angle);
+  const least = mean + 2 * p * Math.cos(angle + (2 * Math.PI) / 3);
+  return [least, 3 * mean - most - least, most];
+}
+
 function inertiaProblems(build: Build): Problem[] {
   const { xx, yy, zz, xy, xz, yz } = build.airframe.inertia_kgm2;
-  const tensor = new Matrix([
-    [xx, xy, xz],
-    [xy, yy, yz],
-    [xz, yz, zz],
-  ]);
-  const principal = new EigenvalueDecomposition(tensor, { assumeSymmetric: true }).realEigenvalues
-    .slice()
-    .sort((a, b) => a - b);
+  const principal = principalMoments(xx, yy, zz, xy, xz, yz);
   const shown = principal.map((value) => Number(value.toPrecision(4)));
   if (principal[0] <= 0) {
     return [

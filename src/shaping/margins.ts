@@ -56,7 +56,7 @@ const POINTS = 360;
 const LINEAR_POINTS = 240;
 const REFINE = 46;
 const POINTS_A_TURN = 10;
-const MOST_LINEAR_POINTS = 40_000;
+const MOST_LINEAR_POINTS = 12_000;
 
 export function marginsOf(response: Response): Margins {
   const omegas = grid(response);
