@@ -137,8 +137,9 @@ function fitParts(
   const held = piecesOf(rest, chosen.reading);
   const partial = { ...NOTHING, response, leftOut: parts.leftOut, reading: chosen.reading };
   // Held from tick to tick, a command acts half a tick later than the mean between two rows does.
-  const hold_s = chosen.reading.command === 'between' ? context.tick_s / 2 : 0;
-  const estimates = reducedEstimates(fit, hold_s);
+  const thinned =
+    chosen.reading.command === 'between' ? { hold_s: context.tick_s / 2, period_s: base.period_s } : null;
+  const estimates = reducedEstimates(fit, thinned);
   if (!(fit.gain_dps2_per_us.value > 0) && bySetpoint) {
     const offer = turnedSign(axis);
     return { ...partial, offers: [offer], note: `No numbers: ${offer.because}` };

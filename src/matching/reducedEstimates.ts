@@ -20,8 +20,36 @@ export interface ReducedEstimates {
 /** Step of the differentiation, in standard errors. */
 const STEP = 0.3;
 
-/** @param hold_s part of the fitted delay that is the hold between ticks, not the plant's */
-export function reducedEstimates(fit: AxisFit, hold_s = 0): ReducedEstimates {
+/** A log that holds only some of the controller's ticks: what its fit's delay and errors need. */
+export interface Thinned {
+  /** Part of the fitted delay that is the hold between ticks, not the plant's, s. */
+  readonly hold_s: number;
+  readonly period_s: number;
+}
+
+/**
+ * Systematic error of a thinned-out log as a share of its row period, for lag and delay: what lies between the
+ * rows is only guessed. Found on simulated loops, 2 and 4 ticks a row; no source.
+ */
+const THINNED_LAG_SHARE = 0.15;
+const THINNED_DELAY_SHARE = 0.1;
+
+/** @param thinned null when the log holds every tick */
+export function reducedEstimates(fit: AxisFit, thinned: Thinned | null = null): ReducedEstimates {
+  const plain = reducedFit(fit, thinned?.hold_s ?? 0);
+  if (thinned === null) return plain;
+  const widened = (one: Estimate, share: number) => ({
+    ...one,
+    sigma: Math.hypot(one.sigma, share * thinned.period_s),
+  });
+  return {
+    ...plain,
+    lag_s: widened(plain.lag_s, THINNED_LAG_SHARE),
+    delay_s: widened(plain.delay_s, THINNED_DELAY_SHARE),
+  };
+}
+
+function reducedFit(fit: AxisFit, hold_s: number): ReducedEstimates {
   if (fit.lead_s === undefined && fit.damping_per_s === undefined) {
     const delay_s = fit.delay_s.value - hold_s;
     const below = delay_s < 0;
