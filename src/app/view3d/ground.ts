@@ -19,8 +19,8 @@ import type { ViewPalette } from './palette.ts';
 import { isWater } from './siteModel.ts';
 
 const GROUND_M = 2000;
-const GRID = { step_m: 5, reach_m: 75, piece_m: 15, alpha: 0.8 };
-const FINE_GRID = { step_m: 1, reach_m: 8, piece_m: 2, alpha: 0.45 };
+const GRID = { step_m: 5, reach_m: 60, piece_m: 20, alpha: 0.8 };
+const FINE_GRID = { step_m: 1, reach_m: 8, piece_m: 4, alpha: 0.45 };
 /** Above this the fine grid is gone, m. */
 const FINE_UP_TO_M = 7;
 const RIDGE_M = 640;
