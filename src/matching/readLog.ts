@@ -195,8 +195,10 @@ class Table implements RowSink {
     this.seen++;
     for (let i = 0; i < values.length; i++) {
       if (!(Math.abs(values[i]) < 1e300)) {
+        this.bad++;
+        // The first line is the heads' as a rule.
         if (this.seen === 1) this.headBad = true;
-        if (this.bad++ === 0) this.firstBad = this.seen;
+        else if (this.firstBad === -1) this.firstBad = this.seen;
         return;
       }
     }
