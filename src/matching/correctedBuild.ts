@@ -46,37 +46,66 @@ export function correctedBuild(build: Build, result: MatchResult, logName: strin
       kept: ['No axis has numbers that are free of doubt; the build stays as it is.'],
     };
   }
-  const before = reducedModel(build);
   const kept: string[] = [];
-  const byThrust = thrustExplains(build, before, fitted, result);
-  let current = build;
-  for (let round = 0; round < ROUNDS; round++) {
-    const model = reducedModel(current);
-    let next = withLag(current, model, fitted);
-    next =
-      byThrust && round < ROUNDS / 2 ? withThrust(next, model, fitted) : withInertia(next, model, fitted);
-    next = withDelay(next, model, fitted, result.computeDelay_s);
-    const checked = plausible(next);
-    if (typeof checked === 'string') {
-      kept.push(`The fit asks for ${checked}; the correction was stopped before that.`);
-      break;
-    }
-    current = checked;
+  let used = fitted;
+  let outcome = scaledToFit(build, used, result);
+  while (outcome.problem !== null && used.length > 1) {
+    // One axis that no real craft has must not keep the others from being mended: yaw first, its inertia is
+    // bound by the other two.
+    const dropped = used[used.length - 1].axis;
+    kept.push(`${dropped} was left as it is: with it the fit asks for ${outcome.problem}.`);
+    used = used.slice(0, -1);
+    outcome = scaledToFit(build, used, result);
   }
+  if (outcome.problem !== null) {
+    kept.push(`The fit asks for ${outcome.problem}; the correction was stopped before that.`);
+  }
+  const current = outcome.build;
   const after = reducedModel(current);
-  for (const { axis, estimates } of fitted) {
+  for (const { axis, estimates } of used) {
     const off = after[axis].gain / estimates.gain_dps2_per_us.value - 1;
     if (Math.abs(off) > 0.02) {
       kept.push(`${axis}: the model’s gain stays ${(100 * off).toFixed(0)} % from the fit.`);
     }
   }
   const changes = changesBetween(build, current);
-  const note = [build.note, `Matched to ${logName}: ${changes.join(' ')}`].filter(Boolean).join(' ');
+  const told = changes.length > 0 ? changes.join(' ') : 'nothing had to be changed.';
+  const note = [build.note, `Matched to ${logName}: ${told}`].filter(Boolean).join(' ');
   return {
     build: { ...current, note: note.slice(0, LARGEST_NOTE) },
     changes: changes.length > 0 ? changes : ['Nothing: the build has the plant that was fitted.'],
     kept,
   };
+}
+
+/** Scales step by step; a step that would make the build implausible is named and not taken. */
+function scaledToFit(build: Build, fitted: readonly Fitted[], result: MatchResult) {
+  let current = build;
+  let before = reducedModel(build);
+  const byThrust = thrustExplains(build, before, fitted, result);
+  for (let round = 0; round < ROUNDS; round++) {
+    const model = reducedModel(current);
+    if (round > 0 && arrived(before, model)) break;
+    before = model;
+    let next = withLag(current, model, fitted);
+    next =
+      byThrust && round < ROUNDS / 2 ? withThrust(next, model, fitted) : withInertia(next, model, fitted);
+    next = withDelay(next, model, fitted, result.computeDelay_s);
+    const checked = plausible(next);
+    if (typeof checked === 'string') return { build: current, problem: checked };
+    current = checked;
+  }
+  return { build: current, problem: null };
+}
+
+/** Another round would change nothing that can be seen. */
+function arrived(before: Reduced, now: Reduced): boolean {
+  return AXES.every(
+    (axis) =>
+      Math.abs(now[axis].gain / before[axis].gain - 1) < 1e-4 &&
+      Math.abs(now[axis].lag_s - before[axis].lag_s) < 1e-6 &&
+      Math.abs(now[axis].delay_s - before[axis].delay_s) < 1e-6,
+  );
 }
 
 interface Fitted {

@@ -53,18 +53,23 @@ export function reducePlant(response: ResponseAt): ReducedPlant {
   // The sign of the gain is that of the response at the band's low end.
   const negative = Math.cos(rad[0]) < 0;
   if (negative) for (let i = 0; i < POINTS; i++) rad[i] += Math.PI;
+  const left_dB = new Float64Array(POINTS);
   const trial = (lag_s: number, delay_s: number) => {
-    const left = omegas.map((omega, i) => dB[i] + 10 * Math.log10(1 + (omega * lag_s) ** 2));
-    const mean = left.reduce((sum, value) => sum + value, 0) / POINTS;
+    let mean = 0;
+    for (let i = 0; i < POINTS; i++) {
+      left_dB[i] = dB[i] + 10 * Math.log10(1 + (omegas[i] * lag_s) ** 2);
+      mean += left_dB[i] / POINTS;
+    }
     let cost = 0;
     let error_dB = 0;
     let error_deg = 0;
-    omegas.forEach((omega, i) => {
-      const off = wrapped(rad[i] + Math.atan(omega * lag_s) + omega * delay_s) * (180 / Math.PI);
-      cost += (left[i] - mean) ** 2 + (off / DEG_PER_DB) ** 2;
-      error_dB = Math.max(error_dB, Math.abs(left[i] - mean));
-      error_deg = Math.max(error_deg, Math.abs(off));
-    });
+    for (let i = 0; i < POINTS; i++) {
+      const off = wrapped(rad[i] + Math.atan(omegas[i] * lag_s) + omegas[i] * delay_s) * (180 / Math.PI);
+      const apart = Math.abs(left_dB[i] - mean);
+      cost += apart * apart + (off / DEG_PER_DB) ** 2;
+      if (apart > error_dB) error_dB = apart;
+      if (Math.abs(off) > error_deg) error_deg = Math.abs(off);
+    }
     return { lag_s, delay_s, cost, error_dB, error_deg, gain: 10 ** (mean / 20) };
   };
   let best = trial(0.03, 0.002);
