@@ -50,6 +50,28 @@ describeInBrowser('Shape, Prove and Carry', (site) => {
     await opened.close();
   }, 120_000);
 
+  test('Prove: the map of D shows each layer in its own unit', async () => {
+    const opened = await site.open({ at: '#/prove' });
+    const { page } = opened;
+    await page.getByRole('button', { name: 'Fill the map' }).click();
+    const map = page.getByLabel(/D against its cutoff: /).first();
+    await map.waitFor();
+    const unitUnderPointer = async () => {
+      await map.hover({ position: { x: 300, y: 150 } });
+      return (await page.locator('.prove').innerText())
+        .match(/(?:gust excursion|motor activity)[^\n]*\d[^\n]*/g)
+        ?.join();
+    };
+    await expect.poll(unitUnderPointer, { timeout: 60_000 }).toMatch(/motor activity.* µs rms/);
+    await page.getByLabel('Layer').selectOption('excursion');
+    await expect
+      .poll(unitUnderPointer, { timeout: 60_000 })
+      .toMatch(/gust excursion \(peak rate\) [\d.]+ deg\/s(?! rms)/);
+    await map.scrollIntoViewIfNeeded();
+    await opened.shot('prove-map');
+    await opened.close();
+  }, 180_000);
+
   test('Carry: the sheet stands with its trials, a link carries craft and gains, junk links are refused', async () => {
     const context = await site.newContext({
       viewport: { width: 1440, height: 900 },

@@ -1,6 +1,7 @@
 /** The map of derivative gain against its cutoff: two layers, what the band allows, the trade-off front. */
 import { useEffect, useMemo, useRef, useState } from 'preact/hooks';
 import { runPool, type PoolRun } from '../../../trials/pool.ts';
+import { trialByName } from '../../../trials/registry.ts';
 import {
   axisValue,
   cellsInOrder,
@@ -19,7 +20,6 @@ import { proveTexts as words } from './texts.ts';
 
 const CELLS = 24;
 type Layer = 'excursion' | 'activity';
-const ALLOWED_ACTIVITY_US = 20;
 
 export function DerivativeMap() {
   const store = useStore();
@@ -81,6 +81,7 @@ export function DerivativeMap() {
   };
   const front = useMemo(() => (sweep === null ? null : frontOf(sweep, grids.current)), [sweep, version]);
   const gains = store.gains.value;
+  const levels = useMemo(() => (sweep === null ? [] : levelsOf(layer, sweep)), [layer, sweep]);
   return (
     <section class="panel prove-map" aria-label={words.map}>
       <h2>{words.map}</h2>
@@ -127,9 +128,9 @@ export function DerivativeMap() {
           }}
           grid={grids.current[layer]}
           version={version}
-          levels={layer === 'activity' ? ACTIVITY_LEVELS : EXCURSION_LEVELS}
+          levels={levels}
           valueLabel={words.layers[layer]}
-          valueUnit={layer === 'activity' ? 'µs rms' : 'deg/s rms'}
+          valueUnit={scoreOf(layer, sweep).unit}
           point={{ x: gains.axes.roll.d_us_per_dps2, y: Math.max(10, gains.derivativeLowPass_Hz) }}
           {...(front === null ? {} : { curves: [front] })}
           onPick={pick}
@@ -140,18 +141,21 @@ export function DerivativeMap() {
   );
 }
 
-const ACTIVITY_LEVELS = [
-  { at: 5, label: '5' },
-  { at: 10, label: '10' },
-  { at: ALLOWED_ACTIVITY_US, label: String(ALLOWED_ACTIVITY_US), strong: true },
-  { at: 40, label: '40' },
-];
-const EXCURSION_LEVELS = [
-  { at: 1, label: '1' },
-  { at: 1.5, label: '1.5' },
-  { at: 2, label: '2' },
-  { at: 4, label: '4', strong: true },
-];
+/** Contours either side of the band; peak rates of the demo crafts lie between 5 and 8 deg/s, noise from 2 µs. */
+const PLAIN_LEVELS = { activity: [5, 10, 40], excursion: [5.5, 6, 6.5, 7, 10] };
+
+/** The layer is the trial's own score, so that unit and band are its own too. */
+function scoreOf(layer: Layer, sweep: Sweep) {
+  return trialByName(sweep.trial).scores[layer === 'excursion' ? 0 : 1];
+}
+
+function levelsOf(layer: Layer, sweep: Sweep) {
+  const { name, band } = scoreOf(layer, sweep);
+  const allowed = (sweep.bands[name] ?? band).most;
+  const plain = PLAIN_LEVELS[layer].filter((at) => at !== allowed).map((at) => ({ at, label: String(at) }));
+  if (allowed === undefined) return plain;
+  return [...plain, { at: allowed, label: String(allowed), strong: true }].sort((a, b) => a.at - b.at);
+}
 
 /** The cells that no other betters in both layers, as a line over the map. */
 function frontOf(

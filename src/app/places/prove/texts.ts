@@ -31,9 +31,9 @@ export const proveTexts = {
   mapResume: 'Go on',
   mapJob: 'Map of D and cutoff',
   mapLayer: 'Layer',
-  layers: { excursion: 'gust excursion', activity: 'motor activity' },
+  layers: { excursion: 'gust excursion (peak rate)', activity: 'motor activity' },
   mapText:
-    'Each cell is one flight through the same gust and noise. The outline is the motor activity that the band allows; the line is the front where neither can be bettered without the other. A click takes the cell’s gains and flies them.',
+    'Each cell is one flight through the same gust and noise. The outline is what the band allows; the line is the front where neither can be bettered without the other. A click takes the cell’s gains and flies them.',
   refused: (count: number) => `${count} cells could not be flown`,
   spread: 'Spread over what is not known',
   spreadRun: 'Run 60 samples',
