@@ -1,6 +1,7 @@
 /**
- * From a stick's raw reading to a demand: calibration (centre, ends, reverse), deadband, curve; and the four
- * customary stick modes, which say what each of the two sticks' ways means.
+ * From a stick's raw reading to a demand: calibration (centre, ends, reverse), deadband, curve, slew; and the
+ * four customary stick modes, which say what each of the two sticks' ways means. The largest rate per axis,
+ * which turns a demand into deg/s, is the gains' own (`maxRate_dps`).
  */
 
 /** One physical axis as it was calibrated. */
@@ -37,6 +38,16 @@ export function shaped(value: number, feel: StickFeel): number {
   if (size <= feel.deadband) return 0;
   const x = Math.min(1, (size - feel.deadband) / (1 - feel.deadband));
   return Math.sign(value) * ((1 - feel.curve) * x + feel.curve * x * x * x);
+}
+
+/**
+ * Where a demand stands after `dt_s` when it may move no faster than `slew_per_s`, in shares of half the travel
+ * (0: at once).
+ */
+export function slewed(now: number, wanted: number, slew_per_s: number, dt_s: number): number {
+  if (slew_per_s <= 0) return wanted;
+  const most = slew_per_s * dt_s;
+  return now + Math.max(-most, Math.min(most, wanted - now));
 }
 
 /** 0 … 1 from a throttle stick that was calibrated like any other. */

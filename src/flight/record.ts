@@ -20,6 +20,15 @@ export interface RecordHeader {
   readonly scene: Scene;
   readonly seed: number;
   readonly faults: readonly Fault[];
+  /** What stood before gains or wind were changed in flight, oldest first; the header's own are the last. */
+  readonly earlier?: readonly EarlierSettings[];
+}
+
+/** Gains and wind of a part of the flight, up to a time. */
+export interface EarlierSettings {
+  readonly until_s: number;
+  readonly gains: Gains;
+  readonly wind: Wind;
 }
 
 /** Grows by doubling; rows are copied in, so a recorder may be shared with no one. */
@@ -92,6 +101,9 @@ function headerLines(header: RecordHeader): string[] {
     `# wind: ${JSON.stringify(header.wind)}`,
     `# scene: ${JSON.stringify(header.scene)}`,
     `# faults: ${JSON.stringify(header.faults)}`,
+    ...(header.earlier ?? []).map(
+      ({ until_s, gains, wind }) => `# until ${until_s.toFixed(6)} s: ${JSON.stringify({ gains, wind })}`,
+    ),
   ];
 }
 

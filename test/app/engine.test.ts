@@ -1,9 +1,10 @@
 import { describe, expect, it } from 'vitest';
 import { FlightEngine } from '../../src/app/worker/engine.ts';
+import { Punctuality } from '../../src/app/worker/punctuality.ts';
 import type { FlightSettings } from '../../src/app/worker/protocol.ts';
 import { OPEN_FIELD } from '../../src/craft/scene.ts';
 import { parseWind } from '../../src/craft/wind.ts';
-import { NEUTRAL_STICKS } from '../../src/flight/pilot.ts';
+import { NEUTRAL_STICKS, type Sticks } from '../../src/flight/pilot.ts';
 import { signalIndex } from '../../src/flight/signals.ts';
 import { demoBuild, demoGains } from '../physics/builds.ts';
 
@@ -32,10 +33,14 @@ function settings(change: Partial<FlightSettings> = {}): FlightSettings {
 function bench() {
   const rows: Float64Array[] = [];
   const said: string[] = [];
+  const sticks: Sticks[] = [];
   const engine = new FlightEngine({
     row: (signals) => rows.push(signals.slice()),
     began: () => said.push('began'),
-    rewound: (time_s) => said.push(`rewound ${time_s.toFixed(4)}`),
+    rewound: (time_s, _oldest_s, then) => {
+      said.push(`rewound ${time_s.toFixed(4)}`);
+      sticks.push(then);
+    },
     stalled: () => said.push('stalled'),
   });
   let now_ms = 0;
@@ -46,7 +51,7 @@ function bench() {
       while (engine.advance(now_ms));
     }
   };
-  return { engine, rows, said, run, now: () => now_ms };
+  return { engine, rows, said, sticks, run, now: () => now_ms };
 }
 
 const flying = { ...NEUTRAL_STICKS, armed: true, levelling: true, heightHold: true, throttle: 0.8 };
@@ -103,6 +108,81 @@ describe('flight engine', () => {
     }
   });
 
+  it('a rewind comes back with the sticks of that instant: armed again after the motors were stopped', () => {
+    const { engine, run, now, sticks } = bench();
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    engine.setSticks(flying);
+    run(2);
+    engine.setSticks({ ...NEUTRAL_STICKS });
+    run(1);
+    engine.rewind(1.5, now());
+    expect(sticks.at(-1)).toMatchObject({ armed: true, throttle: flying.throttle });
+  });
+
+  it('setting upright is replayed once, also at the tick of a snapshot', () => {
+    const { engine, rows, run, now } = bench();
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    // 100 ticks a quarter second: the press falls on the tick before which a snapshot is kept.
+    run(0.5);
+    engine.setUpright();
+    run(0.3);
+    const down = signalIndex('down_m');
+    const before = rows.at(-1)?.[down];
+    const time = rows.at(-1)?.[signalIndex('t_s')] ?? 0;
+    engine.rewind(0.6, now());
+    rows.length = 0;
+    engine.setSpeed(1, now());
+    run(0.3);
+    expect(rows.find((row) => row[signalIndex('t_s')] === time)?.[down]).toBe(before);
+  });
+
+  it('a flight that came apart says where, and flies on from before', () => {
+    const { engine, run, now } = bench();
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    engine.setSticks(flying);
+    run(1);
+    const { flight } = engine as unknown as { flight: { state: Float64Array } };
+    flight.state[10] = NaN;
+    run(0.2);
+    expect(engine.stopped).toMatchObject({ reason: 'diverged' });
+    expect(engine.stopped?.what).toMatch(/NaN/);
+    const ticks = engine.stats().ticks;
+    engine.rewind(0.8, now());
+    expect(engine.stopped).toBeNull();
+    engine.setSpeed(1, now());
+    run(0.5);
+    expect(engine.stats().ticks).toBe(ticks + 200);
+    expect(engine.stopped).toBeNull();
+  });
+
+  it('the record tells what stood before gains were changed in flight, one entry a movement', async () => {
+    const { engine, run, now } = bench();
+    const gains = demoGains('sandpiper');
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    run(1);
+    for (const p of [2, 2.1, 2.2]) {
+      const roll = { ...gains.axes.roll, p_us_per_dps: p };
+      engine.change(settings({ gains: { ...gains, axes: { ...gains.axes, roll } } }), now());
+      run(0.1);
+    }
+    const text = await engine.recordBlob().csv.text();
+    const earlier = text.split('\n').filter((line) => line.startsWith('# until '));
+    expect(earlier.length).toBe(1);
+    expect(earlier[0]).toContain('until 1.200000 s');
+    expect(earlier[0]).toContain(`"p_us_per_dps":${gains.axes.roll.p_us_per_dps}`);
+    expect(text).toMatch(/^# gains: .*"p_us_per_dps":2\.2/m);
+  });
+
+  it('another site of the same name is another site', () => {
+    const { engine, run, now, said } = bench();
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    run(0.1);
+    engine.change(settings({ scene: structuredClone(OPEN_FIELD) }), now());
+    expect(said.filter((one) => one === 'began').length).toBe(1);
+    engine.change(settings({ scene: { ...OPEN_FIELD, title: 'Higher' } }), now());
+    expect(said.filter((one) => one === 'began').length).toBe(2);
+  });
+
   it('takes new gains in flight without a jump, another loop rate by a fresh flight from the same place', () => {
     const { engine, rows, run, now, said } = bench();
     engine.begin(settings(), { kind: 'ground' }, 0);
@@ -156,5 +236,20 @@ describe('flight engine', () => {
     const high = noisy(0.035);
     expect(high.motorActivity_us).toBeGreaterThan(1.6 * low.motorActivity_us);
     expect(high.windingHeat_W).toBeGreaterThan(low.windingHeat_W);
+  });
+});
+
+describe('ticks on time', () => {
+  it('are a share of the last minute: what was late before is forgotten', () => {
+    const counted = new Punctuality();
+    expect(counted.share).toBe(1);
+    counted.count(500, 100, 50);
+    expect(counted.share).toBeCloseTo(0.5, 12);
+    for (let s = 1; s < 59; s++) counted.count(1000 * s + 500, 400, 0);
+    expect(counted.share).toBeCloseTo(1 - 50 / (100 + 58 * 400), 12);
+    counted.count(60_500, 400, 1);
+    expect(counted.share).toBeCloseTo(1 - 1 / (59 * 400), 12);
+    counted.count(500_000, 100, 0);
+    expect(counted.share).toBe(1);
   });
 });

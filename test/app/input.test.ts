@@ -1,3 +1,4 @@
+import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import {
   CalibrationWalk,
@@ -5,10 +6,20 @@ import {
   settingsFor,
   STANDARD_DEVICE,
 } from '../../src/app/input/gamepadSticks.ts';
+import {
+  actionOn,
+  FIRST_KEYS,
+  FLY_KEYS,
+  keyMapFrom,
+  keyName,
+  rebound,
+  type KeyMap,
+} from '../../src/app/input/keyMap.ts';
 import { KeyboardSticks } from '../../src/app/input/keyboardSticks.ts';
+import { PadChoice } from '../../src/app/input/padChoice.ts';
 import { Seat } from '../../src/app/input/seat.ts';
 
-const pad = (axes: number[], connected = true) => ({ id: 'pad', connected, axes });
+const pad = (axes: number[], connected = true) => ({ id: 'pad', index: 0, connected, axes });
 
 describe('keys as sticks', () => {
   it('move with a finite speed, spring back, and full travel needs Shift', () => {
@@ -49,7 +60,7 @@ describe('keys as sticks', () => {
 describe('gamepad', () => {
   it('flies Mode 2 from the standard mapping: stick away from the pilot lowers the nose', () => {
     const sticks = new GamepadSticks();
-    sticks.read(pad([0, -1, 1, -1]), STANDARD_DEVICE);
+    sticks.read(pad([0, -1, 1, -1]), STANDARD_DEVICE, 0.02);
     expect(sticks.throttle).toBeCloseTo(1, 6);
     expect(sticks.roll).toBeCloseTo(1, 6);
     expect(sticks.pitch).toBeCloseTo(-1, 6);
@@ -57,17 +68,29 @@ describe('gamepad', () => {
 
   it('unplugged in flight: sticks neutral, throttle held, told once', () => {
     const sticks = new GamepadSticks();
-    sticks.read(pad([0.5, -0.4, 0.9, 0.2]), STANDARD_DEVICE);
+    sticks.read(pad([0.5, -0.4, 0.9, 0.2]), STANDARD_DEVICE, 0.02);
     const held = sticks.throttle;
-    expect(sticks.read(null, STANDARD_DEVICE)).toBe(false);
+    expect(sticks.read(null, STANDARD_DEVICE, 0.02)).toBe(false);
     expect([sticks.roll, sticks.pitch, sticks.yaw]).toEqual([0, 0, 0]);
     expect(sticks.throttle).toBe(held);
     expect(sticks.lost).toBe(true);
   });
 
+  it('a slew keeps roll, pitch and yaw from jumping, and leaves the throttle to the hand', () => {
+    const sticks = new GamepadSticks();
+    sticks.read(pad([0, -1, 1, 0]), { ...STANDARD_DEVICE, slew_per_s: 4 }, 0.05);
+    expect(sticks.roll).toBeCloseTo(0.2, 9);
+    expect(sticks.throttle).toBeCloseTo(1, 6);
+  });
+
+  it('settings that were kept before slew was there are still read', () => {
+    const { slew_per_s: _later, ...earlier } = STANDARD_DEVICE;
+    expect(settingsFor(earlier, false)).toMatchObject({ known: true, settings: { slew_per_s: 0 } });
+  });
+
   it('a reading that is not a number leaves the stick in its middle', () => {
     const sticks = new GamepadSticks();
-    sticks.read(pad([NaN, Infinity]), STANDARD_DEVICE);
+    sticks.read(pad([NaN, Infinity]), STANDARD_DEVICE, 0.02);
     expect([sticks.roll, sticks.pitch, sticks.yaw]).toEqual([0, 0, 0]);
     expect(sticks.throttle).toBeCloseTo(0.5, 6);
   });
@@ -114,6 +137,85 @@ describe('gamepad', () => {
   });
 });
 
+describe('several devices', () => {
+  const two = (first: number[], second: number[], connected = true) => [
+    { index: 0, connected: true, axes: first },
+    null,
+    { index: 2, connected, axes: second },
+  ];
+
+  it('the one that was moved last flies; drift and unplugging do not confuse it', () => {
+    const choice = new PadChoice();
+    expect(choice.of(two([0, 0], [0, 0]))?.index).toBe(0);
+    expect(choice.of(two([0.02, 0], [0, 0.9]))?.index).toBe(2);
+    expect(choice.of(two([0.04, 0.05], [0, 0.9]))?.index).toBe(2);
+    expect(choice.of(two([NaN, 0.05], [0, 0.9]))?.index).toBe(2);
+    expect(choice.of(two([0, 0.7], [0, 0.9]))?.index).toBe(0);
+    expect(choice.of(two([0, 0.7], [0, 0], false))?.index).toBe(0);
+    expect(choice.of([null])).toBeNull();
+    expect(choice.of([{ index: 0, connected: true, axes: [0] }])).toBeNull();
+  });
+});
+
+describe('keys on other keys', () => {
+  it('an action goes on a free key; on a taken one the two change places', () => {
+    const free = rebound(FIRST_KEYS, 'arm', 'KeyQ');
+    expect(free?.arm).toBe('KeyQ');
+    const swapped = rebound(FIRST_KEYS, 'up', 'KeyS');
+    expect([swapped?.up, swapped?.down]).toEqual(['KeyS', 'KeyW']);
+  });
+
+  it('keys of the page and the browser are refused', () => {
+    for (const code of ['Escape', 'Tab', 'F5', 'ShiftLeft', 'ControlRight', 'AltLeft', 'MetaLeft']) {
+      expect(rebound(FIRST_KEYS, 'arm', code), code).toBeNull();
+    }
+  });
+
+  it('what was kept comes back, whatever it was; each key has one action', () => {
+    fc.assert(
+      fc.property(
+        fc.array(
+          fc.tuple(fc.constantFrom(...FLY_KEYS), fc.constantFrom('KeyQ', 'KeyW', 'F5', 'Space', 'Digit1')),
+          {
+            maxLength: 12,
+          },
+        ),
+        (changes) => {
+          let map: KeyMap = FIRST_KEYS;
+          for (const [action, code] of changes) map = rebound(map, action, code) ?? map;
+          expect(new Set(Object.values(map)).size).toBe(FLY_KEYS.length);
+          expect(keyMapFrom(JSON.parse(JSON.stringify(map)))).toEqual(map);
+          for (const action of FLY_KEYS) expect(actionOn(map, map[action])).toBe(action);
+        },
+      ),
+    );
+    expect(keyMapFrom('junk')).toEqual(FIRST_KEYS);
+    expect(keyMapFrom({ arm: 7 })).toEqual(FIRST_KEYS);
+    expect(keyMapFrom({ nothing: 'KeyQ', arm: 'KeyQ' }).arm).toBe('KeyQ');
+  });
+
+  it('names what stands on the key, by the layout where it is known', () => {
+    expect(['KeyW', 'ArrowUp', 'Space', 'Minus'].map((code) => keyName(code, null))).toEqual([
+      'W',
+      '↑',
+      'Space',
+      '−',
+    ]);
+    expect(keyName('KeyW', new Map([['KeyW', 'z']]))).toBe('Z');
+  });
+
+  it('bound keys move the sticks, the old ones no longer', () => {
+    const keys = new KeyboardSticks();
+    const map = rebound(FIRST_KEYS, 'rollRight', 'KeyO');
+    if (map === null) throw new Error('KeyO is free');
+    keys.bind(map);
+    expect(keys.press('ArrowRight', false)).toBe(false);
+    expect(keys.press('KeyO', false)).toBe(true);
+    keys.advance(0.1, true);
+    expect(keys.roll).toBeGreaterThan(0);
+  });
+});
+
 describe('seat', () => {
   it('assists are on for keys, go off when sticks take over and come back with keys', () => {
     let axes = [0, 0, 0, 0];
@@ -141,5 +243,85 @@ describe('seat', () => {
     seat.advance(0.1);
     expect(seat.state.value).toMatchObject({ source: 'keys', levelling: true, heightHold: true });
     expect(seat.sticks.roll).toBeLessThan(0);
+  });
+
+  /** A seat with one device, whose axes and mapping a test moves. */
+  function withDevice(device: { axes: number[]; mapping: string }, kept: unknown = undefined) {
+    return new Seat(
+      () => kept,
+      () => [{ ...pad(device.axes), mapping: device.mapping } as unknown as Gamepad],
+    );
+  }
+
+  it('a device of unknown axes does not fly until it was calibrated', () => {
+    const device = { axes: [0, 0, 0, -1], mapping: '' };
+    const seat = withDevice(device);
+    seat.advance(0.02);
+    device.axes = [0, 0, 0.9, -1];
+    seat.advance(0.02);
+    expect(seat.state.value).toMatchObject({ source: 'keys', uncalibrated: true, levelling: true });
+    const known = withDevice(device, STANDARD_DEVICE);
+    known.advance(0.02);
+    known.advance(0.02);
+    expect(known.state.value).toMatchObject({ source: 'gamepad', uncalibrated: false });
+  });
+
+  it('throttle alone takes over, and arming waits until it is down', () => {
+    const device = { axes: [0, 0, 0, 0], mapping: 'standard' };
+    const seat = withDevice(device);
+    seat.advance(0.02);
+    expect(seat.state.value.source).toBe('keys');
+    device.axes = [0, -0.9, 0, 0];
+    seat.advance(0.02);
+    expect(seat.state.value.source).toBe('gamepad');
+    expect(seat.arm(true)).toBe(false);
+    expect(seat.state.value.armed).toBe(false);
+    device.axes = [0, 1, 0, 0];
+    seat.advance(0.02);
+    expect(seat.arm(true)).toBe(true);
+    expect(seat.state.value.armed).toBe(true);
+  });
+
+  it('while it is being calibrated a device moves nothing', () => {
+    const device = { axes: [0, 0, 0.9, 0], mapping: 'standard' };
+    const seat = withDevice(device);
+    seat.advance(0.02);
+    seat.advance(0.02);
+    expect(seat.sticks.roll).toBeGreaterThan(0.5);
+    const throttle = seat.sticks.throttle;
+    seat.calibrating = true;
+    device.axes = [0, -1, -0.9, 1];
+    seat.advance(0.02);
+    expect(seat.sticks).toMatchObject({ roll: 0, pitch: 0, yaw: 0, throttle });
+  });
+
+  it('with height hold the motors idle on the ground until the person asks to climb', () => {
+    const seat = new Seat(
+      () => undefined,
+      () => [],
+    );
+    seat.arm(true);
+    seat.advance(0.02, true);
+    expect(seat.sticks).toMatchObject({ armed: true, heightHold: false, throttle: 0 });
+    seat.keys.press('KeyW', false);
+    seat.advance(0.05, true);
+    seat.advance(0.05, true);
+    expect(seat.sticks.heightHold).toBe(true);
+    expect(seat.sticks.throttle).toBeGreaterThan(0.5);
+    seat.keys.release('KeyW', false);
+    for (let k = 0; k < 50; k++) seat.advance(0.02, false);
+    expect(seat.sticks).toMatchObject({ heightHold: true, throttle: 0.5 });
+    for (let k = 0; k < 50; k++) seat.advance(0.02, true);
+    expect(seat.sticks).toMatchObject({ heightHold: false, throttle: 0 });
+  });
+
+  it('after a rewind arming, assists and throttle are as they were then', () => {
+    const seat = new Seat(
+      () => undefined,
+      () => [],
+    );
+    seat.restore({ ...seat.sticks, armed: true, levelling: false, heightHold: false, throttle: 0.43 });
+    seat.advance(0.02, false);
+    expect(seat.sticks).toMatchObject({ armed: true, levelling: false, heightHold: false, throttle: 0.43 });
   });
 });

@@ -1,6 +1,6 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
-import { calibrated, demandOf, shaped, type StickDemand } from '../../src/control/sticks.ts';
+import { calibrated, demandOf, shaped, slewed, type StickDemand } from '../../src/control/sticks.ts';
 import { parseSticks, StickPlayer } from '../../src/control/sticksFile.ts';
 
 const share = fc.double({ min: -1, max: 1, noNaN: true });
@@ -21,6 +21,27 @@ describe('stick shaping', () => {
         expect(Math.abs(shaped(f.deadband + 1e-9, f))).toBeLessThan(1e-6);
       }),
     );
+  });
+
+  it('slews no faster than it may, never past what is wanted, and at once where no slew is set', () => {
+    fc.assert(
+      fc.property(
+        share,
+        share,
+        fc.double({ min: 0.1, max: 50, noNaN: true }),
+        fc.double({ min: 0.001, max: 0.1, noNaN: true }),
+        (now, wanted, slew, dt) => {
+          const next = slewed(now, wanted, slew, dt);
+          expect(Math.abs(next - now)).toBeLessThanOrEqual(slew * dt + 1e-12);
+          expect(Math.abs(wanted - next)).toBeLessThanOrEqual(Math.abs(wanted - now) + 1e-12);
+          expect(slewed(now, wanted, 0, dt)).toBe(wanted);
+        },
+      ),
+    );
+    // Half the travel a second: from neutral to the end in two seconds (by its definition).
+    let at = 0;
+    for (let k = 0; k < 100; k++) at = slewed(at, 1, 0.5, 0.02);
+    expect(at).toBeCloseTo(1, 9);
   });
 
   it('calibrates each side of the centre to its own end and stays within ±1', () => {

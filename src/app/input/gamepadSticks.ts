@@ -8,6 +8,7 @@ import {
   demandOf,
   PLAIN_FEEL,
   shaped,
+  slewed,
   throttleShare,
   type StickCalibration,
   type StickDemand,
@@ -36,6 +37,8 @@ export const deviceSchema = z.strictObject({
   mode: z.union([z.literal(1), z.literal(2), z.literal(3), z.literal(4)]),
   deadband: z.number().min(0).max(0.3),
   curve: z.number().min(0).max(1),
+  /** Fastest movement of roll, pitch and yaw, shares of half the travel a second; 0: as fast as the hand. */
+  slew_per_s: z.number().min(0).max(50).default(0),
   /** The throttle stick stays where it is put (a transmitter), or springs back (a gamepad). */
   throttleStays: z.boolean(),
 });
@@ -60,6 +63,7 @@ export const STANDARD_DEVICE: DeviceSettings = {
   mode: 2,
   deadband: 0.08,
   curve: PLAIN_FEEL.curve,
+  slew_per_s: 0,
   throttleStays: false,
 };
 
@@ -89,8 +93,8 @@ export class GamepadSticks {
   private readonly ways: StickWays = { leftX: 0, leftY: 0, rightX: 0, rightY: 0 };
   private readonly demand: StickDemand = { roll: 0, pitch: 0, yaw: 0, lift: 0 };
 
-  /** Takes one reading; null: no device. Returns whether a device is there. */
-  read(pad: PadReading | null, settings: DeviceSettings): boolean {
+  /** Takes one reading, `dt_s` after the last; null: no device. Returns whether a device is there. */
+  read(pad: PadReading | null, settings: DeviceSettings, dt_s: number): boolean {
     if (pad === null || !pad.connected) {
       if (this.present) this.lost = true;
       this.present = false;
@@ -105,9 +109,10 @@ export class GamepadSticks {
       this.ways[way] = calibrated(pad.axes[c.axis] ?? c.centre, c);
     }
     demandOf(this.ways, settings.mode, this.demand);
-    this.roll = shaped(this.demand.roll, settings);
-    this.pitch = shaped(this.demand.pitch, settings);
-    this.yaw = shaped(this.demand.yaw, settings);
+    const slew = settings.slew_per_s;
+    this.roll = slewed(this.roll, shaped(this.demand.roll, settings), slew, dt_s);
+    this.pitch = slewed(this.pitch, shaped(this.demand.pitch, settings), slew, dt_s);
+    this.yaw = slewed(this.yaw, shaped(this.demand.yaw, settings), slew, dt_s);
     this.throttle = throttleShare(
       settings.throttleStays ? this.demand.lift : shaped(this.demand.lift, settings),
     );

@@ -2,8 +2,9 @@
  * Keys as sticks: a held key moves a virtual stick at a finite rate, a released one springs back, so that
  * flying by keys is smooth. Throttle springs to the middle while height hold is on and stays put while not.
  */
+import { FIRST_KEYS, type KeyMap } from './keyMap.ts';
 
-export const KEY_ACTIONS = [
+const STICK_KEYS = [
   'rollLeft',
   'rollRight',
   'noseDown',
@@ -13,18 +14,7 @@ export const KEY_ACTIONS = [
   'up',
   'down',
 ] as const;
-export type KeyAction = (typeof KEY_ACTIONS)[number];
-
-export const DEFAULT_KEYS: Readonly<Record<KeyAction, string>> = {
-  rollLeft: 'ArrowLeft',
-  rollRight: 'ArrowRight',
-  noseDown: 'ArrowUp',
-  noseUp: 'ArrowDown',
-  yawLeft: 'KeyA',
-  yawRight: 'KeyD',
-  up: 'KeyW',
-  down: 'KeyS',
-};
+type StickKey = (typeof STICK_KEYS)[number];
 
 /** Full travel in this time, back in that, s. */
 const OUT_S = 0.35;
@@ -41,9 +31,9 @@ export class KeyboardSticks {
   private readonly held = new Set<string>();
   private strong = false;
 
-  constructor(private keys: Readonly<Record<KeyAction, string>> = DEFAULT_KEYS) {}
+  constructor(private keys: KeyMap = FIRST_KEYS) {}
 
-  bind(keys: Readonly<Record<KeyAction, string>>): void {
+  bind(keys: KeyMap): void {
     this.keys = keys;
     this.held.clear();
   }
@@ -51,7 +41,7 @@ export class KeyboardSticks {
   /** Whether the key flies; a page must then keep it from scrolling. */
   press(code: string, shift: boolean): boolean {
     this.strong = shift;
-    if (!Object.values(this.keys).includes(code)) return false;
+    if (!STICK_KEYS.some((one) => this.keys[one] === code)) return false;
     this.held.add(code);
     return true;
   }
@@ -89,7 +79,7 @@ export class KeyboardSticks {
     this.throttle = share;
   }
 
-  private pair(minus: KeyAction, plus: KeyAction): number {
+  private pair(minus: StickKey, plus: StickKey): number {
     return (this.held.has(this.keys[plus]) ? 1 : 0) - (this.held.has(this.keys[minus]) ? 1 : 0);
   }
 }

@@ -10,44 +10,57 @@ export interface TouchStick {
 /** Travel to full deflection, CSS pixels. */
 const REACH_PX = 70;
 
-/** Follows the pointers on one thumb area; returns the end of it. */
-export function followThumb(area: HTMLElement, stick: TouchStick, onMove: () => void): () => void {
+/**
+ * Follows the pointers on one thumb area; returns the end of it. Where the touch began and where it stands go to
+ * the area's style as `--from-x`, `--from-y`, `--to-x`, `--to-y`, for whoever draws it; class `held` while held.
+ */
+export function followThumb(area: HTMLElement, stick: TouchStick): () => void {
   let pointer: number | null = null;
-  let x0 = 0;
-  let y0 = 0;
+  let from = { x: 0, y: 0 };
+  const show = (name: string, x: number, y: number): void => {
+    const box = area.getBoundingClientRect();
+    area.style.setProperty(`--${name}-x`, `${x - box.left}px`);
+    area.style.setProperty(`--${name}-y`, `${y - box.top}px`);
+  };
   const down = (event: PointerEvent): void => {
     if (pointer !== null || event.pointerType === 'mouse') return;
     pointer = event.pointerId;
     area.setPointerCapture(pointer);
-    x0 = event.clientX;
-    y0 = event.clientY;
+    from = { x: event.clientX, y: event.clientY };
     stick.active = true;
+    area.classList.add('held');
+    show('from', from.x, from.y);
+    show('to', from.x, from.y);
     event.preventDefault();
-    onMove();
   };
   const move = (event: PointerEvent): void => {
     if (event.pointerId !== pointer) return;
-    stick.x = clamp((event.clientX - x0) / REACH_PX);
-    stick.y = clamp((y0 - event.clientY) / REACH_PX);
-    onMove();
+    stick.x = clamp((event.clientX - from.x) / REACH_PX);
+    stick.y = clamp((from.y - event.clientY) / REACH_PX);
+    show('to', from.x + stick.x * REACH_PX, from.y - stick.y * REACH_PX);
   };
-  const up = (event: PointerEvent): void => {
-    if (event.pointerId !== pointer) return;
+  const letGo = (): void => {
     pointer = null;
     stick.x = 0;
     stick.y = 0;
     stick.active = false;
-    onMove();
+    area.classList.remove('held');
+  };
+  const up = (event: PointerEvent): void => {
+    if (event.pointerId === pointer) letGo();
   };
   area.addEventListener('pointerdown', down);
   area.addEventListener('pointermove', move);
-  area.addEventListener('pointerup', up);
-  area.addEventListener('pointercancel', up);
+  for (const name of ['pointerup', 'pointercancel', 'lostpointercapture'] as const) {
+    area.addEventListener(name, up);
+  }
   return () => {
+    letGo();
     area.removeEventListener('pointerdown', down);
     area.removeEventListener('pointermove', move);
-    area.removeEventListener('pointerup', up);
-    area.removeEventListener('pointercancel', up);
+    for (const name of ['pointerup', 'pointercancel', 'lostpointercapture'] as const) {
+      area.removeEventListener(name, up);
+    }
   };
 }
 

@@ -39,14 +39,14 @@ export interface ClientState {
   readonly loop_Hz: number;
 }
 
-const NO_STATS: TickStats = { ticks: 0, late: 0, motorActivity_us: 0, windingHeat_W: 0 };
+const NO_STATS: TickStats = { ticks: 0, late: 0, onTime: 1, motorActivity_us: 0, windingHeat_W: 0 };
 
 export class FlightClient {
   readonly ring: SignalRing = createRing(ROW + 1, RING_ROWS);
   readonly state = signal<ClientState>({ speed: 1, stats: NO_STATS, stopped: null, loop_Hz: 400 });
   /** Newest row, for read-outs. */
   readonly newest = new Float64Array(ROW);
-  private readonly worker: Worker;
+  private worker: Worker;
   private readonly row = new Float32Array(ROW + 1);
   private newestArrival_ms = 0;
   private gusts: readonly (readonly [number, number])[] = [];
@@ -62,15 +62,33 @@ export class FlightClient {
   onRefused: (file: string, problems: readonly Problem[]) => void = () => undefined;
   onStalled: (away_s: number) => void = () => undefined;
   onBegan: () => void = () => undefined;
-  onRewound: (time_s: number) => void = () => undefined;
+  /** The flight is back at an earlier instant, where the sticks stood so. */
+  onRewound: (sticks: Sticks) => void = () => undefined;
+  /** The worker itself failed; `begin` starts a new one. */
+  onFailed: (what: string) => void = () => undefined;
+  private failed = false;
 
-  constructor(worker: Worker) {
-    this.worker = worker;
+  constructor(private readonly newWorker: () => Worker) {
+    this.worker = this.listen(newWorker());
+  }
+
+  private listen(worker: Worker): Worker {
     worker.onmessage = ({ data }: MessageEvent<FromWorker>) => this.hear(data);
+    worker.onerror = (event) => {
+      event.preventDefault();
+      this.failed = true;
+      this.state.value = { ...this.state.value, speed: 0 };
+      this.onFailed(event.message);
+    };
+    return worker;
   }
 
   begin(settings: FlightSettings, start: Start): void {
-    this.loaded = settings.build.payload !== undefined;
+    if (this.failed) {
+      this.worker.terminate();
+      this.worker = this.listen(this.newWorker());
+      this.failed = false;
+    }
     this.say({ kind: 'begin', settings, start });
   }
 
@@ -101,7 +119,6 @@ export class FlightClient {
   }
 
   dropPayload(): void {
-    this.loaded = false;
     this.say({ kind: 'drop-payload' });
   }
 
@@ -133,7 +150,7 @@ export class FlightClient {
     } else if (message.kind === 'rewound') {
       truncateRing(this.ring, message.time_s);
       this.state.value = { ...this.state.value, stopped: null, speed: 0 };
-      this.onRewound(message.time_s);
+      this.onRewound(message.sticks);
     } else if (message.kind === 'record') {
       for (const wait of this.recordWaits.splice(0)) wait(message);
     } else if (message.kind === 'refused') this.onRefused(message.file, message.problems);
@@ -156,6 +173,7 @@ export class FlightClient {
       this.newest.set(rows.subarray((message.count - 1) * ROW, message.count * ROW));
       this.newestArrival_ms = performance.now();
     }
+    this.loaded = message.loaded;
     const old = this.state.value;
     if (
       old.stats.ticks !== message.stats.ticks ||
@@ -229,5 +247,7 @@ export class FlightClient {
 
 /** Starts the flight worker. */
 export function startFlightClient(): FlightClient {
-  return new FlightClient(new Worker(new URL('./flight.worker.ts', import.meta.url), { type: 'module' }));
+  return new FlightClient(
+    () => new Worker(new URL('./flight.worker.ts', import.meta.url), { type: 'module' }),
+  );
 }

@@ -5,9 +5,10 @@
 import { InputError, refuse } from '../../craft/problem.ts';
 import { Flight, type Start } from '../../flight/flight.ts';
 import { NEUTRAL_STICKS, type Sticks } from '../../flight/pilot.ts';
-import { recordCsv, Recorder } from '../../flight/record.ts';
+import { recordCsv, Recorder, type EarlierSettings } from '../../flight/record.ts';
 import { SIGNAL_NAMES, signalIndex } from '../../flight/signals.ts';
 import type { FlightSettings, Speed, TickStats } from './protocol.ts';
+import { Punctuality } from './punctuality.ts';
 
 /** A snapshot this often, s, for at most this long back. */
 const SNAPSHOT_S = 0.25;
@@ -23,6 +24,8 @@ const ROWS_PER_S = 500;
 /** Rows that the record keeps at most; then its oldest quarter goes. */
 const LONGEST_RECORD = 600_000;
 const ACTIVITY_CORNER_HZ = 5;
+/** Changes nearer to each other than this are one movement of a slider, s. */
+const ONE_CHANGE_S = 0.5;
 
 type Event =
   | { readonly tick: number; readonly kind: 'sticks'; readonly sticks: Sticks }
@@ -41,7 +44,7 @@ export interface EngineOutput {
   /** One tick's signals; the array is reused. */
   row(signals: Float64Array): void;
   began(time_s: number, loop_Hz: number): void;
-  rewound(time_s: number, oldest_s: number): void;
+  rewound(time_s: number, oldest_s: number, sticks: Sticks): void;
   stalled(away_s: number): void;
 }
 
@@ -54,6 +57,8 @@ export class FlightEngine {
   private keyframes: Keyframe[] = [];
   private events: Event[] = [];
   private record = new Recorder();
+  /** Settings that stood earlier in this flight, each until its time. */
+  private earlier: EarlierSettings[] = [];
   /** Tick of the record's first row. */
   private recordFrom = 0;
   /** Where time began: at `origin_ms` the tick `originTick` was due. */
@@ -62,6 +67,7 @@ export class FlightEngine {
   private lastCall_ms = -1;
   private late = 0;
   private ticks = 0;
+  private readonly punctuality = new Punctuality();
   private readonly slow_us = new Float64Array(4);
   private activity_us2 = 0;
   private heat_W = 0;
@@ -79,14 +85,16 @@ export class FlightEngine {
     return this.flight?.stopped ?? null;
   }
 
-  get time_s(): number {
-    return this.flight?.time_s ?? 0;
+  /** The payload is still on. */
+  get loaded(): boolean {
+    return this.settings?.build.payload !== undefined && this.flight?.payloadDropped === false;
   }
 
   stats(): TickStats {
     return {
       ticks: this.ticks,
       late: this.late,
+      onTime: this.punctuality.share,
       motorActivity_us: Math.sqrt(this.activity_us2),
       windingHeat_W: this.heat_W,
     };
@@ -114,12 +122,12 @@ export class FlightEngine {
       this.begin(settings, this.start, now_ms);
       return;
     }
-    if (settings.scene !== old.scene && settings.scene.name !== old.scene.name) {
+    if (!alike(settings.scene, old.scene)) {
       this.begin(settings, { kind: 'ground' }, now_ms);
       return;
     }
     const same =
-      JSON.stringify(settings.build) === JSON.stringify(old.build) &&
+      alike(settings.build, old.build) &&
       settings.gains.loop_Hz === old.gains.loop_Hz &&
       settings.seed === old.seed;
     if (!same) {
@@ -129,9 +137,21 @@ export class FlightEngine {
       this.output.began(0, settings.gains.loop_Hz);
       return;
     }
+    this.noteEarlier(old, settings, flight.time_s);
     this.settings = settings;
     this.events.push({ tick: flight.tickIndex, kind: 'settings', settings });
     applySettings(flight, settings);
+  }
+
+  /** Keeps for the record what stood until now, where gains or wind change. */
+  private noteEarlier(old: FlightSettings, next: FlightSettings, until_s: number): void {
+    if (alike(old.gains, next.gains) && alike(old.wind, next.wind)) return;
+    const last = this.earlier.at(-1);
+    if (last !== undefined && until_s - last.until_s < ONE_CHANGE_S) {
+      this.earlier[this.earlier.length - 1] = { ...last, until_s };
+    } else if (until_s > 0) {
+      this.earlier.push({ until_s, gains: old.gains, wind: old.wind });
+    }
   }
 
   setSticks(sticks: Sticks): void {
@@ -181,12 +201,14 @@ export class FlightEngine {
     // Enough for one slice even on a slow machine; what is left over is due at the next call.
     const most = Math.max(1, Math.ceil((SLICE_MS * 4) / 1000 / flight.tick_s));
     let done = 0;
+    const lateBefore = this.late;
     while (flight.tickIndex < due && done < most && flight.stopped === null) {
       const due_ms = this.origin_ms + (flight.tickIndex - this.originTick) * perTick_ms;
       if (now_ms - due_ms > FRAME_MS + perTick_ms) this.late++;
       this.tickOnce(flight);
       done++;
     }
+    if (done > 0) this.punctuality.count(now_ms, done, this.late - lateBefore);
     return flight.tickIndex < due;
   }
 
@@ -245,15 +267,19 @@ export class FlightEngine {
     const back = newFlight(keyframe.settings, this.start);
     applySettings(back, keyframe.settings);
     back.load(keyframe.snapshot);
-    let sticks = keyframe.sticks;
-    const events = this.events.filter((event) => event.tick >= keyframe.tick && event.tick < wanted);
+    let { sticks } = keyframe;
+    let then = keyframe.settings;
+    // What was done at the snapshot's own tick is in it already.
+    const events = this.events.filter((event) => event.tick > keyframe.tick && event.tick < wanted);
     while (back.tickIndex < wanted) {
       while (events.length > 0 && events[0].tick <= back.tickIndex) {
         const event = events.shift();
         if (event === undefined) break;
         if (event.kind === 'sticks') sticks = event.sticks;
-        else if (event.kind === 'settings') applySettings(back, event.settings);
-        else if (event.kind === 'upright') back.setUpright();
+        else if (event.kind === 'settings') {
+          then = event.settings;
+          applySettings(back, then);
+        } else if (event.kind === 'upright') back.setUpright();
         else back.dropPayload();
       }
       back.tick(sticks);
@@ -265,16 +291,18 @@ export class FlightEngine {
     this.events = this.events.filter((event) => event.tick < wanted);
     this.events.push({ tick: wanted, kind: 'settings', settings });
     this.record.truncate(wanted - this.recordFrom);
-    this.sticks = { ...sticks, armed: this.sticks.armed };
+    this.earlier = this.earlier.filter((one) => one.until_s < back.time_s);
+    this.noteEarlier(then, settings, back.time_s);
+    this.sticks = { ...sticks };
     this.setSpeed(0, now_ms);
-    this.output.rewound(back.time_s, this.keyframes[0].tick * back.tick_s);
+    this.output.rewound(back.time_s, this.keyframes[0].tick * back.tick_s, this.sticks);
   }
 
   /** The record so far as CSV, with everything needed to fly it again. */
   recordBlob(): { csv: Blob; rows: number } {
     const { settings } = this;
     if (settings === null) throw new Error('no flight has begun');
-    const pieces = [...recordCsv(this.record, settings)];
+    const pieces = [...recordCsv(this.record, { ...settings, earlier: this.earlier })];
     return { csv: new Blob(pieces, { type: 'text/csv' }), rows: this.record.length };
   }
 
@@ -285,6 +313,7 @@ export class FlightEngine {
     this.events = [{ tick: 0, kind: 'sticks', sticks: this.sticks }];
     this.record = new Recorder();
     this.recordFrom = 0;
+    this.earlier = [];
     this.stride = Math.max(1, Math.ceil(settings.gains.loop_Hz / ROWS_PER_S));
     this.restartClock(now_ms);
   }
@@ -317,6 +346,11 @@ function applySettings(flight: Flight, settings: FlightSettings): void {
   if (flight.wind !== settings.wind) flight.setWind(settings.wind);
   if (flight.faults !== settings.faults) flight.setFaults(settings.faults);
   flight.setNoise(settings.noiseScale, settings.vibrationScale);
+}
+
+/** Same content; plain data that came through a message is never the same object. */
+function alike(a: unknown, b: unknown): boolean {
+  return a === b || JSON.stringify(a) === JSON.stringify(b);
 }
 
 function sameSticks(a: Sticks, b: Sticks): boolean {

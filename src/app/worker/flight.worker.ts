@@ -29,9 +29,9 @@ const engine = new FlightEngine({
     count = 0;
     say({ kind: 'began', time_s, loop_Hz });
   },
-  rewound(time_s, oldest_s) {
+  rewound(time_s, oldest_s, sticks) {
     count = 0;
-    say({ kind: 'rewound', time_s, oldest_s });
+    say({ kind: 'rewound', time_s, oldest_s, sticks });
   },
   stalled(away_s) {
     say({ kind: 'stalled', away_s });
@@ -41,9 +41,8 @@ const engine = new FlightEngine({
 function send(): void {
   const { buffer } = rows;
   if (!(buffer instanceof ArrayBuffer)) return;
-  say({ kind: 'rows', buffer, count, speed: engine.speed, stats: engine.stats(), stopped: engine.stopped }, [
-    buffer,
-  ]);
+  const { speed, stopped, loaded } = engine;
+  say({ kind: 'rows', buffer, count, speed, stats: engine.stats(), stopped, loaded }, [buffer]);
   rows = takeBuffer();
   count = 0;
 }

@@ -40,6 +40,8 @@ export interface TickStats {
   readonly ticks: number;
   /** Ticks that began later than one screen frame after they were due. */
   readonly late: number;
+  /** Share of the last minute's ticks that were not late. */
+  readonly onTime: number;
   /** Root mean square of the motor commands above 5 Hz over the last second, µs. */
   readonly motorActivity_us: number;
   /** Mean winding heat of the four motors over the last second, W. */
@@ -55,11 +57,19 @@ export type FromWorker =
       readonly speed: Speed;
       readonly stats: TickStats;
       readonly stopped: Stopped | null;
+      /** The payload is still on. */
+      readonly loaded: boolean;
     }
   /** A flight has begun anew; earlier rows are no longer of it. */
   | { readonly kind: 'began'; readonly time_s: number; readonly loop_Hz: number }
   /** Everything after this moment is taken back. */
-  | { readonly kind: 'rewound'; readonly time_s: number; readonly oldest_s: number }
+  | {
+      readonly kind: 'rewound';
+      readonly time_s: number;
+      readonly oldest_s: number;
+      /** The sticks as they stood then. */
+      readonly sticks: Sticks;
+    }
   | { readonly kind: 'record'; readonly csv: Blob; readonly rows: number }
   | { readonly kind: 'refused'; readonly file: string; readonly problems: readonly Problem[] }
   /** The page was away for long; the flight was paused rather than hurried after. */

@@ -2,81 +2,144 @@
 import { useEffect, useRef } from 'preact/hooks';
 import { signalIndex } from '../../../flight/signals.ts';
 import { useStore } from '../../store/context.ts';
+import { shownUnit } from '../../store/units.ts';
 import type { FlightView } from '../../view3d/flightView.ts';
 import type { FlightSession } from './session.ts';
 import { flyTexts } from './texts.ts';
+import { roughnessOf } from './watch.ts';
 
-const words = flyTexts.readout;
-const at = (name: string) => signalIndex(name);
-const DOWN = at('down_m');
-const V = at('vn_mps');
-const Q = at('qw');
-const BATTERY = at('battery_V');
-const CURRENT = at('current_A');
+const DOWN = signalIndex('down_m');
+const VELOCITY = signalIndex('vn_mps');
+const ATTITUDE = signalIndex('qw');
+const BATTERY = signalIndex('battery_V');
+const CURRENT = signalIndex('current_A');
+const CHARGE = signalIndex('charge');
 const EVERY_MS = 100;
+/** Below this current the motors are off and a time left means nothing, A. */
+const LEAST_CURRENT_A = 1;
+/** The current is smoothed over about this time for the time left, s. */
+const CURRENT_MEMORY_S = 3;
 
-const CELLS = [
+type Name = Exclude<keyof typeof flyTexts.readout, 'ticks' | 'frames'>;
+
+/** Of the flight, in the order they are read: name and unit. */
+const CELLS: readonly (readonly [Name, string])[] = [
   ['height', 'm'],
   ['speed', 'm/s'],
   ['climb', 'm/s'],
   ['tilt', 'deg'],
   ['battery', 'V'],
+  ['charge', '%'],
   ['current', 'A'],
+  ['left', 'min'],
   ['activity', 'µs rms'],
   ['heat', 'W'],
-  ['ticks', '%'],
-  ['frames', ''],
-] as const;
+];
+const HINTS: Partial<Record<Name, string>> = {
+  activity: flyTexts.activityHint,
+  heat: flyTexts.heatHint,
+  left: flyTexts.leftHint,
+};
 
-export function ReadOut(props: { session: FlightSession; view: () => FlightView | null }) {
+/** Calls `write` now and then while mounted. */
+function useRepeatedly(write: () => void, deps: readonly unknown[]): void {
+  useEffect(() => {
+    const timer = setInterval(write, EVERY_MS);
+    return () => clearInterval(timer);
+  }, deps);
+}
+
+export function ReadOut(props: { session: FlightSession }) {
+  const { session } = props;
   const host = useRef<HTMLDListElement>(null);
   const store = useStore();
-  const imperial = store.settings.value.units === 'imperial';
-  useEffect(() => {
-    const list = host.current;
-    if (list === null) return;
-    const cells = [...list.querySelectorAll('dd b')];
-    const timer = setInterval(() => {
-      const { client, at_s } = props.session;
-      const get = (index: number) => client.value(index, at_s.value);
-      const vn = get(V);
-      const ve = get(V + 1);
-      const [x, y] = [get(Q + 1), get(Q + 2)];
-      const { stats } = client.state.value;
-      const length = imperial ? 3.28084 : 1;
-      const values = [
-        (-get(DOWN) * length).toFixed(1),
-        (Math.hypot(vn, ve) * length).toFixed(1),
-        (-get(V + 2) * length).toFixed(1),
-        ((Math.acos(Math.max(-1, Math.min(1, 1 - 2 * (x * x + y * y)))) * 180) / Math.PI).toFixed(0),
-        get(BATTERY).toFixed(2),
-        get(CURRENT).toFixed(1),
-        stats.motorActivity_us.toFixed(1),
-        stats.windingHeat_W.toFixed(1),
-        stats.ticks === 0 ? '—' : (100 * (1 - stats.late / stats.ticks)).toFixed(2),
-        (props.view()?.stats().fps ?? 0).toFixed(0),
-      ];
-      values.forEach((value, i) => {
-        if (cells[i].textContent !== value) cells[i].textContent = value;
-      });
-    }, EVERY_MS);
-    return () => clearInterval(timer);
-  }, [props.session, imperial]);
+  const { units } = store.settings.value;
+  const build = store.build.value;
+  const slowCurrent_A = useRef(0);
+  useRepeatedly(() => {
+    const cells = host.current?.querySelectorAll('dd b');
+    if (cells === undefined) return;
+    const { client, at_s } = session;
+    const get = (index: number) => client.value(index, at_s.value);
+    const { stats } = client.state.value;
+    const shown = (value: number, unit: string) => fixed(value * shownUnit(unit, units).factor, 1);
+    const current = get(CURRENT);
+    slowCurrent_A.current += (EVERY_MS / 1000 / CURRENT_MEMORY_S) * (current - slowCurrent_A.current);
+    const left_min = (60 * get(CHARGE) * build.battery.capacity_Ah) / slowCurrent_A.current;
+    const [x, y] = [get(ATTITUDE + 1), get(ATTITUDE + 2)];
+    const tilt_rad = Math.acos(Math.max(-1, Math.min(1, 1 - 2 * (x * x + y * y))));
+    const values: Record<Name, string> = {
+      height: shown(-get(DOWN), 'm'),
+      speed: shown(Math.hypot(get(VELOCITY), get(VELOCITY + 1)), 'm/s'),
+      climb: shown(-get(VELOCITY + 2), 'm/s'),
+      tilt: fixed((tilt_rad * 180) / Math.PI, 0),
+      battery: fixed(get(BATTERY), 2),
+      charge: fixed(100 * get(CHARGE), 0),
+      current: fixed(current, 1),
+      left: slowCurrent_A.current > LEAST_CURRENT_A ? fixed(left_min, 0) : '–',
+      activity: fixed(stats.motorActivity_us, 1),
+      heat: fixed(stats.windingHeat_W, 1),
+    };
+    CELLS.forEach(([name], i) => write(cells[i], values[name]));
+    const rough = roughnessOf(stats.motorActivity_us / (build.esc.max_us - build.esc.min_us));
+    const word = host.current?.querySelector('.fly-rough');
+    if (word instanceof Element) write(word, flyTexts.roughness[rough]);
+    host.current?.classList.toggle('rough', rough !== 'quiet');
+  }, [session, units, build]);
   return (
     <dl class="fly-read" ref={host}>
       {CELLS.map(([name, unit]) => (
-        <div
-          key={name}
-          title={
-            name === 'activity' ? flyTexts.activityHint : name === 'heat' ? flyTexts.heatHint : undefined
-          }
-        >
-          <dt>{words[name]}</dt>
+        <div key={name} title={HINTS[name]}>
+          <dt>{flyTexts.readout[name]}</dt>
           <dd>
-            <b>—</b> <span class="unit">{imperial ? unit.replace(/^m/, 'ft') : unit}</span>
+            <b>–</b> <span class="unit">{shownUnit(unit, units).unit}</span>
+            {name === 'activity' && <strong class="fly-rough" />}
           </dd>
         </div>
       ))}
     </dl>
   );
+}
+
+/** How the program itself keeps up, small in the view's corner. */
+export function MachineReadOut(props: { session: FlightSession; view: () => FlightView | null }) {
+  const host = useRef<HTMLDListElement>(null);
+  useRepeatedly(() => {
+    const cells = host.current?.querySelectorAll('dd b');
+    if (cells === undefined) return;
+    const { stats } = props.session.client.state.value;
+    write(cells[0], stats.ticks === 0 ? '–' : percent(stats.onTime));
+    write(cells[1], fixed(props.view()?.stats().fps ?? 0, 0));
+  }, [props.session]);
+  return (
+    <dl class="fly-read machine" ref={host}>
+      <div title={flyTexts.ticksHint}>
+        <dt>{flyTexts.readout.ticks}</dt>
+        <dd>
+          <b>–</b> <span class="unit">%</span>
+        </dd>
+      </div>
+      <div>
+        <dt>{flyTexts.readout.frames}</dt>
+        <dd>
+          <b>–</b>
+        </dd>
+      </div>
+    </dl>
+  );
+}
+
+/** Never "100" for less than all. */
+function percent(share: number): string {
+  return share === 1 ? '100' : Math.min(99.99, 100 * share).toFixed(2);
+}
+
+/** Fixed decimals with a true minus sign, and never a negative nought. */
+function fixed(value: number, decimals: number): string {
+  const text = value.toFixed(decimals);
+  return Number(text) === 0 ? text.replace('-', '') : text.replace('-', '−');
+}
+
+function write(cell: Element | undefined, text: string): void {
+  if (cell !== undefined && cell.textContent !== text) cell.textContent = text;
 }

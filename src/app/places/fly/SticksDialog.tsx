@@ -21,6 +21,13 @@ export function SticksDialog(props: { session: FlightSession; onClose: () => voi
   const latest = useRef<CalibrationWalk | null>(null);
   latest.current = walk;
   useEffect(() => {
+    // While sticks are being found they must not fly the craft.
+    props.session.seat.calibrating = walk !== null;
+    return () => {
+      props.session.seat.calibrating = false;
+    };
+  }, [walk, props.session]);
+  useEffect(() => {
     let frame = 0;
     const beat = () => {
       const pad = props.session.seat.device();
@@ -41,10 +48,7 @@ export function SticksDialog(props: { session: FlightSession; onClose: () => voi
     );
   }
   const { settings } = settingsFor(store.settings.value.sticks[pad.id], pad.mapping === 'standard');
-  const keep = (next: DeviceSettings) => {
-    store.setStickSettings(pad.id, next);
-    props.session.seat.forgetDevice();
-  };
+  const keep = (next: DeviceSettings) => store.setStickSettings(pad.id, next);
   const goOn = () => {
     walk?.next();
     if (walk?.step.kind === 'done') {
@@ -63,7 +67,10 @@ export function SticksDialog(props: { session: FlightSession; onClose: () => voi
       ) : (
         <WalkStepView walk={walk} onNext={goOn} />
       )}
-      <AxisBars axes={pad.axes} />
+      <div class="stick-bars">
+        <Bars title={words.live} bars={pad.axes.slice(0, 8).map((value, i) => [String(i + 1), value])} />
+        <Bars title={words.result} bars={Object.entries(props.session.seat.padDemand)} />
+      </div>
       <DeviceFields settings={settings} keep={keep} />
     </Dialog>
   );
@@ -85,16 +92,21 @@ function WalkStepView(props: { walk: CalibrationWalk; onNext: () => void }) {
   );
 }
 
-function AxisBars(props: { axes: readonly number[] }) {
+/** Values from −1 to 1 as bars with their names. */
+function Bars(props: { title: string; bars: readonly (readonly [string, number])[] }) {
   return (
-    <ul class="axis-bars" aria-label={words.live}>
-      {props.axes.slice(0, 8).map((value, i) => (
-        <li key={i}>
-          <meter min={-1} max={1} value={value} aria-label={`${i + 1}`} />
-          <span>{value.toFixed(2)}</span>
-        </li>
-      ))}
-    </ul>
+    <section>
+      <h3>{props.title}</h3>
+      <ul class="axis-bars">
+        {props.bars.map(([name, value]) => (
+          <li key={name}>
+            <span>{name}</span>
+            <meter min={-1} max={1} value={value} aria-label={name} />
+            <span class="axis-value">{value.toFixed(2).replace('-', '−')}</span>
+          </li>
+        ))}
+      </ul>
+    </section>
   );
 }
 
@@ -124,10 +136,18 @@ function DeviceFields(props: { settings: DeviceSettings; keep: (settings: Device
         step={0.05}
         onChange={(curve) => keep({ ...settings, curve })}
       />
+      <NumberField
+        label={words.slew}
+        value={settings.slew_per_s}
+        min={0}
+        max={50}
+        step={0.5}
+        onChange={(slew_per_s) => keep({ ...settings, slew_per_s })}
+      />
       {WAYS.map((way) => (
         <Toggle
           key={way}
-          label={`${way} ${words.reverse}`}
+          label={`${words.wayNames[way]} ${words.reverse}`}
           on={settings.ways[way].reverse}
           onChange={(reverse) =>
             keep({ ...settings, ways: { ...settings.ways, [way]: { ...settings.ways[way], reverse } } })

@@ -12,15 +12,16 @@ import { FlightView } from '../../view3d/flightView.ts';
 import { CAMERAS } from '../../view3d/cameras.ts';
 import { Button } from '../../widgets/Button.tsx';
 import { CornerPlan, type CornerReading } from '../../widgets/CornerPlan.tsx';
-import { Dialog } from '../../widgets/Dialog.tsx';
 import type { Speed } from '../../worker/protocol.ts';
 import { GUST_CHANNEL } from '../../worker/client.ts';
 import './fly.css';
-import { flightKeys } from './keys.ts';
+import { keyName, type FlyKey } from '../../input/keyMap.ts';
+import { KeyPanel, useKeyboardLayout } from './KeyPanel.tsx';
+import { flightKeys, flyOnAfterClick } from './keys.ts';
 import { flightLanes } from './lanes.ts';
 import { MotorSound } from './motorSound.ts';
 import { buildPanel } from './panel.ts';
-import { ReadOut } from './ReadOut.tsx';
+import { MachineReadOut, ReadOut } from './ReadOut.tsx';
 import { FlightSession } from './session.ts';
 import { SticksDialog } from './SticksDialog.tsx';
 import { flyTexts as words } from './texts.ts';
@@ -42,7 +43,10 @@ export default function Fly() {
   }, [store, running]);
   const [view, setView] = useState<FlightView | null>(null);
   const [axis, setAxis] = useState<AxisName>('roll');
-  const [dialog, setDialog] = useState<'sticks' | 'keys' | null>(null);
+  const [sticksOpen, setSticksOpen] = useState(false);
+  const [keysOpen, setKeysOpen] = useState(false);
+  const [choosing, setChoosing] = useState(false);
+  const layout = useKeyboardLayout();
   const reading = useMemo(
     () => signal<CornerReading>({ command: [0, 0, 0, 0], saturated: [0, 0, 0, 0] }),
     [],
@@ -69,28 +73,39 @@ export default function Fly() {
   }, [session]);
   useEffect(
     () =>
-      flightKeys(
-        session,
-        () => view,
-        dialog !== null,
-        () => setDialog('keys'),
-      ),
-    [session, view, dialog],
+      flightKeys(session, {
+        view: () => view,
+        blocked: sticksOpen || choosing,
+        onKeys: () => setKeysOpen((open) => !open),
+        onTerms: () => setAxis((now) => AXES[(AXES.indexOf(now) + 1) % AXES.length]),
+      }),
+    [session, view, sticksOpen, choosing],
   );
 
   return (
-    <div class="fly">
-      <Toolbar session={session} view={view} axis={axis} onAxis={setAxis} />
+    <div class="fly" onClick={flyOnAfterClick}>
+      <Toolbar session={session} />
       <ViewPane
         session={session}
         onView={setView}
         reading={reading}
-        onSticks={() => setDialog('sticks')}
-        onKeys={() => setDialog('keys')}
+        layout={layout}
+        onSticks={() => setSticksOpen(true)}
+        onKeys={() => setKeysOpen(!keysOpen)}
+        keysOpen={keysOpen}
       >
         <CornerPlan build={build} reading={reading} />
+        <Cameras view={view} />
       </ViewPane>
       <Panel session={session} view={view} />
+      {keysOpen && (
+        <KeyPanel
+          session={session}
+          layout={layout}
+          onChoosing={setChoosing}
+          onClose={() => setKeysOpen(false)}
+        />
+      )}
       <div class="fly-tape">
         <Tape
           label={words.tape}
@@ -102,34 +117,53 @@ export default function Fly() {
           onSeek={(time_s) => session.seek(time_s)}
           onResume={() => session.resume()}
         />
+        <span class="fly-terms" role="group" aria-label={words.termsAxis}>
+          <span class="fly-label">{words.termsAxis}</span>
+          {AXES.map((one) => (
+            <Button key={one} quiet pressed={axis === one} onClick={() => setAxis(one)}>
+              {one}
+            </Button>
+          ))}
+        </span>
       </div>
-      {dialog === 'sticks' && <SticksDialog session={session} onClose={() => setDialog(null)} />}
-      {dialog === 'keys' && (
-        <Dialog title={words.keyHelp.title} onClose={() => setDialog(null)}>
-          <dl class="key-list">
-            {words.keyHelp.rows.map(([key, what]) => (
-              <div key={key}>
-                <dt>{key}</dt>
-                <dd>{what}</dd>
-              </div>
-            ))}
-          </dl>
-        </Dialog>
-      )}
+      {sticksOpen && <SticksDialog session={session} onClose={() => setSticksOpen(false)} />}
     </div>
   );
 }
 
-function Toolbar(props: {
-  session: FlightSession;
-  view: FlightView | null;
-  axis: AxisName;
-  onAxis: (axis: AxisName) => void;
-}) {
-  const { session, axis, onAxis } = props;
+/** Which camera; over the view's far corner. */
+function Cameras(props: { view: FlightView | null }) {
+  const { view } = props;
+  const [shown, setShown] = useState(view?.camera ?? null);
+  // Keys change it as well.
+  useEffect(() => {
+    setShown(view?.camera ?? null);
+    const timer = setInterval(() => setShown(view?.camera ?? null), 200);
+    return () => clearInterval(timer);
+  }, [view]);
+  return (
+    <span class="fly-cameras" role="group" aria-label={words.camera}>
+      {CAMERAS.map((one) => (
+        <Button
+          key={one}
+          quiet
+          pressed={shown === one}
+          onClick={() => {
+            view?.setCamera(one);
+            setShown(one);
+          }}
+        >
+          {words.cameras[one]}
+        </Button>
+      ))}
+    </span>
+  );
+}
+
+function Toolbar(props: { session: FlightSession }) {
+  const { session } = props;
   const { speed } = session.state.value;
   const seat = session.seat.state.value;
-  const [, redraw] = useState(0);
   const build = useStore().build.value;
   return (
     <div class="fly-bar" role="toolbar" aria-label={words.view}>
@@ -166,29 +200,6 @@ function Toolbar(props: {
         >
           {words.tick}
         </Button>
-      </span>
-      <span class="fly-group" role="group" aria-label={words.camera}>
-        {CAMERAS.map((one) => (
-          <Button
-            key={one}
-            quiet
-            pressed={props.view?.camera === one}
-            onClick={() => {
-              props.view?.setCamera(one);
-              redraw((n) => n + 1);
-            }}
-          >
-            {words.cameras[one]}
-          </Button>
-        ))}
-      </span>
-      <span class="fly-group" role="group" aria-label={words.termsAxis}>
-        <span class="fly-label">{words.termsAxis}</span>
-        {AXES.map((one) => (
-          <Button key={one} quiet pressed={axis === one} onClick={() => onAxis(one)}>
-            {one}
-          </Button>
-        ))}
       </span>
       <span class="fly-end">
         <SoundButton session={session} />
@@ -239,11 +250,14 @@ function ViewPane(props: {
   session: FlightSession;
   onView: (view: FlightView | null) => void;
   reading: { value: CornerReading };
+  layout: ReadonlyMap<string, string> | null;
   onSticks: () => void;
   onKeys: () => void;
+  keysOpen: boolean;
   children: ComponentChildren;
 }) {
   const { session, reading } = props;
+  const touch = useTouch();
   const store = useStore();
   const theme = useTheme();
   const host = useRef<HTMLDivElement>(null);
@@ -292,59 +306,65 @@ function ViewPane(props: {
   useEffect(() => {
     if (left.current === null || right.current === null) return;
     const ends = [
-      followThumb(left.current, session.seat.left, () => undefined),
-      followThumb(right.current, session.seat.right, () => undefined),
+      followThumb(left.current, session.seat.left),
+      followThumb(right.current, session.seat.right),
     ];
     return () => ends.forEach((end) => end());
-  }, [session]);
+  }, [session, touch]);
 
   return (
     <div class="fly-view">
       <div class="fly-canvas" ref={host} role="img" aria-label={words.view} />
-      <div class="thumb left" ref={left} aria-hidden="true" />
-      <div class="thumb right" ref={right} aria-hidden="true" />
-      <div class="fly-plan">{props.children}</div>
-      <ReadOut session={session} view={() => made.current} />
-      <Hint
-        session={session}
-        canvas={made.current?.renderer === 'canvas'}
-        onSticks={props.onSticks}
-        onKeys={props.onKeys}
-      />
+      {touch && (
+        <>
+          <div class="thumb left" ref={left} aria-hidden="true" data-label={words.touchHints.left} />
+          <div class="thumb right" ref={right} aria-hidden="true" data-label={words.touchHints.right} />
+        </>
+      )}
+      <div class="fly-over">{props.children}</div>
+      <MachineReadOut session={session} view={() => made.current} />
+      <ReadOut session={session} />
+      <Hint {...props} canvas={made.current?.renderer === 'canvas'} />
     </div>
   );
 }
 
-/** One line under the view: what to press now, or what went wrong. */
-function Hint(props: { session: FlightSession; canvas: boolean; onSticks: () => void; onKeys: () => void }) {
-  const { session } = props;
-  const { stopped } = session.state.value;
-  const seat = session.seat.state.value;
-  const [struck, setStruck] = useState('');
+/** Whether thumbs are there: a touch screen as the main pointer, or the first touch on another one. */
+function useTouch(): boolean {
+  const [touch, setTouch] = useState(() => matchMedia('(pointer: coarse)').matches);
   useEffect(() => {
-    const timer = setInterval(() => setStruck(session.struck().join(', ')), 200);
-    return () => clearInterval(timer);
-  }, [session]);
+    if (touch) return;
+    const first = (event: PointerEvent) => {
+      if (event.pointerType === 'touch') setTouch(true);
+    };
+    window.addEventListener('pointerdown', first);
+    return () => window.removeEventListener('pointerdown', first);
+  }, [touch]);
+  return touch;
+}
+
+/** One line under the view: what to press now, or what went wrong. */
+function Hint(props: {
+  session: FlightSession;
+  canvas: boolean;
+  layout: ReadonlyMap<string, string> | null;
+  onSticks: () => void;
+  onKeys: () => void;
+  keysOpen: boolean;
+}) {
+  const { session } = props;
+  const seat = session.seat.state.value;
+  const key = (action: FlyKey) => keyName(session.keys.value[action], props.layout);
   const at = session.at_s.value;
-  let text: string = seat.armed ? words.armedKeys : words.armFirst;
-  let loud = false;
-  if (stopped !== null) {
-    text = words.stopped(stopped.tick, stopped.what);
-    loud = true;
-  } else if (struck !== '') {
-    text = words.struck(struck);
-    loud = true;
-  } else if (seat.uncalibrated && seat.device !== null) {
-    text = words.uncalibrated(seat.device);
-    loud = true;
-  }
+  const { text, loud } = hintOf(session, key);
   return (
     <div class={loud ? 'fly-hint loud' : 'fly-hint'} role="status">
       {at !== null ? (
         <>
-          <Button primary title={words.reflyHint} onClick={() => session.resume()}>
+          <Button primary onClick={() => session.resume()}>
             {words.refly}
           </Button>
+          <span class="faint">{words.reflyKey(key('flyOn'))}</span>
           <Button onClick={() => session.seek(null)}>{words.live}</Button>
         </>
       ) : (
@@ -352,21 +372,53 @@ function Hint(props: { session: FlightSession; canvas: boolean; onSticks: () => 
       )}
       {props.canvas && <span class="faint">{words.noWebgl}</span>}
       <span class="fly-end">
-        <Button quiet pressed={seat.levelling} title="L" onClick={() => session.setAssist('levelling')}>
+        <Button
+          quiet
+          pressed={seat.levelling}
+          title={key('levelling')}
+          onClick={() => session.setAssist('levelling')}
+        >
           {words.levelling}
         </Button>
-        <Button quiet pressed={seat.heightHold} title="H" onClick={() => session.setAssist('heightHold')}>
+        <Button
+          quiet
+          pressed={seat.heightHold}
+          title={key('heightHold')}
+          onClick={() => session.setAssist('heightHold')}
+        >
           {words.heightHold}
         </Button>
         <Button quiet onClick={props.onSticks}>
           {words.sticksButton}
         </Button>
-        <Button quiet onClick={props.onKeys}>
+        <Button quiet pressed={props.keysOpen} title={key('keys')} onClick={props.onKeys}>
           {words.keysButton}
         </Button>
       </span>
     </div>
   );
+}
+
+/** The line itself; loud when something is wrong. */
+function hintOf(session: FlightSession, key: (action: FlyKey) => string): { text: string; loud: boolean } {
+  const { stopped } = session.state.value;
+  const seat = session.seat.state.value;
+  const concern = session.watch.concern.value;
+  if (stopped !== null) return { text: words.stopped(stopped.tick, stopped.what), loud: true };
+  switch (concern?.kind) {
+    case 'struck':
+      return { text: words.struck(concern.corners.join(', '), key('upright'), key('restart')), loud: true };
+    case 'tipped':
+      return { text: words.tipped(key('upright')), loud: true };
+    case 'saturated':
+      return { text: words.saturated(concern.corners.join(', ')), loud: true };
+    case 'screaming':
+      return { text: words.screaming, loud: true };
+  }
+  if (seat.uncalibrated && seat.device !== null) {
+    return { text: words.uncalibrated(seat.device), loud: true };
+  }
+  return { text: seat.armed ? words.flying(key) : words.armFirst(key('arm'), key('up')), loud: false };
 }
 
 function Panel(props: { session: FlightSession; view: FlightView | null }) {

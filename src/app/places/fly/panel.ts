@@ -1,11 +1,12 @@
 /** The panel beside the flight: gains, filters, air, noise and faults, all acting in flight. */
 import { effect } from '@preact/signals';
-import GUI from 'lil-gui';
+import GUI, { type Controller } from 'lil-gui';
 import { CORNERS } from '../../../craft/build.ts';
 import { AXES, type AxisName, type Gains } from '../../../craft/gains.ts';
 import type { ViewShows } from '../../view3d/flightView.ts';
 import type { Store } from '../../store/store.ts';
-import type { FlightSession } from './session.ts';
+import { NO_FAULTS } from './faultChoices.ts';
+import type { FlightChoices, FlightSession } from './session.ts';
 import { flyTexts } from './texts.ts';
 
 const words = flyTexts.panel;
@@ -15,6 +16,15 @@ const GAIN_KEYS = [
   ['d_us_per_dps2', words.d],
   ['feedforward_us_per_dps', words.ff],
 ] as const;
+
+/** Ends of the sliders: a share of the saved gain, and no less than this. */
+const SLIDER_TOP = {
+  p_us_per_dps: { share: 4, least: 2 },
+  i_us_per_deg: { share: 4, least: 10 },
+  d_us_per_dps2: { share: 8, least: 0.05 },
+  feedforward_us_per_dps: { share: 4, least: 1 },
+} as const;
+const LOOPS_HZ = [50, 100, 125, 250, 400, 500, 1000, 2000, 4000, 8000];
 
 /** Builds the panel in `host`; returns the end of it. */
 export function buildPanel(
@@ -29,12 +39,56 @@ export function buildPanel(
     filtersFolder(gui, store),
     airFolder(gui, store, session),
     noiseFolder(gui, session),
+    faultsFolder(gui, session),
     shownFolder(gui, shows),
+    handBackFocus(host),
   ];
   return () => {
     for (const end of ends) end();
     gui.destroy();
   };
+}
+
+/** A list worked by the pointer gives its focus back, so that the arrow keys fly again. */
+function handBackFocus(host: HTMLElement): () => void {
+  let byPointer = false;
+  const pointer = () => (byPointer = true);
+  const key = () => (byPointer = false);
+  const change = ({ target }: globalThis.Event) => {
+    if (byPointer && target instanceof HTMLSelectElement) target.blur();
+  };
+  host.addEventListener('pointerdown', pointer);
+  host.addEventListener('keydown', key);
+  host.addEventListener('change', change);
+  return () => {
+    host.removeEventListener('pointerdown', pointer);
+    host.removeEventListener('keydown', key);
+    host.removeEventListener('change', change);
+  };
+}
+
+/** Marks a number that differs from the saved one; a double click on its row goes back to it. */
+function tieToSaved(controller: Controller, saved: () => number): () => void {
+  const row = controller.domElement;
+  const back = () => controller.setValue(saved());
+  row.addEventListener('dblclick', back);
+  return () => {
+    row.classList.toggle('changed', controller.getValue() !== saved());
+    row.title = words.toSaved(String(saved()));
+  };
+}
+
+/** The field takes more than the slider reaches (the store says what is too much); the slider then grows. */
+function openEnded(controller: Controller, top: number): void {
+  let end = top;
+  const grow = ({ target }: globalThis.Event) => {
+    const value = target instanceof HTMLInputElement ? parseFloat(target.value) : NaN;
+    if (!(value > end)) return;
+    end = value;
+    controller.max(value);
+  };
+  // Before the panel's own listener, which would cut the value to the slider's end.
+  controller.domElement.addEventListener('input', grow, true);
 }
 
 /** Keeps a folder's plain values in step with the store without answering its own writes. */
@@ -48,15 +102,13 @@ function mirror(folder: GUI, copy: () => void): () => void {
 function gainsFolder(gui: GUI, store: Store, axis: AxisName): () => void {
   const folder = gui.addFolder(words.gains(axis));
   const values: Record<string, number> = {};
+  const marks: (() => void)[] = [];
   for (const [key, name] of GAIN_KEYS) {
     values[key] = store.gains.value.axes[axis][key];
     const saved = store.savedGains.value.axes[axis][key];
-    // A slider from nothing to four times what is saved; the field takes anything the file allows.
-    const top = Math.max(
-      4 * Math.abs(saved),
-      { p_us_per_dps: 2, i_us_per_deg: 10, d_us_per_dps2: 0.05, feedforward_us_per_dps: 1 }[key],
-    );
-    folder
+    // A slider from nothing to well past what is sensible: D to where any motor screams.
+    const top = Math.max(SLIDER_TOP[key].share * Math.abs(saved), SLIDER_TOP[key].least);
+    const controller = folder
       .add(values, key, 0, top)
       .name(name)
       .onChange((value: number) => {
@@ -68,10 +120,13 @@ function gainsFolder(gui: GUI, store: Store, axis: AxisName): () => void {
           `${axis} ${name}`,
         );
       });
+    openEnded(controller, top);
+    marks.push(tieToSaved(controller, () => store.savedGains.value.axes[axis][key]));
   }
   if (axis !== 'roll') folder.close();
   return mirror(folder, () => {
     for (const [key] of GAIN_KEYS) values[key] = store.gains.value.axes[axis][key];
+    for (const mark of marks) mark();
   });
 }
 
@@ -99,7 +154,11 @@ function filtersFolder(gui: GUI, store: Store): () => void {
     .name(words.gyroCut)
     .onChange((v: number) => set({ gyroLowPass_Hz: v }, words.gyroCut));
   folder
-    .add(values, 'loop', [125, 250, 400, 500, 1000, 2000, 4000, 8000])
+    .add(
+      values,
+      'loop',
+      [...new Set([...LOOPS_HZ, values.loop])].sort((a, b) => a - b),
+    )
     .name(words.loop)
     .onChange((v: number) => set({ loop_Hz: v }, words.loop));
   folder
@@ -111,6 +170,10 @@ function filtersFolder(gui: GUI, store: Store): () => void {
     .name(words.on)
     .onChange((v: Gains['derivativeOn']) => set({ derivativeOn: v }, words.on));
   folder.close();
+  for (const controller of folder.controllers) {
+    if (controller.property === 'dCut' || controller.property === 'gyroCut') openEnded(controller, 400);
+    if (controller.property === 'delay') openEnded(controller, 10);
+  }
   return mirror(folder, () => Object.assign(values, read()));
 }
 
@@ -177,24 +240,45 @@ function airFolder(gui: GUI, store: Store, session: FlightSession): () => void {
     );
   folder.add(gust, 'peak', 0, 20, 0.5).name(words.gust);
   folder.add(gust, 'now').name(words.gustNow);
+  for (const controller of folder.controllers) {
+    if (controller.property === 'mean') openEnded(controller, 20);
+    if (controller.property === 'w20') openEnded(controller, 23);
+  }
   return mirror(folder, () => Object.assign(values, read()));
 }
 
 function noiseFolder(gui: GUI, session: FlightSession): () => void {
   const folder = gui.addFolder(words.noise);
   const values = { ...session.choices.value };
-  const set = (key: keyof typeof values) => (value: unknown) => session.change({ [key]: value });
+  const set = setterOf(session);
   folder.add(values, 'noiseScale', 0, 10, 0.1).name(words.noiseScale).onChange(set('noiseScale'));
   folder.add(values, 'vibrationScale', 0, 10, 0.1).name(words.vibration).onChange(set('vibrationScale'));
-  folder
-    .add(values, 'weakCorner', ['none', ...CORNERS])
-    .name(words.weak)
-    .onChange(set('weakCorner'));
-  folder.add(values, 'weakShare', 0.5, 1, 0.01).name(words.weakShare).onChange(set('weakShare'));
-  folder.add(values, 'late_ms', 0, 20, 0.1).name(words.late).onChange(set('late_ms'));
   folder.add(values, 'seed', 0, 9999, 1).name(words.seed).onFinishChange(set('seed'));
+  return mirror(folder, () => Object.assign(values, session.choices.value));
+}
+
+function faultsFolder(gui: GUI, session: FlightSession): () => void {
+  const folder = gui.addFolder(words.faults);
+  const values = { ...session.choices.value, none: () => session.change(NO_FAULTS) };
+  const set = setterOf(session);
+  const corners = ['none', ...CORNERS];
+  folder.add(values, 'weakCorner', corners).name(words.weak).onChange(set('weakCorner'));
+  folder.add(values, 'weakShare', 0.5, 1, 0.01).name(words.weakShare).onChange(set('weakShare'));
+  folder.add(values, 'chippedCorner', corners).name(words.chipped).onChange(set('chippedCorner'));
+  folder.add(values, 'imbalance', 1, 30, 0.5).name(words.imbalance).onChange(set('imbalance'));
+  folder.add(values, 'shiftForward_mm', -40, 40, 1).name(words.shiftForward).onChange(set('shiftForward_mm'));
+  folder.add(values, 'shiftRight_mm', -40, 40, 1).name(words.shiftRight).onChange(set('shiftRight_mm'));
+  folder.add(values, 'looseMount', 1, 30, 0.5).name(words.looseMount).onChange(set('looseMount'));
+  folder.add(values, 'late_ms', 0, 20, 0.1).name(words.late).onChange(set('late_ms'));
+  folder.add(values, 'jitter_ms', 0, 20, 0.1).name(words.jitter).onChange(set('jitter_ms'));
+  folder.add(values, 'deadCell').name(words.deadCell).onChange(set('deadCell'));
+  folder.add(values, 'none').name(words.noFaults);
   folder.close();
   return mirror(folder, () => Object.assign(values, session.choices.value));
+}
+
+function setterOf(session: FlightSession) {
+  return (key: keyof FlightChoices) => (value: unknown) => session.change({ [key]: value });
 }
 
 function shownFolder(gui: GUI, shows: ViewShows): () => void {

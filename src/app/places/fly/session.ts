@@ -2,43 +2,34 @@
  * A flight session: worker, seat and what the person chose for this flight. Lives on, paused, while another
  * place is open.
  */
-import { effect, signal, type ReadonlySignal } from '@preact/signals';
-import { CORNERS } from '../../../craft/build.ts';
-import type { Corner } from '../../../craft/build.ts';
+import { computed, effect, signal, type ReadonlySignal } from '@preact/signals';
 import { describeProblem } from '../../../craft/problem.ts';
-import type { Fault } from '../../../disturbance/faults.ts';
 import { gustSpans } from '../../../disturbance/gusts.ts';
 import { signalIndex } from '../../../flight/signals.ts';
+import { FIRST_KEYS, keyMapFrom, type KeyMap } from '../../input/keyMap.ts';
 import { Seat } from '../../input/seat.ts';
 import type { Store } from '../../store/store.ts';
 import { startFlightClient, type FlightClient } from '../../worker/client.ts';
 import type { FlightSettings, Speed } from '../../worker/protocol.ts';
+import { faultsOf, NO_FAULTS, type FaultChoices } from './faultChoices.ts';
 import { flyTexts } from './texts.ts';
+import { Watch } from './watch.ts';
 
 /** Choices of this flight that are not part of build, gains or wind. */
-export interface FlightChoices {
+export interface FlightChoices extends FaultChoices {
   readonly seed: number;
   readonly noiseScale: number;
   readonly vibrationScale: number;
-  readonly weakCorner: Corner | 'none';
-  readonly weakShare: number;
-  readonly late_ms: number;
 }
 
-const FIRST_CHOICES: FlightChoices = {
-  seed: 1,
-  noiseScale: 1,
-  vibrationScale: 1,
-  weakCorner: 'none',
-  weakShare: 0.85,
-  late_ms: 0,
-};
+const FIRST_CHOICES: FlightChoices = { ...NO_FAULTS, seed: 1, noiseScale: 1, vibrationScale: 1 };
 
 const TOUCHING = signalIndex('touching');
 const THROTTLE = signalIndex('throttle');
-const STRUCK = signalIndex('struck_FL');
 const BATTERY = signalIndex('battery_V');
 const DISARM_AGAIN_MS = 1200;
+/** Where the key map is kept among the places' memory. */
+const KEYS_KEPT = 'fly.keys';
 
 export class FlightSession {
   readonly client: FlightClient;
@@ -46,8 +37,10 @@ export class FlightSession {
   readonly choices = signal<FlightChoices>(FIRST_CHOICES);
   /** Instant the tape shows, s; null: live. */
   readonly at_s = signal<number | null>(null);
-  /** Started at least one flight. */
-  readonly begun = signal(false);
+  /** What the person chose to press for what. */
+  readonly keys: ReadonlySignal<KeyMap>;
+  /** What is going on with the craft that the person should know at once. */
+  readonly watch = new Watch();
   private speedBefore: Speed = 1;
   private readonly ends: (() => void)[] = [];
   private disarmAsked_ms = -Infinity;
@@ -55,9 +48,10 @@ export class FlightSession {
 
   constructor(private readonly store: Store) {
     this.client = startFlightClient();
+    this.keys = computed(() => keyMapFrom(store.settings.value.places[KEYS_KEPT]));
     this.seat = new Seat((id) => store.settings.value.sticks[id]);
     this.client.onRefused = (file, problems) => {
-      store.notices.tell('error', flyTexts.view, {
+      store.notices.tell('error', flyTexts.refused, {
         details: problems.slice(0, 4).map((problem) => describeProblem(file, problem)),
         topic: 'fly:refused',
       });
@@ -67,11 +61,22 @@ export class FlightSession {
     this.client.onBegan = () => {
       this.at_s.value = null;
     };
-    this.client.onRewound = () => {
+    this.client.onFailed = (what) =>
+      store.notices.tell('error', flyTexts.failed, {
+        details: [what],
+        topic: 'fly:failed',
+        action: { label: flyTexts.restart, run: () => this.restart() },
+      });
+    this.client.onRewound = (sticks) => {
       this.at_s.value = null;
+      this.seat.restore(sticks);
       if (this.speedBefore > 0) this.client.setSpeed(this.speedBefore);
     };
     this.seat.onLost = (id) => store.notices.tell('warning', flyTexts.lost(id), { topic: 'fly:lost' });
+    this.seat.onSource = (source) => {
+      if (source === 'gamepad') store.notices.settle('fly:lost');
+      store.notices.tell('info', flyTexts.took[source], { topic: 'fly:source' });
+    };
     this.follow();
   }
 
@@ -101,9 +106,14 @@ export class FlightSession {
         if (first) this.client.begin(settings, { kind: 'ground' });
         else this.client.change(settings);
         first = false;
-        this.begun.value = true;
       }),
+      effect(() => this.seat.keys.bind(this.keys.value)),
     );
+  }
+
+  /** Keys as the person wants them; null: as they came. */
+  setKeys(map: KeyMap | null): void {
+    this.store.setPlaceMemory(KEYS_KEPT, map ?? FIRST_KEYS);
   }
 
   change(change: Partial<FlightChoices>): void {
@@ -112,6 +122,7 @@ export class FlightSession {
 
   restart(): void {
     this.seat.arm(false);
+    this.store.notices.settle('fly:failed');
     this.client.setSticks(this.seat.sticks);
     this.client.begin(this.settings(), { kind: 'ground' });
     this.setSpeed(1);
@@ -126,7 +137,9 @@ export class FlightSession {
       this.store.notices.tell('warning', flyTexts.disarmInAir, { topic: 'fly:disarm' });
       return;
     }
-    this.seat.arm(!armed);
+    this.store.notices.settle('fly:disarm');
+    if (this.seat.arm(!armed)) this.store.notices.settle('fly:throttle');
+    else this.store.notices.tell('warning', flyTexts.throttleFirst, { topic: 'fly:throttle' });
   }
 
   /** Self-levelling or height hold on and off. */
@@ -194,14 +207,13 @@ export class FlightSession {
 
   /** Once a frame: inputs on, sticks out, warnings. */
   beat(dt_s: number): void {
-    this.seat.advance(dt_s);
+    const { newest, state } = this.client;
+    // While paused the tape may be dragged; the sticks stay as they were.
+    this.seat.advance(dt_s, newest[TOUCHING] > 0.5);
     this.client.setSticks(this.seat.sticks);
+    const { esc } = this.store.build.value;
+    this.watch.look(newest, state.value.stats.motorActivity_us / (esc.max_us - esc.min_us), dt_s);
     this.warn();
-  }
-
-  /** Corners whose propeller struck something. */
-  struck(): string[] {
-    return CORNERS.filter((_, i) => this.client.newest[STRUCK + i] > 0.5);
   }
 
   private warn(): void {
@@ -226,15 +238,4 @@ export class FlightSession {
   get state(): ReadonlySignal<FlightClient['state']['value']> {
     return this.client.state;
   }
-}
-
-function faultsOf(choices: FlightChoices): readonly Fault[] {
-  const faults: Fault[] = [];
-  if (choices.weakCorner !== 'none') {
-    faults.push({ kind: 'weak-motor', corner: choices.weakCorner, share: choices.weakShare });
-  }
-  if (choices.late_ms > 0) {
-    faults.push({ kind: 'late-loop', delay_s: choices.late_ms / 1000, jitter_s: 0, missedTickShare: 0 });
-  }
-  return faults;
 }
