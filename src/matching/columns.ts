@@ -13,7 +13,7 @@ import { DEG_PER_RAD, RPM_PER_RAD_PER_S } from '../math/angles.ts';
 export type SignalKind =
   'time' | 'rate' | 'share' | 'command' | 'axisCommand' | 'speed' | 'angle' | 'velocity';
 
-/** Units of each kind with their factor to the one used inside (the first). `range` scales by the ESC's span. */
+/** Units of each kind with their factor to the one used inside. `range` scales by the ESC's span. */
 export const UNITS: Readonly<Record<SignalKind, Readonly<Record<string, number | 'range'>>>> = {
   time: { s: 1, ms: 1e-3, us: 1e-6, ns: 1e-9 },
   rate: { 'deg/s': 1, dps: 1, 'rad/s': DEG_PER_RAD, 'mrad/s': DEG_PER_RAD / 1000 },
@@ -24,6 +24,24 @@ export const UNITS: Readonly<Record<SignalKind, Readonly<Record<string, number |
   angle: { deg: 1, rad: DEG_PER_RAD },
   velocity: { 'm/s': 1 },
 };
+
+/** Unit taken when none is said: the one used inside. */
+const USUAL_UNIT: Readonly<Record<SignalKind, string>> = {
+  time: 's',
+  rate: 'deg/s',
+  share: '1',
+  command: 'us',
+  axisCommand: 'us',
+  speed: 'rpm',
+  angle: 'deg',
+  velocity: 'm/s',
+};
+
+/** The unit used inside; not the first key, for JavaScript puts keys like "1" before all others. */
+export function unitInside(kind: SignalKind): string {
+  const units = Object.entries(UNITS[kind]);
+  return (units.find(([, factor]) => factor === 1) ?? units[0])[0];
+}
 
 const perAxis = (prefix: string, kind: SignalKind) =>
   AXES.map((axis): [string, SignalKind] => [`${prefix}_${axis}`, kind]);
@@ -49,7 +67,7 @@ function columnSchema(kind: SignalKind) {
   return z.strictObject(
     {
       column: z.union([z.string().min(1).max(200), z.number().int().min(1).max(10_000)], { error: column }),
-      unit: choice(units).default(units[0]),
+      unit: choice(units).default(USUAL_UNIT[kind]),
       sign: z.union([z.literal(1), z.literal(-1)], { error: '1 or -1' }).default(1),
     },
     { error: `an object with column, unit (${units.join(', ')}) and, if turned about, sign` },
@@ -133,7 +151,7 @@ const OWN_UNITS: Readonly<Partial<Record<SignalKind, [suffix: string, unit: stri
 export function ownColumns(heads: readonly string[]): Columns | null {
   const columns: Record<string, ColumnChoice> = {};
   for (const [signal, kind] of SIGNALS) {
-    const [suffix, unit] = OWN_UNITS[kind] ?? ['', Object.keys(UNITS[kind])[0]];
+    const [suffix, unit] = OWN_UNITS[kind] ?? ['', USUAL_UNIT[kind]];
     const head = signal === 'descent' ? 'vd_mps' : `${signal}${suffix}`;
     if (heads.includes(head)) columns[signal] = { column: head, unit, sign: 1 };
   }

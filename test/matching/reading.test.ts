@@ -271,6 +271,18 @@ describe('columns file', () => {
     expect(await refusal(() => parseColumns(raw))).toMatch(message);
   });
 
+  it('a unit that is not said is the usual one: s, deg/s, a share of throttle, µs', () => {
+    const columns = parseColumns({
+      t: { column: 'a' },
+      gyro_roll: { column: 'p' },
+      throttle: { column: 'h' },
+      u_roll: { column: 'u' },
+      cmd_FL: { column: 'm' },
+    });
+    const units = ['t', 'gyro_roll', 'throttle', 'u_roll', 'cmd_FL'].map((signal) => columns[signal]?.unit);
+    expect(units).toEqual(['s', 'deg/s', '1', 'us', 'us']);
+  });
+
   it('a column the log does not have is named with the heads there are', async () => {
     const columns = { ...good, t: { column: 'clock', unit: 'us' } };
     expect(await refusal(() => read(simple(300), columns))).toMatch(
