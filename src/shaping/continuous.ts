@@ -27,10 +27,14 @@ export interface Plant {
   readonly delay_s: number;
 }
 
+/** A lag below this is taken as a delay of the same length: at 4 kHz that differs by 3 parts in a million. */
+const LEAST_LAG_S = 1e-7;
+
 /** Rate (deg/s) from axis command (µs). States: rate and, with a lag, angular acceleration. */
 export function plantSystem(plant: Plant): ContinuousSystem {
-  const { gain_dps2_per_us: K, lag_s: tau, delay_s } = plant;
-  if (tau === 0) {
+  const { gain_dps2_per_us: K, lag_s: tau } = plant;
+  const delay_s = tau < LEAST_LAG_S ? plant.delay_s + tau : plant.delay_s;
+  if (tau < LEAST_LAG_S) {
     return {
       A: new Matrix([[0]]),
       B: new Matrix([[K]]),
@@ -49,6 +53,28 @@ export function plantSystem(plant: Plant): ContinuousSystem {
     delay_s,
     disturbance: new Matrix([[1], [0]]),
   };
+}
+
+/**
+ * A strictly proper transfer b(s)/a(s), coefficients highest power first, in controllable canonical form.
+ * @throws RangeError when it is not strictly proper.
+ */
+export function transferSystem(b: readonly number[], a: readonly number[]): ContinuousSystem {
+  const n = a.length - 1;
+  if (n < 1 || b.length > n || a[0] === 0)
+    throw new RangeError(
+      `a transfer of order ${b.length - 1} over ${n}: the lower one must be of higher order`,
+    );
+  const A = Matrix.zeros(n, n);
+  const C = Matrix.zeros(1, n);
+  for (let j = 0; j < n; j++) {
+    A.set(n - 1, j, -a[n - j] / a[0]);
+    if (j < n - 1) A.set(j, j + 1, 1);
+    C.set(0, j, (b[b.length - 1 - j] ?? 0) / a[0]);
+  }
+  const B = Matrix.zeros(n, 1);
+  B.set(n - 1, 0, 1);
+  return { A, B, C, delay_s: 0 };
 }
 
 /** `first` followed by a first-order low-pass and a further delay: a sensor behind a plant. */

@@ -79,7 +79,7 @@ export function marginsOf(response: Response): Margins {
   return {
     gainCrossings,
     phaseCrossings,
-    gainMargin_dB: upward === null ? null : 20 * Math.log10(upward),
+    gainMargin_dB: upward === null || !Number.isFinite(upward) ? null : 20 * Math.log10(upward),
     gainReduction_dB: downward === null ? null : 20 * Math.log10(downward),
     phaseMargin_deg: phase === null ? null : phase.phaseMargin_deg,
     delayMargin_ms: delays.length === 0 ? null : Math.min(...delays),

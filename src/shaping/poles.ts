@@ -53,10 +53,23 @@ export function sourceOf(loop: RateLoop): PoleSource {
 
 export function polesOf(source: PoleSource): Poles {
   if (source.size > LARGEST_MATRIX) return polesOfLongLoop(source);
-  const { realEigenvalues, imaginaryEigenvalues } = new EigenvalueDecomposition(source.transition());
-  const poles = realEigenvalues.map((re, i) => ({ re, im: imaginaryEigenvalues[i] }));
+  const poles = eigenvalues(source.transition());
   const maxRadius = largestRadius(poles);
   return { poles, maxRadius, stable: maxRadius < 1 - ON_CIRCLE };
+}
+
+/** Outside the unit circle: every pole of a loop that is not far beyond its limit moves to a positive real part. */
+const SHIFT = 2;
+
+/**
+ * Eigenvalues of A + 2, less 2. The library's iteration asks of each element below the diagonal whether it is
+ * negligible beside its neighbours on it; a delay's zeros on the diagonal would make it ask that for ever.
+ */
+function eigenvalues(A: Matrix): Pole[] {
+  const shifted = A.clone();
+  for (let k = 0; k < A.rows; k++) shifted.set(k, k, A.get(k, k) + SHIFT);
+  const { realEigenvalues, imaginaryEigenvalues } = new EigenvalueDecomposition(shifted);
+  return realEigenvalues.map((re, i) => ({ re: re - SHIFT, im: imaginaryEigenvalues[i] }));
 }
 
 function largestRadius(poles: readonly Pole[]): number {
@@ -122,12 +135,22 @@ function newton(source: PoleSource, start: Complex): Complex | null {
 const ARC = 1e-9;
 const FIRST_POINTS = 600;
 const MOST_HALVINGS = 40;
+/** Above what the circle itself takes: noise in the argument would otherwise be halved without end. */
+const MOST_EVALUATIONS = 300_000;
 
-/** Closed-loop poles outside the unit circle, by the argument of 1 + L along its upper half. */
+/**
+ * Closed-loop poles outside the unit circle, by the argument of 1 + L along its upper half. NaN, and so not
+ * stable, where 1 + L is so close to zero on the circle that rounding decides its argument.
+ */
 function unstablePoles(source: PoleSource): number {
-  const at = (s: Complex) => plus(source.openLoop(placeAt(s.re, s.im)), complex(1));
+  let evaluations = 0;
+  const at = (s: Complex) => {
+    evaluations++;
+    return plus(source.openLoop(placeAt(s.re, s.im)), complex(1));
+  };
   const turned = (from: Complex, to: Complex, a: Complex, b: Complex, depth: number): number => {
     const step = argument(over(b, a));
+    if (!Number.isFinite(step) || evaluations > MOST_EVALUATIONS) return NaN;
     if (depth === 0 || (Math.abs(step) < 0.5 && depth < MOST_HALVINGS)) return step;
     const middle = complex((from.re + to.re) / 2, (from.im + to.im) / 2);
     const value = at(middle);

@@ -52,7 +52,7 @@ export function plantGainRange(uncertainty: Uncertainty): readonly [number, numb
 export type AxisGainsFound = PidGains;
 
 export interface StartingAxis extends AxisGainsFound {
-  /** The limit that stops more gain, and what would loosen it. */
+  /** The limits that stop more gain (the optimum often lies where two meet), and what would loosen them. */
   readonly active: string;
   readonly loosenedBy: string;
   /** Each limit's use, 1 = all of it. */
@@ -86,6 +86,8 @@ const LOOSENED: Readonly<Record<LimitName, string>> = {
   integralTime: 'a higher crossover: less delay and lag, so that P can rise',
   overshoot: 'a setpoint weight below 1, or less delay and lag in the loop',
 };
+/** Limits used within this share of the most used one stop the gains together with it. */
+const AS_ACTIVE = 0.01;
 const ACTIVE: Readonly<Record<LimitName, string>> = {
   maxSensitivity: 'maximum sensitivity',
   phaseMargin: 'phase margin',
@@ -249,12 +251,14 @@ export function startingAxis(task: AxisTask): StartingAxis {
     );
   }
   const used = found.candidates.usage(found.gains);
-  const active = (Object.keys(used) as LimitName[]).reduce((a, b) => (used[b] > used[a] ? b : a));
+  const names = Object.keys(used) as LimitName[];
+  const most = Math.max(...names.map((name) => used[name]));
+  const active = names.filter((name) => used[name] > most - AS_ACTIVE);
   return {
     ...found.gains,
     used,
-    active: ACTIVE[active],
-    loosenedBy: LOOSENED[active],
+    active: active.map((name) => ACTIVE[name]).join(' and '),
+    loosenedBy: active.map((name) => LOOSENED[name]).join('; '),
     loosening: looseningOf(task, found.gains),
   };
 }

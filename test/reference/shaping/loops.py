@@ -247,32 +247,33 @@ def fs_half(case):
     return case["loop_Hz"] / 2
 
 
-cases = []
-for fs in [250, 400, 500, 1000, 2000, 4000, 8000]:
-    for k in range(10):
-        tau = float(rng.choice([0, 0.008, 0.015, 0.03, 0.06]))
-        K = float(np.exp(rng.uniform(np.log(5), np.log(300))))
-        Td = float(rng.choice([0, 0.0003, 0.001, 0.0025, 0.004, 0.011]))
-        wc = float(np.exp(rng.uniform(np.log(10), np.log(90))))
-        p = wc / K
-        case = dict(
-            loop_Hz=fs, K=K, tau=tau, Td=Td, p=p,
-            i=float(rng.choice([0.0, 0.6, 2.5, 8.0])) * p,
-            d=float(rng.choice([0.0, 0.4, 0.9])) * p * max(tau, 0.005),
-            dcut=float(rng.choice([0, 40, 90])), dkind=str(rng.choice(["first-order", "biquad"])),
-            gyro=float(rng.choice([0, 60, 110])),
-            notches=[[float(fs * 0.17), 3.0]] if rng.uniform() < 0.3 else [],
-            noise=0.01,
-        )
-        if k == 8:
-            case.update(p=p * 12, d=0.0)  # far too much gain
-        if k == 9:
-            case.update(i=60 * p, tau=0.03, d=p * 0.04, dcut=0.0, Td=0.0005)  # much integral: conditionally stable
-        cases.append(case)
-for case in cases:
-    case["expected"] = analyse(case)
-path = os.path.join(os.path.dirname(os.path.abspath(__file__)), "loops.json")
-json.dump(cases, open(path, "w"))
-st = sum(c["expected"]["stable"] for c in cases)
-cond = sum(1 for c in cases if c["expected"]["stable"] and c["expected"]["gr_dB"] is not None)
-print(len(cases), "loops", st, "stable", cond, "conditionally")
+if __name__ == "__main__":
+    cases = []
+    for fs in [250, 400, 500, 1000, 2000, 4000, 8000]:
+        for k in range(10):
+            tau = float(rng.choice([0, 0.008, 0.015, 0.03, 0.06]))
+            K = float(np.exp(rng.uniform(np.log(5), np.log(300))))
+            Td = float(rng.choice([0, 0.0003, 0.001, 0.0025, 0.004, 0.011]))
+            wc = float(np.exp(rng.uniform(np.log(10), np.log(90))))
+            p = wc / K
+            case = dict(
+                loop_Hz=fs, K=K, tau=tau, Td=Td, p=p,
+                i=float(rng.choice([0.0, 0.6, 2.5, 8.0])) * p,
+                d=float(rng.choice([0.0, 0.4, 0.9])) * p * max(tau, 0.005),
+                dcut=float(rng.choice([0, 40, 90])), dkind=str(rng.choice(["first-order", "biquad"])),
+                gyro=float(rng.choice([0, 60, 110])),
+                notches=[[float(fs * 0.17), 3.0]] if rng.uniform() < 0.3 else [],
+                noise=0.01,
+            )
+            if k == 8:
+                case.update(p=p * 12, d=0.0)  # far too much gain
+            if k == 9:
+                case.update(i=60 * p, tau=0.03, d=p * 0.04, dcut=0.0, Td=0.0005)  # much integral: conditionally stable
+            cases.append(case)
+    for case in cases:
+        case["expected"] = analyse(case)
+    path = os.path.join(os.path.dirname(os.path.abspath(__file__)), "loops.json")
+    json.dump(cases, open(path, "w"))
+    st = sum(c["expected"]["stable"] for c in cases)
+    cond = sum(1 for c in cases if c["expected"]["stable"] and c["expected"]["gr_dB"] is not None)
+    print(len(cases), "loops", st, "stable", cond, "conditionally")
