@@ -123,13 +123,16 @@ describeInBrowser('Match', (site) => {
         expect(half, `${axis} ${column}`).toBeGreaterThan(0);
       }
     }
+    await opened.shot('match-results');
     await page.getByRole('button', { name: 'Fly them' }).click();
     await page
       .getByText(/the simulation follows/)
       .first()
       .waitFor({ timeout: 120_000 });
     expect(await accessibilityFaults(page)).toEqual([]);
-    await opened.shot('match-results');
+    await page.locator('.match-replay').scrollIntoViewIfNeeded();
+    await page.locator('.match-replay figure').nth(1).scrollIntoViewIfNeeded();
+    await opened.shot('match-replay');
     await page.getByRole('button', { name: 'Accept the corrected build' }).click();
     await page.getByText(/Shape and Prove now run on it/).waitFor();
     const corrected = await rollInertia(page);
@@ -162,8 +165,8 @@ describeInBrowser('Match', (site) => {
     await go.click();
     const offer = page.getByRole('button', { name: /^Take all/ });
     await page.getByRole('heading', { name: 'What the log says' }).waitFor({ timeout: 120_000 });
-    await opened.shot('match-offers-dark');
     await offer.waitFor();
+    await opened.shot('match-offers-dark');
     await offer.click();
     await offer.waitFor({ state: 'detached', timeout: 120_000 });
     await page.locator('.match-why', { hasText: 'yaw' }).waitFor({ timeout: 120_000 });

@@ -41,7 +41,7 @@ function Overview(props: { axis: AxisName; overview: NonNullable<ShownAxis['over
       label={words.overview(axis)}
       x={overview.t_s}
       series={series}
-      xLabel=""
+      xLabel={words.time}
       xUnit="s"
       yLabel={words.rate}
       yUnit="deg/s"
@@ -71,7 +71,7 @@ function Check(props: { axis: AxisName; check: NonNullable<ShownAxis['check']> }
         label={words.check(axis)}
         x={check.t_s}
         series={over}
-        xLabel=""
+        xLabel={words.time}
         xUnit="s"
         yLabel={words.rate}
         yUnit="deg/s"
@@ -82,7 +82,7 @@ function Check(props: { axis: AxisName; check: NonNullable<ShownAxis['check']> }
         label={words.residual(axis)}
         x={check.t_s}
         series={left}
-        xLabel=""
+        xLabel={words.time}
         xUnit="s"
         yLabel={words.difference}
         yUnit="deg/s"
@@ -104,6 +104,7 @@ function Response(props: { axis: AxisName; response: NonNullable<ShownAxis['resp
       : [{ label: words.model, axis: 'ink' as const, values: pick(fitted), x: fitted.f_Hz }]),
     { label: words.log, axis, values: pick(measured) },
   ];
+  const range = [measured.f_Hz[0], measured.f_Hz[measured.f_Hz.length - 1]] as const;
   const gain = useMemo(() => curves((of) => of.gain_dB), [axis, response]);
   const phase = useMemo(() => curves((of) => of.phase_deg), [axis, response]);
   const coherence = useMemo(
@@ -116,36 +117,39 @@ function Response(props: { axis: AxisName; response: NonNullable<ShownAxis['resp
         label={words.responseGain(axis)}
         x={measured.f_Hz}
         series={gain}
-        xLabel=""
+        xLabel={words.frequency}
         xUnit="Hz"
-        yLabel={words.gain}
+        yLabel={words.magnitude}
         yUnit="dB"
         logX
+        xRange={range}
         height={150}
       />
       <LinePlot
         label={words.responsePhase}
         x={measured.f_Hz}
         series={phase}
-        xLabel=""
+        xLabel={words.frequency}
         xUnit="Hz"
         yLabel={words.responsePhase}
         yUnit="°"
         logX
+        xRange={range}
         height={150}
       />
       <LinePlot
         label={words.coherence}
         x={measured.f_Hz}
         series={coherence}
-        xLabel=""
+        xLabel={words.frequency}
         xUnit="Hz"
         yLabel={words.coherence}
         yUnit=""
         logX
+        xRange={range}
         yRange={[0, 1]}
         markers={COHERENCE_MARKS}
-        height={120}
+        height={150}
       />
     </>
   );
@@ -157,23 +161,28 @@ function Left(props: { axis: AxisName; left: NonNullable<ShownAxis['left']> }) {
     (): PlotSeries[] => [{ label: words.leftLabel, axis, values: left.density }],
     [axis, left],
   );
-  const markers = useMemo(
-    (): PlotMarker[] => left.lines.map(({ f_Hz, label }) => ({ x: f_Hz, label })),
-    [left],
-  );
+  const markers = useMemo((): PlotMarker[] => left.lines.map(({ f_Hz }) => ({ x: f_Hz, label: '' })), [left]);
   return (
-    <LinePlot
-      label={words.leftSpectrum}
-      x={left.f_Hz}
-      series={series}
-      xLabel=""
-      xUnit="Hz"
-      yLabel=""
-      yUnit="deg/s/√Hz"
-      logX
-      logY
-      markers={markers}
-      height={120}
-    />
+    <div>
+      <LinePlot
+        label={words.leftSpectrum}
+        x={left.f_Hz}
+        series={series}
+        xLabel={words.frequency}
+        xUnit="Hz"
+        yLabel={words.density}
+        yUnit="deg/s/√Hz"
+        logX
+        logY
+        xRange={[left.f_Hz[0], left.f_Hz[left.f_Hz.length - 1]]}
+        markers={markers}
+        height={150}
+      />
+      {left.lines.length > 0 && (
+        <p class="small">
+          {words.lines(left.lines.map(({ f_Hz, label }) => `${f_Hz.toFixed(0)} Hz ${label}`).join(', '))}
+        </p>
+      )}
+    </div>
   );
 }

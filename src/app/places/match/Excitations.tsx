@@ -59,7 +59,7 @@ export function Excitations() {
         onChange={(kind) => setOne(suggested(kind, one.axis, gains.maxRate_dps[one.axis]))}
       />
       <Select
-        label={words.axis}
+        label={words.axisOf}
         value={one.axis}
         options={AXES.map((value) => ({ value, label: value }))}
         onChange={(axis) => setOne(suggested(one.kind, axis, gains.maxRate_dps[axis]))}
@@ -199,7 +199,7 @@ function Given(props: { one: Excitation; form: Form; onForm: (form: Form) => voi
         label={words.lasts(readable(duration_s, 3), readable(largestTurn_deg(one), 2))}
         x={t_s}
         series={series}
-        xLabel=""
+        xLabel={words.time}
         xUnit="s"
         yLabel={words.setpoint}
         yUnit="deg/s"

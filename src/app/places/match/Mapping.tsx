@@ -1,9 +1,8 @@
 import { useState } from 'preact/hooks';
 import { CORNERS } from '../../../craft/build.ts';
 import { AXES } from '../../../craft/gains.ts';
-import { missingSignals, SIGNALS, UNITS, type ColumnChoice } from '../../../matching/columns.ts';
+import { missingSignals, SIGNALS, UNITS, unitInside, type ColumnChoice } from '../../../matching/columns.ts';
 import { Button } from '../../widgets/Button.tsx';
-import { NoticeBox } from '../../widgets/Notice.tsx';
 import { parseNumber } from '../../widgets/numberText.ts';
 import type { LogChoice } from './messages.ts';
 import type { MatchState } from './session.ts';
@@ -11,7 +10,12 @@ import { matchTexts as words } from './texts.ts';
 
 type Confirm = Extract<MatchState, { kind: 'confirm' }>;
 
-const GROUPS: readonly { readonly title: string; readonly signals: readonly string[] }[] = [
+interface SignalGroup {
+  readonly title: string;
+  readonly signals: readonly string[];
+}
+
+const GROUPS: readonly SignalGroup[] = [
   { title: words.groups.needed, signals: ['t', ...AXES.map((axis) => `gyro_${axis}`)] },
   { title: words.groups.commands, signals: CORNERS.map((corner) => `cmd_${corner}`) },
   { title: words.groups.setpoints, signals: [...AXES.map((axis) => `sp_${axis}`), 'throttle'] },
@@ -55,47 +59,50 @@ export function Mapping(props: {
       <p class="small faint">{words.signs}</p>
       <div class="match-groups">
         {GROUPS.map((group) => (
-          <table class="table" key={group.title}>
-            <caption>{group.title}</caption>
-            <thead>
-              <tr>
-                <th scope="col">{words.signal}</th>
-                <th scope="col">{words.column}</th>
-                <th scope="col">{words.unit}</th>
-                <th scope="col">{words.sign}</th>
-                <th scope="col">{words.because}</th>
-              </tr>
-            </thead>
-            <tbody>
-              {group.signals.map((signal) => (
-                <SignalRow key={signal} signal={signal} state={props.state} onChange={set} />
-              ))}
-            </tbody>
-          </table>
+          <Group key={group.title} group={group} state={props.state} onChange={set} />
         ))}
       </div>
       {proposal.unused.length > 0 && <p class="small faint">{words.unused(proposal.unused.join(', '))}</p>}
       <LoopField choice={choice} onChange={props.onChange} />
-      {missing.length > 0 && (
-        <NoticeBox kind="warning" details={missing.map(({ allowed }) => allowed)}>
-          {words.missing}
-        </NoticeBox>
-      )}
-      <div class="row">
+      <div class="match-confirm row">
         <Button primary disabled={missing.length > 0} onClick={props.onGo}>
           {words.go}
         </Button>
         <Button onClick={props.onAgain}>{words.again}</Button>
+        <span role="status" class="match-guess">
+          {missing.length > 0 && `${words.missing}: ${missing.map(({ allowed }) => allowed).join('; ')}.`}
+        </span>
       </div>
     </section>
   );
 }
 
-function SignalRow(props: {
-  signal: string;
-  state: Confirm;
-  onChange: (signal: string, choice: ColumnChoice | null) => void;
-}) {
+type OnSignal = (signal: string, choice: ColumnChoice | null) => void;
+
+function Group(props: { group: SignalGroup; state: Confirm; onChange: OnSignal }) {
+  const { group, state } = props;
+  return (
+    <table class="table">
+      <caption>{group.title}</caption>
+      <thead>
+        <tr>
+          <th scope="col">{words.signal}</th>
+          <th scope="col">{words.column}</th>
+          <th scope="col">{words.unit}</th>
+          <th scope="col">{words.sign}</th>
+          <th scope="col">{words.because}</th>
+        </tr>
+      </thead>
+      <tbody>
+        {group.signals.map((signal) => (
+          <SignalRow key={signal} signal={signal} state={state} onChange={props.onChange} />
+        ))}
+      </tbody>
+    </table>
+  );
+}
+
+function SignalRow(props: { signal: string; state: Confirm; onChange: OnSignal }) {
   const { signal, state, onChange } = props;
   const { proposal, choice } = state;
   const kind = SIGNALS.get(signal) ?? 'share';
@@ -114,7 +121,7 @@ function SignalRow(props: {
           value={head ?? ''}
           onChange={(event) => {
             const column = event.currentTarget.value;
-            const unit = now?.unit ?? Object.keys(UNITS[kind])[0];
+            const unit = now?.unit ?? unitInside(kind);
             onChange(signal, column === '' ? null : { column, unit, sign: now?.sign ?? 1 });
           }}
         >
@@ -158,7 +165,7 @@ function SignalRow(props: {
       <td class="small">
         {now === undefined ? null : asProposed ? (
           <>
-            {reason.because}
+            {reason.because.replace(/\bus\b/, 'µs')}
             {!reason.sure && <strong class="match-guess"> {words.look}</strong>}
           </>
         ) : (

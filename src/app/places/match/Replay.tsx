@@ -152,7 +152,7 @@ function ReplayPlots(props: { axis: AxisName; replayed: Replayed }) {
         label={words.replayPlot(axis)}
         x={t_s}
         series={over}
-        xLabel=""
+        xLabel={words.time}
         xUnit="s"
         yLabel={words.rate}
         yUnit="deg/s"
@@ -163,7 +163,7 @@ function ReplayPlots(props: { axis: AxisName; replayed: Replayed }) {
         label={words.replayLeft(axis)}
         x={t_s}
         series={left}
-        xLabel=""
+        xLabel={words.time}
         xUnit="s"
         yLabel={words.difference}
         yUnit="deg/s"
@@ -175,9 +175,9 @@ function ReplayPlots(props: { axis: AxisName; replayed: Replayed }) {
         label={words.replaySpectrum(axis)}
         x={f_Hz}
         series={spectra}
-        xLabel=""
+        xLabel={words.frequency}
         xUnit="Hz"
-        yLabel=""
+        yLabel={words.density}
         yUnit="deg/s/√Hz"
         logX
         logY

@@ -218,6 +218,12 @@ function withInterval(estimate: ShownEstimate, scale: number): string {
   return `${(estimate.value * scale).toFixed(places).replace('-', '−')} ± ${half.toFixed(places)}`;
 }
 
+/** A sentence about the build's fields with the words for them. */
+function plainly(line: string): string {
+  const named = Object.entries(words.fields).find(([field]) => line.startsWith(field));
+  return (named === undefined ? line : named[1] + line.slice(named[0].length)).replace('(-', '(−');
+}
+
 function Correction(props: { matched: Matched; accepted: boolean; stale: boolean }) {
   const store = useStore();
   const { result, file } = props.matched;
@@ -228,7 +234,7 @@ function Correction(props: { matched: Matched; accepted: boolean; stale: boolean
       {corrected === null ? null : <p class="small faint">{words.correctIntro}</p>}
       <ul class="match-changes">
         {[...changes, ...kept].map((line) => (
-          <li key={line}>{line}</li>
+          <li key={line}>{plainly(line)}</li>
         ))}
       </ul>
       {corrected !== null && (

@@ -15,6 +15,8 @@ import { matchTexts as words } from './texts.ts';
 const OVERVIEW_BUCKETS = 1200;
 const RESPONSE_LOW_HZ = 0.3;
 const RESPONSE_HIGH_HZ = 60;
+/** As far past the last trusted frequency is shown. */
+const BEYOND = 1.3;
 const CURVE_POINTS = 160;
 /** Spans shorter than this are not to be seen in the overview, as a share of the log. */
 const LEAST_SPAN_SHARE = 0.0005;
@@ -154,8 +156,11 @@ function shownResponse(
   build: ResponseAt,
 ): ShownAxis['response'] {
   if (response === null) return null;
+  const trusted = response.f_Hz.filter((f, k) => response.trusted[k] === 1 && f <= RESPONSE_HIGH_HZ);
+  const top_Hz =
+    trusted.length > 0 ? Math.min(RESPONSE_HIGH_HZ, BEYOND * trusted[trusted.length - 1]) : RESPONSE_HIGH_HZ;
   const shown = [...response.f_Hz.keys()].filter(
-    (k) => response.f_Hz[k] >= RESPONSE_LOW_HZ && response.f_Hz[k] <= RESPONSE_HIGH_HZ,
+    (k) => response.f_Hz[k] >= RESPONSE_LOW_HZ && response.f_Hz[k] <= top_Hz,
   );
   if (shown.length < 2) return null;
   const f_Hz = Float64Array.from(shown, (k) => response.f_Hz[k]);
