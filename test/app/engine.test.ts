@@ -75,14 +75,33 @@ describe('flight engine', () => {
     expect(engine.stats().late).toBe(0);
   });
 
-  it('counts ticks that begin more than a screen frame late and pauses after a long stall', () => {
-    const { engine, run, said } = bench();
+  it('counts ticks that begin more than a screen frame late, catches up a quarter second, pauses after a long stall', () => {
+    const { engine, rows, run, said } = bench();
     engine.begin(settings(), { kind: 'ground' }, 0);
     run(0.5, 100);
     expect(engine.stats().late).toBeGreaterThan(100);
-    run(2, 1000);
+    const { ticks, late } = engine.stats();
+    const rowsBefore = rows.length;
+    run(1, 1000);
+    expect(engine.stats().ticks).toBe(ticks + 400);
+    expect(engine.stats().late).toBeGreaterThan(late + 380);
+    expect(rows.length - rowsBefore, 'ticks flown').toBe(100);
+    expect(said).not.toContain('stalled');
+    run(2.5, 2500);
     expect(said).toContain('stalled');
     expect(engine.speed).toBe(0);
+  });
+
+  it('the time it takes to make a flight is not the flight’s', () => {
+    const { engine, said } = bench();
+    engine.begin(settings(), { kind: 'ground' }, 0);
+    engine.startClock(5000);
+    while (engine.advance(5008));
+    expect(engine.stats()).toMatchObject({ ticks: 3, late: 0 });
+    engine.startClock(9000);
+    while (engine.advance(5016));
+    expect(engine.stats().ticks, 'a running clock is left alone').toBe(6);
+    expect(said).not.toContain('stalled');
   });
 
   it('rewinds to the exact tick: what is flown again with the same sticks is the same to the bit', () => {

@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { faultsOf, NO_FAULTS } from '../../src/app/places/fly/faultChoices.ts';
-import { roughnessOf, Watch } from '../../src/app/places/fly/watch.ts';
+import { Watch } from '../../src/app/places/fly/watch.ts';
 import { parseFaults } from '../../src/disturbance/faults.ts';
 import { SIGNAL_NAMES, signalIndex } from '../../src/flight/signals.ts';
 
@@ -41,11 +41,18 @@ describe('what a person is told at once', () => {
     expect(watch.concern.value).toEqual({ kind: 'struck', corners: ['FR'] });
   });
 
-  it('motors scream above 3 % of the command range (the bench’s own word, no source)', () => {
+  it('motors scream above 3 % of the command range, once it lasts (the bench’s own word, no source)', () => {
     const watch = new Watch();
     look(watch, {}, 0.035, 0.5);
+    expect(watch.concern.value).toBeNull();
+    look(watch, {}, 0.035, 0.7);
     expect(watch.concern.value).toEqual({ kind: 'screaming' });
-    expect([0.01, 0.02, 0.035].map(roughnessOf)).toEqual(['quiet', 'rough', 'screaming']);
+    look(watch, {}, 0.02, 0.1);
+    expect(watch.roughness.value).toBe('rough');
+    look(watch, {}, 0.01, 0.1);
+    expect(watch.roughness.value).toBe('quiet');
+    look(watch, { touching: 1 }, 0.2, 3);
+    expect(watch.concern.value).toBeNull();
   });
 });
 

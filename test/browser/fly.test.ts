@@ -71,7 +71,7 @@ describeInBrowser(
       await page.keyboard.press('KeyP');
       const now = () =>
         page
-          .locator('.fly-read')
+          .locator('.fly-read:not(.machine)')
           .evaluate(() => document.querySelector('.tape-paper')?.getAttribute('aria-valuenow'));
       await page.waitForTimeout(400);
       const height = await readOut(page, 'height');

@@ -193,7 +193,7 @@ function runTape(
     if (!unread || now_ms - readOutAt_ms < READ_OUT_MS) return;
     unread = false;
     readOutAt_ms = now_ms;
-    writeValues(gutter, lanes, ring, hover_s.current ?? end_s);
+    writeValues(gutter, lanes, painter.laneBoxes(), ring, hover_s.current ?? end_s);
     paper.setAttribute('aria-valuemin', (oldestTime_s(ring) ?? 0).toFixed(2));
     paper.setAttribute('aria-valuemax', (newestTime_s(ring) ?? 0).toFixed(2));
     paper.setAttribute('aria-valuenow', end_s.toFixed(2));
@@ -223,16 +223,25 @@ function placeGutter(gutter: HTMLElement, painter: TapePainter): void {
 function writeValues(
   gutter: HTMLElement,
   lanes: readonly TapeLane[],
+  scales: readonly { readonly low: number; readonly high: number }[],
   ring: SignalRing,
   time_s: number,
 ): void {
   const row = firstRowAfter(ring, time_s) - 1;
   const cells = gutter.querySelectorAll('.tape-value');
   let n = 0;
-  for (const lane of lanes) {
+  lanes.forEach((lane, i) => {
+    const { low, high } = scales[i];
     for (const trace of lane.traces) {
       const value = row < ring.first ? NaN : ring.channels[trace.channel][row % ring.capacity];
-      cells[n++].textContent = readable(value, Math.abs(value) >= 100 ? 4 : 3);
+      cells[n++].textContent = toScale(value, high - low);
     }
-  }
+  });
+}
+
+/** A value to about a thousandth of its lane, so that its digits do not dance. */
+function toScale(value: number, span: number): string {
+  if (!Number.isFinite(value)) return '–';
+  const text = value.toFixed(Math.max(0, Math.min(6, 2 - Math.floor(Math.log10(span)))));
+  return Number(text) === 0 ? text.replace('-', '') : text.replace('-', '−');
 }

@@ -15,15 +15,18 @@ const SNAPSHOT_S = 0.25;
 const REWIND_S = 60;
 /** A tick later than this after it was due counts as late. */
 const FRAME_MS = 1000 / 60;
-/** After a stall longer than this the flight pauses instead of catching up. */
-const STALL_MS = 400;
+/** Of a stall no more than this is caught up; the rest of the time is lost, its ticks count as late. */
+const CATCH_UP_MS = 250;
+/** After a stall longer than this the flight pauses: nobody was there to fly it. */
+const STALL_MS = 2000;
 /** Work done in one go at most, so that messages get through. */
 const SLICE_MS = 12;
 /** Rows a second that go to the page at most. */
 const ROWS_PER_S = 500;
 /** Rows that the record keeps at most; then its oldest quarter goes. */
 const LONGEST_RECORD = 600_000;
-const ACTIVITY_CORNER_HZ = 5;
+/** Command movement above this is noise, below it is flying. */
+const ACTIVITY_CORNER_HZ = 20;
 /** Changes nearer to each other than this are one movement of a slider, s. */
 const ONE_CHANGE_S = 0.5;
 
@@ -69,6 +72,8 @@ export class FlightEngine {
   private ticks = 0;
   private readonly punctuality = new Punctuality();
   private readonly slow_us = new Float64Array(4);
+  /** A new flight's clock starts once it is ready, however long that took. */
+  private fresh = false;
   private activity_us2 = 0;
   private heat_W = 0;
   private stride = 1;
@@ -197,6 +202,7 @@ export class FlightEngine {
       return false;
     }
     const perTick_ms = (1000 * flight.tick_s) / this.speedNow;
+    this.loseTime(now_ms, away_ms, perTick_ms);
     const due = this.originTick + Math.floor((now_ms - this.origin_ms) / perTick_ms);
     // Enough for one slice even on a slow machine; what is left over is due at the next call.
     const most = Math.max(1, Math.ceil((SLICE_MS * 4) / 1000 / flight.tick_s));
@@ -210,6 +216,21 @@ export class FlightEngine {
     }
     if (done > 0) this.punctuality.count(now_ms, done, this.late - lateBefore);
     return flight.tickIndex < due;
+  }
+
+  /** After a stall, moves the clock's origin so that only a part of it is caught up. */
+  private loseTime(now_ms: number, away_ms: number, perTick_ms: number): void {
+    const lost = Math.floor((away_ms - CATCH_UP_MS) / perTick_ms);
+    if (lost <= 0) return;
+    this.origin_ms += lost * perTick_ms;
+    this.late += lost;
+    this.ticks += lost;
+    this.punctuality.count(now_ms, lost, lost);
+  }
+
+  /** Starts the clock of a flight that has just been made; does nothing in the middle of one. */
+  startClock(now_ms: number): void {
+    if (this.fresh) this.restartClock(now_ms);
   }
 
   private tickOnce(flight: Flight): void {
@@ -247,6 +268,7 @@ export class FlightEngine {
     let heat = 0;
     for (let i = 0; i < 4; i++) {
       const command = flight.signals[this.commandAt + i];
+      if (Number.isNaN(this.slow_us[i])) this.slow_us[i] = command;
       this.slow_us[i] += follow * (command - this.slow_us[i]);
       square += (command - this.slow_us[i]) ** 2 / 4;
       heat += flight.signals[this.heatAt + i] / 4;
@@ -314,14 +336,19 @@ export class FlightEngine {
     this.record = new Recorder();
     this.recordFrom = 0;
     this.earlier = [];
+    this.slow_us.fill(NaN);
+    this.activity_us2 = 0;
+    this.heat_W = 0;
     this.stride = Math.max(1, Math.ceil(settings.gains.loop_Hz / ROWS_PER_S));
     this.restartClock(now_ms);
+    this.fresh = true;
   }
 
   private restartClock(now_ms: number): void {
     this.origin_ms = now_ms;
     this.originTick = this.flight?.tickIndex ?? 0;
     this.lastCall_ms = now_ms;
+    this.fresh = false;
   }
 }
 

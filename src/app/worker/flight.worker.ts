@@ -65,6 +65,7 @@ function beat(): void {
 self.onmessage = ({ data }: MessageEvent<ToWorker>) => {
   try {
     answer(data);
+    engine.startClock(performance.now());
   } catch (error) {
     if (!(error instanceof InputError)) throw error;
     say({ kind: 'refused', file: error.file, problems: error.problems });

@@ -42,7 +42,7 @@ export interface TickStats {
   readonly late: number;
   /** Share of the last minute's ticks that were not late. */
   readonly onTime: number;
-  /** Root mean square of the motor commands above 5 Hz over the last second, µs. */
+  /** Root mean square of the motor commands above 20 Hz over the last second, µs. */
   readonly motorActivity_us: number;
   /** Mean winding heat of the four motors over the last second, W. */
   readonly windingHeat_W: number;

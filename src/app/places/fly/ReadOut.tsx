@@ -6,7 +6,6 @@ import { shownUnit } from '../../store/units.ts';
 import type { FlightView } from '../../view3d/flightView.ts';
 import type { FlightSession } from './session.ts';
 import { flyTexts } from './texts.ts';
-import { roughnessOf } from './watch.ts';
 
 const DOWN = signalIndex('down_m');
 const VELOCITY = signalIndex('vn_mps');
@@ -22,18 +21,17 @@ const CURRENT_MEMORY_S = 3;
 
 type Name = Exclude<keyof typeof flyTexts.readout, 'ticks' | 'frames'>;
 
-/** Of the flight, in the order they are read: name and unit. */
-const CELLS: readonly (readonly [Name, string])[] = [
-  ['height', 'm'],
-  ['speed', 'm/s'],
-  ['climb', 'm/s'],
-  ['tilt', 'deg'],
-  ['battery', 'V'],
-  ['charge', '%'],
-  ['current', 'A'],
-  ['left', 'min'],
-  ['activity', 'µs rms'],
-  ['heat', 'W'],
+/** Of the flight, in the order they are read: name, unit and the widest number’s characters. */
+const CELLS: readonly (readonly [Name, string, number])[] = [
+  ['height', 'm', 4],
+  ['speed', 'm/s', 4],
+  ['climb', 'm/s', 4],
+  ['tilt', 'deg', 3],
+  ['battery', 'V', 5],
+  ['current', 'A', 4],
+  ['left', 'min', 3],
+  ['activity', 'µs rms', 5],
+  ['heat', 'W', 4],
 ];
 const HINTS: Partial<Record<Name, string>> = {
   activity: flyTexts.activityHint,
@@ -64,6 +62,8 @@ export function ReadOut(props: { session: FlightSession }) {
     const { stats } = client.state.value;
     const shown = (value: number, unit: string) => fixed(value * shownUnit(unit, units).factor, 1);
     const current = get(CURRENT);
+    // From a standstill at once, then smoothed.
+    if (slowCurrent_A.current < LEAST_CURRENT_A) slowCurrent_A.current = current;
     slowCurrent_A.current += (EVERY_MS / 1000 / CURRENT_MEMORY_S) * (current - slowCurrent_A.current);
     const left_min = (60 * get(CHARGE) * build.battery.capacity_Ah) / slowCurrent_A.current;
     const [x, y] = [get(ATTITUDE + 1), get(ATTITUDE + 2)];
@@ -74,25 +74,32 @@ export function ReadOut(props: { session: FlightSession }) {
       climb: shown(-get(VELOCITY + 2), 'm/s'),
       tilt: fixed((tilt_rad * 180) / Math.PI, 0),
       battery: fixed(get(BATTERY), 2),
-      charge: fixed(100 * get(CHARGE), 0),
       current: fixed(current, 1),
       left: slowCurrent_A.current > LEAST_CURRENT_A ? fixed(left_min, 0) : '–',
       activity: fixed(stats.motorActivity_us, 1),
       heat: fixed(stats.windingHeat_W, 1),
     };
     CELLS.forEach(([name], i) => write(cells[i], values[name]));
-    const rough = roughnessOf(stats.motorActivity_us / (build.esc.max_us - build.esc.min_us));
+    const charge = host.current?.querySelector('.fly-charge');
+    if (charge instanceof Element) write(charge, fixed(100 * get(CHARGE), 0));
+    const rough = session.watch.roughness.value;
     const word = host.current?.querySelector('.fly-rough');
     if (word instanceof Element) write(word, flyTexts.roughness[rough]);
     host.current?.classList.toggle('rough', rough !== 'quiet');
   }, [session, units, build]);
   return (
     <dl class="fly-read" ref={host}>
-      {CELLS.map(([name, unit]) => (
+      {CELLS.map(([name, unit, width]) => (
         <div key={name} title={HINTS[name]}>
           <dt>{flyTexts.readout[name]}</dt>
-          <dd>
+          <dd style={{ minWidth: `${width + 1 + unit.length}ch` }}>
             <b>–</b> <span class="unit">{shownUnit(unit, units).unit}</span>
+            {name === 'battery' && (
+              <>
+                {' '}
+                <span class="fly-charge">–</span> <span class="unit">%</span>
+              </>
+            )}
             {name === 'activity' && <strong class="fly-rough" />}
           </dd>
         </div>

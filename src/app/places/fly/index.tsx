@@ -371,30 +371,32 @@ function Hint(props: {
         <span>{text}</span>
       )}
       {props.canvas && <span class="faint">{words.noWebgl}</span>}
-      <span class="fly-end">
-        <Button
-          quiet
-          pressed={seat.levelling}
-          title={key('levelling')}
-          onClick={() => session.setAssist('levelling')}
-        >
-          {words.levelling}
-        </Button>
-        <Button
-          quiet
-          pressed={seat.heightHold}
-          title={key('heightHold')}
-          onClick={() => session.setAssist('heightHold')}
-        >
-          {words.heightHold}
-        </Button>
-        <Button quiet onClick={props.onSticks}>
-          {words.sticksButton}
-        </Button>
-        <Button quiet pressed={props.keysOpen} title={key('keys')} onClick={props.onKeys}>
-          {words.keysButton}
-        </Button>
-      </span>
+      {at === null && (
+        <span class="fly-end">
+          <Button
+            quiet
+            pressed={seat.levelling}
+            title={key('levelling')}
+            onClick={() => session.setAssist('levelling')}
+          >
+            {words.levelling}
+          </Button>
+          <Button
+            quiet
+            pressed={seat.heightHold}
+            title={key('heightHold')}
+            onClick={() => session.setAssist('heightHold')}
+          >
+            {words.heightHold}
+          </Button>
+          <Button quiet onClick={props.onSticks}>
+            {words.sticksButton}
+          </Button>
+          <Button quiet pressed={props.keysOpen} title={key('keys')} onClick={props.onKeys}>
+            {words.keysButton}
+          </Button>
+        </span>
+      )}
     </div>
   );
 }

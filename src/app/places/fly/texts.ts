@@ -36,7 +36,6 @@ export const flyTexts = {
     climb: 'climb',
     tilt: 'tilt',
     battery: 'battery',
-    charge: 'charge',
     left: 'lasts',
     current: 'current',
     activity: 'motor noise',
@@ -48,7 +47,7 @@ export const flyTexts = {
   leftHint: 'At the present current, down to an empty pack; land well before',
   ticksHint: 'Ticks of the last minute that ran within one frame of when they were due',
   activityHint:
-    'Command movement above 5 Hz, rms over the last second. Rough above 1.5 % of the command range, screaming above 3 %',
+    'Command movement above 20 Hz, rms over the last second. Rough above 1.5 % of the command range, screaming above 3 %',
   heatHint: 'Mean i²R of the four motors over the last second',
   lanes: {
     roll: 'Roll rate',
@@ -72,8 +71,8 @@ export const flyTexts = {
   struck: (corners: string, upright: string, restart: string) =>
     `Propeller struck at ${corners}: motor off. ${upright} sets the craft upright, ${restart} restarts.`,
   tipped: (upright: string) => `The craft lies tipped. ${upright} sets it upright.`,
-  saturated: (corners: string) => `${corners} at the limit: the mixer has nothing left there.`,
-  screaming: 'The motors scream: gyro noise reaches them through D. Lower D or its low-pass.',
+  saturated: (corners: string) => `${corners} at the limit: nothing is left there.`,
+  screaming: 'The motors scream: noise reaches them through D. Lower D or its low-pass.',
   batteryLow: 'Battery below its cut-off under load: land.',
   lost: (id: string) => `${id} was unplugged: sticks neutral, throttle held, keys fly.`,
   took: {
