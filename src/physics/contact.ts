@@ -40,6 +40,9 @@ const STILL_RADPS = 2e-4;
 const PUT_INSIDE_M = 0.005;
 const PUSH_OUT_MPS = 0.5;
 
+/** Places of the velocities and body rates in a state. */
+const MOTION = [VELOCITY, VELOCITY + 1, VELOCITY + 2, RATES, RATES + 1, RATES + 2] as const;
+
 export class ContactWorld implements Stateful {
   /** 1 where a rotor's disc struck something in the last step, FL, FR, RL, RR. */
   readonly struck = new Uint8Array(4);
@@ -141,7 +144,7 @@ export class ContactWorld implements Stateful {
     if (this.touching.length === 0 && !struck) return false;
     this.pushOut(dt);
     this.boundEnergy(energy, from, linear_mps2);
-    if (this.touching.length > 0 && this.standsStill()) {
+    if (this.touching.length > 0 && this.stood(state) && this.standsStill()) {
       this.hold(state, dt, linear_mps2, angular_radps2);
       return true;
     }
@@ -267,6 +270,13 @@ export class ContactWorld implements Stateful {
 
   // --- Rest ---------------------------------------------------------------------------------------------
 
+  /** Began the step as slow as a craft that stands: one that lands in it still has its way to go. */
+  private stood(state: Float64Array): boolean {
+    const speed = Math.hypot(state[VELOCITY], state[VELOCITY + 1], state[VELOCITY + 2]);
+    const rate = Math.hypot(state[RATES], state[RATES + 1], state[RATES + 2]);
+    return speed < STILL_MPS && rate < STILL_RADPS;
+  }
+
   private standsStill(): boolean {
     const { body } = this.shape;
     return (
@@ -276,10 +286,11 @@ export class ContactWorld implements Stateful {
     );
   }
 
-  /** Keeps the pose, without motion, and remembers what led to it. */
+  /** Keeps the pose, without motion; remembers what led to it once that was without motion too. */
   private hold(state: Float64Array, dt: number, linear: Float64Array, angular: Float64Array): void {
-    state.fill(0, VELOCITY, VELOCITY + 3);
-    state.fill(0, RATES, RATES + 3);
+    const moved = MOTION.some((at) => state[at] !== 0);
+    for (const at of MOTION) state[at] = 0;
+    if (moved) return;
     this.held[0] = dt;
     for (let i = 0; i < 13; i++) this.held[1 + i] = state[i];
     for (let i = 0; i < 3; i++) {

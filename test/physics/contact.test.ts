@@ -150,7 +150,7 @@ describe('contact: energy, rest, repeatability', () => {
   it('a thrown craft comes to rest and then does not move at all', () => {
     fc.assert(
       fc.property(thrown, (how) => {
-        const bench = throwIt({ ...how, friction: 0.6, restitution: 0.3 }).run(4);
+        const bench = throwIt({ ...how, friction: 0.6, restitution: 0.3 }).run(8);
         const before = Array.from(bench.state);
         bench.run(0.5);
         expect(Array.from(bench.state)).toEqual(before);
