@@ -34,5 +34,6 @@ export default defineConfig({
     testTimeout: 60_000,
     hookTimeout: 120_000,
     maxWorkers: 2,
+    setupFiles: ['test/setup.ts'],
   },
 });
