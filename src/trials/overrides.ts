@@ -71,6 +71,22 @@ export function valueAt(trial: Trial, subject: Subject, path: string, file = 'ov
   return Object.hasOwn(parent, last) ? numberAt(parent, last, path, file) : NaN;
 }
 
+/** Paths of all numbers of the subject, its wind and the trial, to choose from. */
+export function numberPaths(trial: Trial, subject: Subject): string[] {
+  const paths: string[] = [];
+  const visit = (value: unknown, path: string): void => {
+    if (typeof value === 'number') paths.push(path);
+    else if (Array.isArray(value)) value.forEach((one, i) => visit(one, `${path}[${i}]`));
+    else if (typeof value === 'object' && value !== null)
+      for (const [key, one] of Object.entries(value)) visit(one, `${path}.${key}`);
+  };
+  visit(subject.gains, 'gains');
+  visit(subject.build, 'build');
+  visit(subject.wind ?? trial.wind(parametersOf(trial, {}, 'trial')), 'wind');
+  for (const name of Object.keys(trial.parameters)) paths.push(`trial.${name}`);
+  return paths;
+}
+
 function keysOf(path: string): string[] {
   return path.split(/[.[\]]+/).filter((key) => key !== '');
 }

@@ -1,7 +1,8 @@
 /**
  * Many trials over several workers, in any order of finishing. What a worker is, is made elsewhere: a thread of
  * node, a worker of the browser, or none. One that dies loses only the task it had: another takes its place and
- * the task is given out once more; a task that kills twice is told as failed and the rest goes on.
+ * the task is given out once more; a task that kills twice is told as failed and the rest goes on. One that
+ * gives no answer for `PATIENCE_S` hangs: it is ended, and that counts as its death.
  */
 import { InputError } from '../craft/problem.ts';
 import { answerTask, type TaskAnswer, type TaskMessage } from './protocol.ts';
@@ -57,7 +58,12 @@ export interface PoolWork {
   /** Told each answer once; an error thrown here ends the run and comes out of `done`. */
   hear(index: number, answer: TaskAnswer): void;
   progress?(progress: Progress): void;
+  /** A worker that has not answered a task for so long is ended; default PATIENCE_S. */
+  readonly patience_s?: number;
 }
+
+/** The longest trials take seconds; a machine that is busy with other things ten times that. */
+export const PATIENCE_S = 120;
 
 /** Deaths beyond one a worker and this many end the run: the fault is not in single tasks. */
 const SPARE_DEATHS = 4;
@@ -92,6 +98,7 @@ class Pool implements PoolRun {
   private readonly again: number[] = [];
   private readonly triedBefore = new Set<number>();
   private readonly underWay = new Map<TrialWorker, number | null>();
+  private readonly alarms = new Map<TrialWorker, ReturnType<typeof setTimeout>>();
   private readonly deaths: string[] = [];
   private readonly clock = new Stopwatch();
 
@@ -145,6 +152,7 @@ class Pool implements PoolRun {
     const index = this.underWay.get(worker);
     // An answer that nobody waits for (after a cancel) is dropped.
     if (this.ended || index !== answer.id) return;
+    this.calm(worker);
     this.underWay.set(worker, null);
     this.tell(answer.id, answer);
     this.give(worker);
@@ -153,6 +161,7 @@ class Pool implements PoolRun {
   private died(worker: TrialWorker, reason: string): void {
     if (this.ended || !this.underWay.has(worker)) return;
     const index = this.underWay.get(worker) ?? null;
+    this.calm(worker);
     this.underWay.delete(worker);
     this.deaths.push(reason);
     if (index !== null) {
@@ -183,8 +192,24 @@ class Pool implements PoolRun {
         continue;
       }
       this.underWay.set(worker, index);
+      this.watch(worker);
       worker.send({ id: index, task });
     }
+  }
+
+  /** Ends the worker when it does not answer in time. */
+  private watch(worker: TrialWorker): void {
+    const { patience_s = PATIENCE_S } = this.work;
+    const late = (): void => {
+      worker.end();
+      this.guard(() => this.died(worker, `no answer within ${patience_s} s`));
+    };
+    this.alarms.set(worker, setTimeout(late, 1000 * patience_s));
+  }
+
+  private calm(worker: TrialWorker): void {
+    clearTimeout(this.alarms.get(worker));
+    this.alarms.delete(worker);
   }
 
   private tell(index: number, answer: TaskAnswer): void {
@@ -199,6 +224,8 @@ class Pool implements PoolRun {
   private finish(end: PoolEnd): void {
     if (this.ended) return;
     this.ended = true;
+    for (const alarm of this.alarms.values()) clearTimeout(alarm);
+    this.alarms.clear();
     for (const worker of this.underWay.keys()) worker.end();
     this.underWay.clear();
     this.settle({ end, done: this.told, deaths: this.deaths });

@@ -52,7 +52,8 @@ function short(value: number, digits = 3): string {
 
 /** Everything needed to repeat it, as a run description (`prove --run`). */
 export function repeatDescription(content: ReportContent): object {
-  const { build, gains, baseline, wind, seed, notes, spread, sweep } = content;
+  const { build, gains, baseline, wind, seed, notes, spread } = content;
+  const sweep = sameSubject(content) ? content.sweep : null;
   return {
     format: RUN_FORMAT,
     version: VERSION,
@@ -68,6 +69,14 @@ export function repeatDescription(content: ReportContent): object {
     ...(sweep === undefined || sweep === null ? {} : { sweep: sweep.sweep }),
     ...(spread === undefined || spread === null ? {} : { spread: spread.request }),
   };
+}
+
+/** A sweep of other gains stands in the report, but not in the description: it would be another map there. */
+function sameSubject({ sweep, build, gains, wind }: ReportContent): boolean {
+  if (sweep === undefined || sweep === null) return false;
+  const { subject } = sweep;
+  const key = (one: readonly unknown[]): string => JSON.stringify(one);
+  return key([subject.build, subject.gains, subject.wind ?? null]) === key([build, gains, wind ?? null]);
 }
 
 export function reportHtml(content: ReportContent): string {

@@ -8,13 +8,15 @@ import { checkBands, type Bands } from './bands.ts';
 import { rowsBetween, TRIAL_SIGNALS } from './measures.ts';
 import { resolve, type Overrides, type Resolved, type Subject } from './overrides.ts';
 import { trialByName } from './registry.ts';
-import type { Band, Score, ScoreDefinition, Trial, TrialResult, TrialRun } from './trial.ts';
+import type { Band, Score, ScoreDefinition, Traces, Trial, TrialResult, TrialRun } from './trial.ts';
 
 export interface TrialOptions extends Subject {
   readonly seed: number;
   /** Numbers of build, gains, wind and the trial's parameters in place of what stands there. */
   readonly overrides?: Overrides;
   readonly bands?: Bands;
+  /** Brings the trial's signals along with the result, for plots. */
+  readonly traces?: boolean;
 }
 
 /** A trial by name, as it goes to a worker. */
@@ -43,7 +45,8 @@ export function runTrial(options: TrialTask): TrialResult {
     const scores = trial.scores.map((one) => scoreOf(one, null, bands));
     return { ...about, scores, pass: true, stopped: null, note };
   }
-  const run = flyResolved(trial, resolved, seed, TRIAL_SIGNALS, 1);
+  const signals = options.traces === true ? withTraced(trial) : TRIAL_SIGNALS;
+  const run = flyResolved(trial, resolved, seed, signals, 1);
   const { stopped } = run.flight;
   const scores = trial.scores.map((one) => scoreOf(one, stopped === null ? one.of(run) : NaN, bands));
   return {
@@ -52,7 +55,43 @@ export function runTrial(options: TrialTask): TrialResult {
     pass: scores.every((score) => score.pass),
     stopped: stopped === null ? null : `${stopped.reason} at ${stopped.time_s.toFixed(2)} s: ${stopped.what}`,
     note,
+    ...(options.traces === true ? { traces: tracesOf(run, trial.traceSignals) } : {}),
   };
+}
+
+function withTraced(trial: Trial): readonly string[] {
+  return [...new Set([...TRIAL_SIGNALS, ...trial.traceSignals])];
+}
+
+/** Rows of a plot at most. */
+const MOST_TRACE_ROWS = 600;
+
+/** Time and signals at equal steps of ticks, few enough for a plot. */
+function tracesOf({ record }: TrialRun, signals: readonly string[]): Traces {
+  const stride = Math.max(1, Math.ceil(record.length / MOST_TRACE_ROWS));
+  const thinned = (name: string): number[] => {
+    const column = record.column(name);
+    return Array.from({ length: Math.ceil(column.length / stride) }, (_, i) => column[i * stride]);
+  };
+  return {
+    t_s: thinned('t_s'),
+    signals: signals.map((name) => ({ name, values: thinned(name) })),
+  };
+}
+
+/**
+ * The same flight judged by other bands: its values stay, what passes may change.
+ * @param bands in place of the trial's own; a score without one has the trial's own again
+ */
+export function judgedBy(result: TrialResult, bands: Bands): TrialResult {
+  const definitions = trialByName(result.trial).scores;
+  const scores = result.scores.map((score): Score => {
+    const definition = definitions.find((one) => one.name === score.name);
+    if (definition === undefined) return score;
+    const raw = score.applies ? (score.value ?? NaN) : null;
+    return scoreOf(definition, raw, bands);
+  });
+  return { ...result, scores, pass: scores.every((score) => score.pass) };
 }
 
 /** The flight of a trial with its record: for plots and for flying it again. @throws InputError as runTrial */

@@ -107,4 +107,12 @@ export interface TrialResult {
   /** Why the trial was not flown; null when it was. */
   readonly note: string | null;
   readonly traceSignals: readonly string[];
+  /** Only where the task asked for them. */
+  readonly traces?: Traces;
+}
+
+/** Signals of a flight over its time, thinned for a plot. */
+export interface Traces {
+  readonly t_s: readonly number[];
+  readonly signals: readonly { readonly name: string; readonly values: readonly number[] }[];
 }

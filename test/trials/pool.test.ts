@@ -130,6 +130,20 @@ describe('the pool', () => {
     expect(pool.reasons.filter((reason) => reason.includes('died of it twice'))).toHaveLength(1);
   });
 
+  it('a worker that hangs is ended, said, and its task flown by another; twice: told as failed', async () => {
+    const pool = toyPool(3, 1, { patience_s: 0.2 });
+    await turn();
+    // Hangs at the first task; the next worker answers it and hangs at the rest.
+    await expect.poll(() => pool.made.length, { interval: 5 }).toBe(2);
+    expect(pool.made[0].ended).toBe(true);
+    pool.busy()[0].answer();
+    const outcome = await pool.run.done;
+    expect(outcome).toMatchObject({ end: 'finished', done: 3 });
+    expect(outcome.deaths.every((reason) => reason === 'no answer within 0.2 s')).toBe(true);
+    expect(pool.reasons[0]).toMatch(/^answer/);
+    expect(pool.reasons.slice(1).every((reason) => /twice: no answer within 0.2 s/.test(reason))).toBe(true);
+  });
+
   it('workers that cannot live end the run as crashed, with what is finished kept', async () => {
     const pool = toyPool(50, 2);
     await turn();

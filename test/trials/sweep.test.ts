@@ -2,7 +2,7 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { InputError } from '../../src/craft/problem.ts';
-import { resolve, valueAt } from '../../src/trials/overrides.ts';
+import { numberPaths, resolve, valueAt } from '../../src/trials/overrides.ts';
 import { inPlaceWorker } from '../../src/trials/pool.ts';
 import { answerTask } from '../../src/trials/protocol.ts';
 import { trialByName } from '../../src/trials/registry.ts';
@@ -38,6 +38,15 @@ function problemOf(run: () => unknown) {
 }
 
 describe('fields by path', () => {
+  it('every suggested path leads to a number', () => {
+    const paths = numberPaths(gustTrial, subject);
+    expect(paths).toContain('gains.axes.roll.d_us_per_dps2');
+    expect(paths).toContain('build.airframe.inertia_kgm2.xx');
+    expect(paths).toContain('wind.gusts[0].peak_mps');
+    expect(paths).toContain('trial.rise_s');
+    for (const path of paths) expect(Number.isFinite(valueAt(gustTrial, subject, path)), path).toBe(true);
+  });
+
   it.each([
     ['gains.axes.roll.d_us_per_dps2', subject.gains.axes.roll.d_us_per_dps2],
     ['build.rotors[1].position_m[0]', subject.build.rotors[1].position_m[0]],

@@ -7,7 +7,7 @@ import { InputError } from '../../src/craft/problem.ts';
 import { reportForBuild } from '../../src/shaping/report.ts';
 import { mean, rowsBetween } from '../../src/trials/measures.ts';
 import { TRIALS, trialByName } from '../../src/trials/registry.ts';
-import { flyTrial, runTrial, type TrialTask } from '../../src/trials/runTrial.ts';
+import { flyTrial, judgedBy, runTrial, type TrialTask } from '../../src/trials/runTrial.ts';
 import { demo } from './demo.ts';
 
 const sandpiper = demo('sandpiper');
@@ -258,5 +258,32 @@ describe('many runs', () => {
     for (let seed = 50; seed < 250; seed++) run(seed);
     // A kept record alone would be 30 kB a run, 6 MB in all.
     expect(used_MB() - before).toBeLessThan(3);
+  });
+});
+
+describe('results', () => {
+  it('are judged anew by other bands and back by the trial’s own, without a flight', () => {
+    const own = runTrial(task('rate-step-yaw-large'));
+    const { name, value } = own.scores.find((score) => score.value !== null) ?? own.scores[0];
+    const strict = judgedBy(own, { [name]: { most: (value ?? 0) - 1 } });
+    expect(strict.pass).toBe(false);
+    expect(strict.scores.find((score) => score.name === name)).toMatchObject({
+      value,
+      pass: false,
+      source: 'set by the user',
+    });
+    expect(strict).toEqual(
+      runTrial(task('rate-step-yaw-large', { bands: { [name]: { most: (value ?? 0) - 1 } } })),
+    );
+    expect(judgedBy(strict, {})).toEqual(own);
+  });
+
+  it('bring the trial’s signals along when asked, few enough for a plot, and are else the same', () => {
+    const { traces, ...rest } = runTrial(task('rate-step-yaw-large', { traces: true }));
+    expect(rest).toEqual(runTrial(task('rate-step-yaw-large')));
+    expect(traces?.t_s.length).toBeGreaterThan(50);
+    expect(traces?.t_s.length).toBeLessThanOrEqual(600);
+    expect(traces?.signals.map(({ name }) => name)).toEqual(rest.traceSignals);
+    for (const { values } of traces?.signals ?? []) expect(values.length).toBe(traces?.t_s.length);
   });
 });
