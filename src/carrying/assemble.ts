@@ -6,13 +6,16 @@ import { VERSION } from '../flight/record.ts';
 import { axisModels } from '../shaping/axisModel.ts';
 import { exportConstants, type Convention } from '../shaping/conventions.ts';
 import { loopCurves } from '../shaping/curves.ts';
+import { gustResponse } from '../shaping/gust.ts';
 import { rateLoop } from '../shaping/rateLoop.ts';
 import { reportForBuild } from '../shaping/report.ts';
 import { TRIALS } from '../trials/registry.ts';
-import { bandText } from '../trials/report.ts';
-import type { TrialResult } from '../trials/trial.ts';
-import type { SheetContent, SheetQuantity } from './sheet.ts';
+import { bandText, scoreText } from '../trials/report.ts';
+import type { Score, TrialResult } from '../trials/trial.ts';
+import type { SheetContent, SheetQuantity, SheetTrial } from './sheet.ts';
 import { AXIS_DASH, linePlot } from './svgPlot.ts';
+import type { WindProof } from './windLimit.ts';
+import { sheetWind, windNotTested } from './windWords.ts';
 
 /** Trials that a sheet should have, quick enough to run for it. */
 export const SHEET_TRIALS: readonly string[] = [
@@ -35,36 +38,28 @@ export interface SheetInput {
   readonly gains: Gains;
   readonly convention: Convention;
   readonly results: readonly TrialResult[];
-  readonly seed: number;
+  /** What the flights in rising wind have shown; null or absent when they were not flown. */
+  readonly wind?: WindProof | null;
   readonly printedAt: string;
-  /** How well measured quantities are known, by their name; from Measure. */
+  /** How well measured quantities are known, by their name in `QUANTITIES`; from Measure. */
   readonly known?: Readonly<Record<string, string>>;
 }
 
 /** @throws InputError when the craft cannot be trimmed in hover. */
 export function assembleSheet(input: SheetInput): SheetContent {
-  const { build, gains, results } = input;
+  const { build, gains, results, wind = null } = input;
   const report = trimmed(build, () => reportForBuild(build, gains));
   return {
     build,
     gains,
     measured: quantitiesOf(build, input.known ?? {}),
     convention: input.convention.name,
-    constants: exportConstants(gains, input.convention, 'text', build.name).trimEnd().split('\n'),
+    constants: constantsOf(input),
     margins: AXES.map((axis) => ({ axis, ...report[axis] })),
-    scores: results.flatMap((result) =>
-      result.scores.map((score) => ({
-        trial: result.title,
-        score: score.name,
-        value: score.value === null ? 'not reached' : `${Number(score.value.toPrecision(3))} ${score.unit}`,
-        band: bandText(score.band, score.unit),
-        pass: score.pass,
-      })),
-    ),
-    windProven: windWords(results),
-    notTested: notTested(results),
-    plots: trimmed(build, () => plotsOf(build, gains)),
-    seed: input.seed,
+    ...trialsOf(results),
+    wind: wind === null ? null : sheetWind(wind),
+    notTested: [...notRun(results), ...windNotTested(wind), ...NEVER_TESTED],
+    plots: trimmed(build, () => plotsOf(build, gains, (axis) => report[axis].stable)),
     version: VERSION,
     printedAt: input.printedAt,
   };
@@ -81,67 +76,149 @@ function trimmed<T>(build: Build, run: () => T): T {
   }
 }
 
+/** The constants' own lines: loop, filters and cautions stand elsewhere on the sheet. */
+function constantsOf({ gains, convention, build }: SheetInput): string[] {
+  const lines = exportConstants(gains, convention, 'text', build.name).trimEnd().split('\n');
+  return lines.slice(lines.indexOf('') + 1);
+}
+
+/** Kilograms in a pound (international yard and pound agreement, 1959). */
+const POUND_KG = 0.45359237;
+
+/** What the sheet says of a build, by the name that Measure uses for how well it is known. */
+const QUANTITIES: Readonly<Record<string, (build: Build) => readonly [value: number, unit: string]>> = {
+  'all-up mass': ({ airframe }) => [airframe.mass_kg, 'kg'],
+  'inertia roll': ({ airframe }) => [airframe.inertia_kgm2.xx, 'kg m²'],
+  'inertia pitch': ({ airframe }) => [airframe.inertia_kgm2.yy, 'kg m²'],
+  'inertia yaw': ({ airframe }) => [airframe.inertia_kgm2.zz, 'kg m²'],
+  'propeller diameter': ({ propeller }) => [propeller.diameter_m, 'm'],
+  'thrust coefficient': ({ propeller }) => [propeller.thrustCoefficient, ''],
+  'power coefficient': ({ propeller }) => [propeller.powerCoefficient, ''],
+  'battery cells': ({ battery }) => [battery.cells, ''],
+  'battery capacity': ({ battery }) => [battery.capacity_Ah, 'A h'],
+  'gyro noise': ({ gyro }) => [gyro.noise_dps_per_rtHz, 'deg/s/√Hz'],
+};
+
+/** Names of the quantities on the sheet. */
+export const QUANTITY_NAMES: readonly string[] = Object.keys(QUANTITIES);
+
 function quantitiesOf(build: Build, known: Readonly<Record<string, string>>): SheetQuantity[] {
-  const { airframe, propeller, battery, gyro } = build;
-  const row = (name: string, value: number, unit: string): SheetQuantity => ({
-    name,
-    value: String(Number(value.toPrecision(4))),
-    unit,
-    known: known[name] ?? 'as entered',
+  return Object.entries(QUANTITIES).map(([name, read]) => {
+    const [value, unit] = read(build);
+    const text = String(Number(value.toPrecision(4)));
+    return {
+      name,
+      value: unit === 'kg' ? `${text} kg (${Number((value / POUND_KG).toPrecision(4))} lb)` : text,
+      unit: unit === 'kg' ? '' : unit,
+      known: Object.hasOwn(known, name) ? known[name] : 'as entered',
+    };
   });
-  return [
-    row('all-up mass', airframe.mass_kg, 'kg'),
-    row('inertia roll', airframe.inertia_kgm2.xx, 'kg m²'),
-    row('inertia pitch', airframe.inertia_kgm2.yy, 'kg m²'),
-    row('inertia yaw', airframe.inertia_kgm2.zz, 'kg m²'),
-    row('propeller diameter', propeller.diameter_m, 'm'),
-    row('thrust coefficient', propeller.thrustCoefficient, ''),
-    row('power coefficient', propeller.powerCoefficient, ''),
-    row('battery cells', battery.cells, ''),
-    row('battery capacity', battery.capacity_Ah, 'A h'),
-    row('gyro noise', gyro.noise_dps_per_rtHz, 'deg/s/√Hz'),
-  ];
 }
 
-/** What wind the passed trials stand for; a failed one is never counted. */
-function windWords(results: readonly TrialResult[]): string | null {
-  const passed = (name: string) => results.some((result) => result.trial === name && result.pass);
-  const parts: string[] = [];
-  const sides = ['front', 'right', 'rear', 'left'].filter((side) => passed(`gust-${side}`));
-  if (sides.length > 0) parts.push(`6 m/s gust from ${sides.join(', ')}`);
-  const levels = ['light', 'moderate', 'severe'].filter((level) => passed(`turbulence-${level}`));
-  if (levels.length > 0) parts.push(`${levels.join(' and ')} turbulence of MIL-F-8785C`);
-  return parts.length === 0 ? null : `${parts.join('; ')}; one seed each`;
+/** More than this does not fit beside the rest on the second page. */
+const MOST_ROWS = 12;
+/** What stands of one trial: a table's row of about two lines. */
+const LONGEST_SCORES = 150;
+
+/** What is outside its band comes first and is never left out of sight. */
+function trialsOf(results: readonly TrialResult[]): Pick<SheetContent, 'trials' | 'moreTrials'> {
+  const order = (result: TrialResult) =>
+    (result.pass ? 1000 : 0) + (SHEET_TRIALS.includes(result.trial) ? 0 : 100);
+  const sorted = [...results].sort((a, b) => order(a) - order(b));
+  const left = sorted.slice(MOST_ROWS);
+  const names = (pass: boolean) =>
+    left.filter((result) => result.pass === pass).map((result) => result.title);
+  const parts = [
+    ['Also OUTSIDE their bands', names(false)],
+    ['Also within their bands', names(true)],
+  ] as const;
+  return {
+    trials: sorted.slice(0, MOST_ROWS).map(sheetTrial),
+    moreTrials: parts
+      .filter(([, titles]) => titles.length > 0)
+      .map(([what, titles]) => `${what} (${titles.length}): ${titles.join('; ')}.`)
+      .join(' '),
+  };
 }
 
-function notTested(results: readonly TrialResult[]): string[] {
+function sheetTrial(result: TrialResult): SheetTrial {
+  const { title, seed, pass, stopped, note } = result;
+  const outside = result.scores.filter((score) => !score.pass);
+  const whole = [...outside, ...result.scores.filter((score) => score.pass)].map(scoreWords);
+  const text = note ?? (stopped === null ? fitting(whole) : `ended early: ${stopped}`);
+  return { trial: `${title}${changedParameters(result)}`, scores: text, seed, pass };
+}
+
+function scoreWords(score: Score): string {
+  return `${score.name} ${scoreText(score)} (${bandText(score.band, score.unit)})${score.pass ? '' : ' OUTSIDE'}`;
+}
+
+function fitting(parts: readonly string[]): string {
+  let text = '';
+  let used = 0;
+  for (const part of parts) {
+    if (used > 0 && text.length + part.length > LONGEST_SCORES) break;
+    text += used === 0 ? part : `; ${part}`;
+    used++;
+  }
+  const left = parts.length - used;
+  return left === 0 ? text : `${text}; ${left} more`;
+}
+
+/** What a person changed about a trial stands with its name: another gust is another trial. */
+function changedParameters({ trial, parameters }: TrialResult): string {
+  const own = TRIALS.find((one) => one.name === trial)?.parameters ?? {};
+  const changed = Object.entries(parameters).filter(
+    ([name, value]) => Object.hasOwn(own, name) && own[name].value !== value,
+  );
+  return changed.length === 0 ? '' : ` (${changed.map(([name, value]) => `${name} ${value}`).join(', ')})`;
+}
+
+const NEVER_TESTED: readonly string[] = [
+  'Structure, wiring, radio link, fail-safe, navigation, and anything else the model does not hold.',
+];
+
+function notRun(results: readonly TrialResult[]): string[] {
   const run = new Set(results.map((result) => result.trial));
   const left = TRIALS.filter((trial) => !run.has(trial.name)).map((trial) => trial.title);
+  const skipped = results.filter((result) => result.note !== null).map((result) => result.title);
   return [
     ...(left.length === 0 ? [] : [`Trials not run: ${left.join('; ')}.`]),
-    'Structure, wiring, radio link, fail-safe, navigation, and anything the model does not hold.',
-    'More than one seed of turbulence, unless said above.',
+    ...(skipped.length === 0 ? [] : [`Trials that say nothing about this build: ${skipped.join('; ')}.`]),
   ];
 }
 
-function plotsOf(build: Build, gains: Gains): string[] {
+type AxisCurves = ReturnType<typeof loopCurves> & { axis: (typeof AXES)[number] };
+interface Curve {
+  readonly x: Float64Array;
+  readonly y: Float64Array;
+}
+const NOTHING: Curve = { x: new Float64Array(0), y: new Float64Array(0) };
+/** Push from outside in the gust plot, deg/s²: a step of angular acceleration that stays. */
+const PUSH_DPS2 = 100;
+/** Length of the plots in time, s. */
+const SHOWN_S = 0.6;
+/** Upper end of common practice for the peak of the sensitivity, Ms. */
+const COMMON_MS = 1.6;
+
+function plotsOf(build: Build, gains: Gains, stable: (axis: (typeof AXES)[number]) => boolean): string[] {
   const models = axisModels(build);
-  const curves = AXES.map((axis) => ({
+  const loops = AXES.map((axis) => ({ axis, loop: rateLoop(models[axis].measured, gains, axis) }));
+  const curves = loops.map(({ axis, loop }) => ({
     axis,
-    ...loopCurves(rateLoop(models[axis].measured, gains, axis), build.gyro.noise_dps_per_rtHz),
+    ...loopCurves(loop, build.gyro.noise_dps_per_rtHz),
   }));
-  const lines = (pick: (c: (typeof curves)[number]) => { x: Float64Array; y: Float64Array }) =>
+  const lines = (pick: (c: AxisCurves) => Curve) =>
     curves.map((c) => ({ label: c.axis, dash: AXIS_DASH[c.axis], ...pick(c) }));
-  const stepEnd_s = 0.6;
+  const gusts = new Map(loops.map(({ axis, loop }) => [axis, stable(axis) ? pushCurve(loop) : NOTHING]));
   return [
     linePlot(
       { title: 'Rate step, setpoint 1', xLabel: 's', yLabel: '', levels: [{ y: 1, label: '1' }] },
-      lines((c) => {
-        const step = c.step ?? { t_s: new Float64Array(0), y: new Float64Array(0) };
-        const count = step.t_s.findIndex((t) => t > stepEnd_s);
-        const last = count === -1 ? step.t_s.length : count;
-        return { x: step.t_s.subarray(0, last), y: step.y.subarray(0, last) };
-      }),
+      lines((c) => (c.step === null ? NOTHING : firstPart(c.step.t_s, c.step.y))),
+    ),
+    linePlot(
+      { title: `Rate after a gust’s push of ${PUSH_DPS2} deg/s²`, xLabel: 's', yLabel: 'deg/s' },
+      lines((c) => gusts.get(c.axis) ?? NOTHING),
     ),
     linePlot(
       { title: 'Loop gain', xLabel: 'Hz', yLabel: 'dB', logX: true, levels: [{ y: 0, label: '0 dB' }] },
@@ -149,13 +226,24 @@ function plotsOf(build: Build, gains: Gains): string[] {
     ),
     linePlot(
       {
-        title: 'Sensitivity to gusts',
+        title: 'Sensitivity (below 0 dB: gusts held down)',
         xLabel: 'Hz',
         yLabel: 'dB',
         logX: true,
-        levels: [{ y: 20 * Math.log10(1.6), label: 'Ms 1.6' }],
+        levels: [{ y: 20 * Math.log10(COMMON_MS), label: `Ms ${COMMON_MS}` }],
       },
       lines((c) => ({ x: c.f_Hz, y: c.sensitivity_dB })),
     ),
   ];
+}
+
+function pushCurve(loop: ReturnType<typeof rateLoop>): Curve {
+  const { t_s, rate_dps } = gustResponse(loop, PUSH_DPS2, SHOWN_S);
+  return firstPart(t_s, rate_dps);
+}
+
+function firstPart(t_s: Float64Array, y: Float64Array): Curve {
+  const count = t_s.findIndex((t) => t > SHOWN_S);
+  const last = count === -1 ? t_s.length : count;
+  return { x: t_s.subarray(0, last), y: y.subarray(0, last) };
 }

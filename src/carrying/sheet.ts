@@ -25,12 +25,20 @@ export interface SheetMargins {
   readonly noiseAtMotor_us_rms: number | null;
 }
 
-export interface SheetScore {
+export interface SheetTrial {
   readonly trial: string;
-  readonly score: string;
-  readonly value: string;
-  readonly band: string;
+  /** Scores with their bands; what is outside is said in the text itself. */
+  readonly scores: string;
+  readonly seed: number;
   readonly pass: boolean;
+}
+
+/** The wind that was shown to hold, in sentences, with the gust flights as a table. */
+export interface SheetWind {
+  readonly sentences: readonly string[];
+  readonly steps: readonly string[];
+  /** Per side: "3 of 3" at each step. */
+  readonly sides: readonly { readonly side: string; readonly held: readonly string[] }[];
 }
 
 export interface SheetContent {
@@ -41,15 +49,16 @@ export interface SheetContent {
   readonly convention: string;
   readonly constants: readonly string[];
   readonly margins: readonly SheetMargins[];
-  readonly scores: readonly SheetScore[];
-  /** What wind was proven, in words, and on how many seeds; null when nothing was. */
-  readonly windProven: string | null;
+  readonly trials: readonly SheetTrial[];
+  /** Trials beyond what a page holds, in a sentence; empty when there are none. */
+  readonly moreTrials: string;
+  /** Null when no wind was flown for the sheet. */
+  readonly wind: SheetWind | null;
   readonly notTested: readonly string[];
   /** SVG texts. */
   readonly plots: readonly string[];
-  readonly seed: number;
   readonly version: string;
-  /** "2026-12-01 10:00", given by the caller so that the same input gives the same bytes. */
+  /** "2026-12-01", given by the caller so that the same input gives the same bytes. */
   readonly printedAt: string;
 }
 
@@ -81,6 +90,7 @@ export function sheetHtml(sheet: SheetContent): string {
 </head>
 <body>
 <main>
+<section class="page">
 ${head(sheet)}
 ${warning()}
 <div class="columns">
@@ -89,10 +99,14 @@ ${warning()}
 </div>
 <section><h2>Margins</h2>${margins(sheet.margins)}</section>
 ${sheet.plots.length === 0 ? '' : `<section class="plots">${sheet.plots.join('')}</section>`}
-<section><h2>Trials</h2>${scores(sheet.scores)}<p><b>Wind proven:</b> ${escapeHtml(sheet.windProven ?? 'none')}</p></section>
-<section><h2>Not tested</h2>${list(sheet.notTested.length === 0 ? ['Everything that is not in the table above.'] : sheet.notTested)}</section>
+</section>
+<section class="page">
+<section><h2>Trials</h2>${trials(sheet)}</section>
+<section><h2>Wind limit proven in simulation</h2>${wind(sheet.wind)}</section>
+<section><h2>Not tested</h2>${list(sheet.notTested)}</section>
 <section><h2>First flight</h2><ol class="steps">${FIRST_FLIGHT_STEPS.map((step) => `<li><span class="box"></span>${escapeHtml(step)}</li>`).join('')}</ol></section>
 ${signatures()}
+</section>
 </main>
 </body>
 </html>
@@ -100,7 +114,7 @@ ${signatures()}
 }
 
 function head(sheet: SheetContent): string {
-  return `<header><h1>${escapeHtml(sheet.build.name)}</h1><p>Pre-flight sheet, ${escapeHtml(sheet.printedAt)}. Gains: ${escapeHtml(sheet.gains.name ?? 'unnamed')}. Seed ${sheet.seed}, Gustbench ${escapeHtml(sheet.version)}.</p></header>`;
+  return `<header><h1>${escapeHtml(sheet.build.name)}</h1><p>Pre-flight sheet, ${escapeHtml(sheet.printedAt)}. Gains: ${escapeHtml(sheet.gains.name ?? 'unnamed')}. Gustbench ${escapeHtml(sheet.version)}.</p></header>`;
 }
 
 function warning(): string {
@@ -113,13 +127,17 @@ function cornerPlan(build: Build): string {
     ...build.rotors.map((rotor) => Math.max(Math.abs(rotor.position_m[0]), Math.abs(rotor.position_m[1]))),
   );
   const scale = 52 / reach;
-  const at = (x: number, y: number) => [95 + y * scale, 85 - x * scale];
+  const at = (x: number, y: number) => [95 + y * scale, 84 - x * scale];
   const radius = Math.min(26, (build.propeller.diameter_m / 2) * scale);
+  const arms = build.rotors.map((rotor) => {
+    const [cx, cy] = at(rotor.position_m[0], rotor.position_m[1]);
+    return `<line x1="95" y1="84" x2="${cx}" y2="${cy}" class="s"/>`;
+  });
   const rotors = build.rotors.map((rotor) => {
     const [cx, cy] = at(rotor.position_m[0], rotor.position_m[1]);
-    return `<line x1="95" y1="85" x2="${cx}" y2="${cy}" class="s"/><circle cx="${cx}" cy="${cy}" r="${radius.toFixed(1)}" class="f"/><text x="${cx}" y="${cy - 1}" class="t" text-anchor="middle">${rotor.corner}</text><text x="${cx}" y="${cy + 10}" class="n" text-anchor="middle">${rotor.spin === 'cw' ? 'turns right' : 'turns left'}</text>`;
+    return `<circle cx="${cx}" cy="${cy}" r="${radius.toFixed(1)}" class="p"/><text x="${cx}" y="${cy - 1}" class="t" text-anchor="middle">${rotor.corner}</text><text x="${cx}" y="${cy + 10}" class="n" text-anchor="middle">${rotor.spin === 'cw' ? 'turns right' : 'turns left'}</text>`;
   });
-  return `<svg viewBox="0 0 190 170" class="plan" role="img" aria-label="corners and turning sense, seen from above">${rotors.join('')}<path d="M95 68 l-6 12 h12 z"/><text x="95" y="12" class="n" text-anchor="middle">nose, seen from above</text></svg>`;
+  return `<svg viewBox="0 0 190 182" class="plan" role="img" aria-label="corners and turning sense, seen from above">${arms.join('')}${rotors.join('')}<path d="M95 66 l-6 12 h12 z"/><text x="95" y="178" class="n" text-anchor="middle">seen from above, the triangle is the nose</text></svg>`;
 }
 
 function quantities(rows: readonly SheetQuantity[]): string {
@@ -180,18 +198,24 @@ function margins(rows: readonly SheetMargins[]): string {
 }
 
 /** One row a trial; what is outside its band is marked where it stands. */
-function scores(rows: readonly SheetScore[]): string {
+function trials({ trials: rows, moreTrials }: SheetContent): string {
   if (rows.length === 0) return '<p>No trial was run.</p>';
-  const trials = [...new Set(rows.map((row) => row.trial))];
-  return table(
-    ['trial', 'scores (band)', ''],
-    trials.map((trial) => {
-      const own = rows.filter((row) => row.trial === trial);
-      const text = own
-        .map((row) => `${row.score} ${row.value} (${row.band})${row.pass ? '' : ' OUTSIDE'}`)
-        .join(';  ');
-      return [trial, text, own.every((row) => row.pass) ? 'within' : 'OUTSIDE'];
-    }),
+  const shown = rows.map((row) => [row.trial, row.scores, String(row.seed), row.pass ? 'within' : 'OUTSIDE']);
+  const more = moreTrials === '' ? '' : `<p>${escapeHtml(moreTrials)}</p>`;
+  return table(['trial', 'scores (band)', 'seed', ''], shown, 'trials') + more;
+}
+
+function wind(proven: SheetWind | null): string {
+  if (proven === null) return '<p><b>None.</b> No wind was flown for this sheet.</p>';
+  const sentences = proven.sentences.map((one) => `<p>${escapeHtml(one)}</p>`).join('');
+  if (proven.sides.length === 0) return sentences;
+  return (
+    sentences +
+    table(
+      ['gust from, held of seeds', ...proven.steps],
+      proven.sides.map(({ side, held }) => [side, ...held]),
+      'wind',
+    )
   );
 }
 
@@ -205,10 +229,10 @@ function signatures(): string {
   return `<section class="sign">${places.map((place) => `<p><span></span>${place}</p>`).join('')}</section>`;
 }
 
-function table(heads: readonly string[], rows: readonly (readonly string[])[]): string {
+function table(heads: readonly string[], rows: readonly (readonly string[])[], kind = ''): string {
   const cells = (tag: string, row: readonly string[]) =>
     row.map((cell) => `<${tag}>${escapeHtml(cell)}</${tag}>`).join('');
-  return `<table><thead><tr>${cells('th', heads)}</tr></thead><tbody>${rows.map((row) => `<tr>${cells('td', row)}</tr>`).join('')}</tbody></table>`;
+  return `<table class="${kind}"><thead><tr>${cells('th', heads)}</tr></thead><tbody>${rows.map((row) => `<tr>${cells('td', row)}</tr>`).join('')}</tbody></table>`;
 }
 
 function list(items: readonly string[]): string {
@@ -219,20 +243,24 @@ function number(value: number): string {
   return Number.isFinite(value) ? String(Number(value.toPrecision(4))) : '—';
 }
 
+/** No paper size: the printer's own. Both A4 and US Letter hold 186 × 251 mm within these edges. */
 const STYLE = `
-@page { size: A4; margin: 12mm }
+@page { margin: 12mm }
 * { box-sizing: border-box }
-body { margin: 0; background: #fff; color: #000; font: 10px/1.35 system-ui, sans-serif; font-variant-numeric: tabular-nums }
-main { max-width: 186mm; margin: 0 auto; padding: 4mm 0 }
-h1 { font-size: 18px; margin: 0 } h2 { font-size: 12px; margin: 8px 0 3px; border-bottom: 1px solid #000 } h3 { font-size: 10px; margin: 6px 0 2px }
-header p { margin: 1px 0 4px }
-.warning { border: 2px solid #000; padding: 4px 6px; font-weight: 600; margin: 4px 0 }
-.columns { display: grid; grid-template-columns: 1fr 1.25fr; gap: 8mm }
-table { border-collapse: collapse; width: 100% } th, td { text-align: left; padding: 1px 5px 1px 0; border-bottom: 1px solid #bbb; vertical-align: top } th { font-weight: 600 }
-ul, ol { margin: 3px 0; padding-left: 14px } pre { font: 9px/1.3 ui-monospace, monospace; border: 1px solid #bbb; padding: 3px 5px; margin: 2px 0; white-space: pre-wrap }
+body { margin: 0; background: #fff; color: #000; font: 10px/1.3 system-ui, sans-serif; font-variant-numeric: tabular-nums; overflow-wrap: anywhere }
+main { max-width: 186mm; margin: 0 auto }
+.page + .page { break-before: page }
+h1 { font-size: 18px; line-height: 1.15; margin: 0 } h2 { font-size: 12px; margin: 6px 0 2px; border-bottom: 1px solid #000 } h3 { font-size: 10px; margin: 5px 0 2px }
+p { margin: 2px 0 } header p { margin: 1px 0 3px }
+.warning { border: 2px solid #000; padding: 3px 6px; font-weight: 600; margin: 3px 0 }
+.columns { display: grid; grid-template-columns: 1fr 1.4fr; gap: 6mm }
+table { border-collapse: collapse; width: 100% } th, td { text-align: left; padding: 1px 5px 1px 0; border-bottom: 1px solid #999; vertical-align: top } th { font-weight: 600 } tr { break-inside: avoid }
+.trials { font-size: 9px; line-height: 1.22 } .trials td:first-child { width: 30% } .trials th:nth-child(n + 3), .trials td:nth-child(n + 3) { white-space: nowrap; width: 1% } .wind { margin-top: 3px; font-size: 9px }
+ul, ol { margin: 2px 0; padding-left: 14px } pre { font: 8.5px/1.3 ui-monospace, monospace; border: 1px solid #999; padding: 3px 5px; margin: 2px 0; white-space: pre-wrap }
 .steps { list-style: none; padding: 0 } .steps li { display: flex; gap: 6px; margin: 2px 0; break-inside: avoid } .box { flex: none; width: 9px; height: 9px; border: 1px solid #000; margin-top: 2px }
-.plots { display: grid; grid-template-columns: repeat(3, 1fr); gap: 4mm; margin-top: 6px } .plots svg { width: 100% } .plan { width: 150px; display: block; margin: 2px auto }
-svg .f { fill: none; stroke: #000; stroke-width: .8 } svg .g { stroke: #ddd; stroke-width: .5 } svg .l { stroke: #000; stroke-width: .6; stroke-dasharray: 2 2 } svg .s { fill: none; stroke: #000; stroke-width: 1.2 } svg .t { font: 600 10px system-ui, sans-serif } svg .n { font: 8px system-ui, sans-serif }
-section { break-inside: avoid } .sign { display: grid; grid-template-columns: 1fr 1fr; gap: 6mm 10mm; margin-top: 8mm } .sign span { display: block; border-bottom: 1px solid #000; height: 8mm } .sign p { margin: 0 }
-@media screen { body { background: #eee } main { background: #fff; padding: 12mm; margin: 8px auto; max-width: 210mm } }
+.plots { display: grid; grid-template-columns: repeat(2, 1fr); gap: 2mm 5mm; margin-top: 4px } .plots svg { width: 100%; display: block } .plan { width: 132px; display: block; margin: 0 auto }
+svg .p { fill: #fff; stroke: #000; stroke-width: .8 } svg .f { fill: none; stroke: #000; stroke-width: .8 } svg .g { stroke: #bbb; stroke-width: .5 } svg .l { stroke: #000; stroke-width: .6; stroke-dasharray: 2 2 } svg .s { fill: none; stroke: #000; stroke-width: 1.2 } svg .t { font: 600 10px system-ui, sans-serif } svg .n { font: 8.5px system-ui, sans-serif }
+.sign { display: grid; grid-template-columns: 1fr 1fr; gap: 2mm 10mm; margin-top: 3mm; break-inside: avoid } .sign span { display: block; border-bottom: 1px solid #000; height: 8mm } .sign p { margin: 0 }
+@media screen { body { background: #eee } main { max-width: 210mm } .page { background: #fff; padding: 12mm; margin: 8px auto } }
+@media screen and (max-width: 640px) { .page { padding: 4mm } .columns, .plots { grid-template-columns: minmax(0, 1fr) } table { display: block; overflow-x: auto } }
 `;

@@ -21,7 +21,7 @@ export interface PlotFrame {
 export const AXIS_DASH = { roll: '', pitch: '6 3', yaw: '1.5 2.5' } as const;
 
 const WIDTH = 340;
-const HEIGHT = 190;
+const HEIGHT = 160;
 const LEFT = 46;
 const RIGHT = 10;
 const TOP = 22;
@@ -68,7 +68,7 @@ export function linePlot(frame: PlotFrame, lines: readonly PlotLine[]): string {
       `<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(level.y))}" y2="${f(toY(level.y))}" class="l"/>`,
     );
     parts.push(
-      `<text x="${WIDTH - RIGHT - 2}" y="${f(toY(level.y) - 2)}" class="n" text-anchor="end">${escapeHtml(level.label)}</text>`,
+      `<text x="${WIDTH - RIGHT - 2}" y="${f(levelLabelY(toY(level.y)))}" class="n" text-anchor="end">${escapeHtml(level.label)}</text>`,
     );
   }
   points.forEach((line, index) => {
@@ -88,6 +88,11 @@ export function linePlot(frame: PlotFrame, lines: readonly PlotLine[]): string {
   );
   parts.push('</svg>');
   return parts.join('');
+}
+
+/** Over its line, or under it where the frame's edge is too near. */
+function levelLabelY(lineY: number): number {
+  return lineY - TOP < 11 ? lineY + 9 : lineY - 2;
 }
 
 export function escapeHtml(text: string): string {

@@ -1,13 +1,28 @@
 /** `carry`: the pre-flight sheet, the constants in the firmware's convention, build and gains as files. */
 import { mkdirSync } from 'node:fs';
+import { availableParallelism } from 'node:os';
 import path from 'node:path';
 import type { Command } from 'commander';
-import { assembleSheet, SHEET_TRIALS } from '../carrying/assemble.ts';
+import { assembleSheet, QUANTITY_NAMES, SHEET_TRIALS } from '../carrying/assemble.ts';
 import { sheetHtml } from '../carrying/sheet.ts';
-import { refuse } from '../craft/problem.ts';
-import { CONVENTIONS, exportConstants, EXPORTS, parseConvention } from '../shaping/conventions.ts';
-import { runTrial } from '../trials/runTrial.ts';
+import { windFlights, windProof, windTask, type WindProof } from '../carrying/windLimit.ts';
+import { windSentences } from '../carrying/windWords.ts';
+import type { Build } from '../craft/build.ts';
+import type { Gains } from '../craft/gains.ts';
+import { InputError, refuse } from '../craft/problem.ts';
+import {
+  CONVENTIONS,
+  exportConstants,
+  EXPORTS,
+  parseConvention,
+  type Convention,
+} from '../shaping/conventions.ts';
+import { inPlaceWorker, runTasks } from '../trials/pool.ts';
+import type { TaskAnswer } from '../trials/protocol.ts';
+import type { TrialTask } from '../trials/runTrial.ts';
+import type { TrialResult } from '../trials/trial.ts';
 import { DONE, numberOption, printJson, readBuild, readGains, readJson, runVerb, writeText } from './io.ts';
+import { threadWorker } from './trialPool.ts';
 
 interface CarryOptions {
   build: string;
@@ -16,7 +31,9 @@ interface CarryOptions {
   out: string;
   seed: string;
   date?: string;
+  known?: string;
   trials: boolean;
+  windLimit: boolean;
   json?: boolean;
 }
 
@@ -40,12 +57,14 @@ export function addCarryCommand(program: Command): void {
     )
     .option('--seed <number>', 'seed of the trials', '1')
     .option('--date <text>', 'date printed on the sheet; today when absent')
-    .option('--no-trials', 'leave the trials out')
+    .option('--known <file>', 'how well quantities are known: a JSON object of quantity and text, "± 3 %"')
+    .option('--no-trials', 'leave the trials out, and with them the wind limit')
+    .option('--no-wind-limit', 'leave the flights in rising wind out')
     .option('--json', 'print one JSON object')
     .action((options: CarryOptions) => runVerb(() => carry(options)));
 }
 
-function carry(options: CarryOptions): number {
+async function carry(options: CarryOptions): Promise<number> {
   const build = readBuild(options.build);
   const gains = readGains(options.gains);
   const seed = numberOption('seed', options.seed, 0, Number.MAX_SAFE_INTEGER, '', true);
@@ -53,9 +72,69 @@ function carry(options: CarryOptions): number {
     options.convention === undefined
       ? CONVENTIONS[0]
       : parseConvention(readJson(options.convention), options.convention);
-  const results = options.trials ? SHEET_TRIALS.map((trial) => runTrial({ trial, build, gains, seed })) : [];
+  const known = options.known === undefined ? {} : readKnown(options.known);
+  const trials = options.trials
+    ? SHEET_TRIALS.map((trial): TrialTask => ({ trial, build, gains, wind: null, seed }))
+    : [];
+  const flights = options.trials && options.windLimit ? windFlights(seed) : [];
+  const flown = await flyAll([...trials, ...flights.map((flight) => windTask(flight, build, gains))]);
+  const results = flown.slice(0, trials.length).filter((one) => one !== null);
+  const wind = flights.length === 0 ? null : windProof(flights, flown.slice(trials.length));
   const printedAt = options.date ?? new Date().toISOString().slice(0, 10);
-  const sheet = sheetHtml(assembleSheet({ build, gains, convention, results, seed, printedAt }));
+  const sheet = sheetHtml(assembleSheet({ build, gains, convention, results, wind, printedAt, known }));
+  const files = writeFiles(options, { build, gains, convention, sheet });
+  tell(options, convention, files, results, wind);
+  return DONE;
+}
+
+function readKnown(file: string): Record<string, string> {
+  const raw = readJson(file);
+  if (typeof raw !== 'object' || raw === null || Array.isArray(raw))
+    throw refuse(file, '', JSON.stringify(raw)?.slice(0, 40), 'an object of quantity and text');
+  const known: Record<string, string> = {};
+  for (const [name, text] of Object.entries(raw)) {
+    if (!QUANTITY_NAMES.includes(name)) throw refuse(file, name, name, `one of ${QUANTITY_NAMES.join(', ')}`);
+    if (typeof text !== 'string' || text.length > LONGEST_KNOWN)
+      throw refuse(file, name, JSON.stringify(text), `a text of at most ${LONGEST_KNOWN} characters`);
+    known[name] = text;
+  }
+  return known;
+}
+const LONGEST_KNOWN = 60;
+
+/** Results in the order of the tasks. @throws InputError when the craft cannot fly them. */
+async function flyAll(tasks: readonly TrialTask[]): Promise<(TrialResult | null)[]> {
+  const workers = Math.min(availableParallelism(), Math.ceil(tasks.length / FLIGHTS_A_WORKER));
+  const entry = new URL(import.meta.url);
+  const answers = new Array<TaskAnswer | null>(tasks.length).fill(null);
+  await runTasks(workers > 1 ? () => threadWorker(entry) : inPlaceWorker, workers, {
+    count: tasks.length,
+    taskAt: (index) => tasks[index],
+    hear: (index, answer) => {
+      answers[index] = answer;
+    },
+    progress: ({ done, count, left_s }) => {
+      if (done % FLIGHTS_A_LINE === 0 && left_s !== null)
+        process.stderr.write(`${done} of ${count} flights, about ${Math.ceil(left_s)} s left\n`);
+    },
+  }).done;
+  return answers.map((answer) => {
+    if (answer?.kind === 'refused') throw new InputError(answer.file, answer.problems);
+    return answer?.kind === 'done' ? answer.result : null;
+  });
+}
+/** Fewer are not worth the start of a thread. */
+const FLIGHTS_A_WORKER = 8;
+const FLIGHTS_A_LINE = 25;
+
+interface Carried {
+  readonly build: Build;
+  readonly gains: Gains;
+  readonly convention: Convention;
+  readonly sheet: string;
+}
+
+function writeFiles(options: CarryOptions, { build, gains, convention, sheet }: Carried): string[] {
   makeFolder(options.out);
   const files: string[] = [];
   const write = (name: string, text: string): void => {
@@ -73,15 +152,25 @@ function carry(options: CarryOptions): number {
   }
   write('build.json', `${JSON.stringify(build, null, 2)}\n`);
   write('gains.json', `${JSON.stringify(gains, null, 2)}\n`);
+  return files;
+}
+
+function tell(
+  options: CarryOptions,
+  convention: Convention,
+  files: readonly string[],
+  results: readonly TrialResult[],
+  wind: WindProof | null,
+): void {
   const outside = results.filter((result) => !result.pass).map((result) => result.trial);
-  if (options.json === true)
-    printJson({ files, convention: convention.name, trialsRun: results.length, outside });
-  else {
-    process.stdout.write(`${files.join('\n')}\n`);
-    if (outside.length > 0) process.stdout.write(`OUTSIDE its band: ${outside.join(', ')}\n`);
-    process.stdout.write('A simulated pass is no clearance to fly.\n');
+  if (options.json === true) {
+    printJson({ files, convention: convention.name, trialsRun: results.length, outside, wind });
+    return;
   }
-  return DONE;
+  process.stdout.write(`${files.join('\n')}\n`);
+  if (outside.length > 0) process.stdout.write(`OUTSIDE its band: ${outside.join(', ')}\n`);
+  if (wind !== null) process.stdout.write(`${windSentences(wind).join('\n')}\n`);
+  process.stdout.write('A simulated pass is no clearance to fly.\n');
 }
 
 function makeFolder(folder: string): void {

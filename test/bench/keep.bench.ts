@@ -6,7 +6,7 @@ import { spawn, type ChildProcess } from 'node:child_process';
 import { mkdtempSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import path from 'node:path';
-import { chromium, type BrowserContext, type Page } from 'playwright-core';
+import { chromium, type BrowserContext } from 'playwright-core';
 import { build, preview } from 'vite';
 import { findChromium } from '../../src/cli/setup.mjs';
 import { RandomStream } from '../../src/math/random.ts';
@@ -21,8 +21,8 @@ interface Running {
 }
 
 /** A browser of its own on `profile`, which outlives it. */
-async function startBrowser(executable: string, profile: string): Promise<Running> {
-  const child = spawn(
+function launch(executable: string, profile: string): ChildProcess {
+  return spawn(
     executable,
     [
       '--headless=new',
@@ -31,8 +31,12 @@ async function startBrowser(executable: string, profile: string): Promise<Runnin
       '--remote-debugging-port=0',
       `--user-data-dir=${profile}`,
     ],
-    { stdio: ['ignore', 'ignore', 'pipe'] },
+    // A process group of its own, so that a kill takes the browser's helpers too.
+    { stdio: ['ignore', 'ignore', 'pipe'], detached: true },
   );
+}
+
+async function connected(child: ChildProcess): Promise<Running> {
   const address = await new Promise<string>((resolve, reject) => {
     let said = '';
     child.stderr?.on('data', (piece: Buffer) => {
@@ -42,33 +46,57 @@ async function startBrowser(executable: string, profile: string): Promise<Runnin
     });
     child.once('exit', () => reject(new Error(`the browser ended: ${said}`)));
   });
-  const browser = await chromium.connectOverCDP(address, { timeout: 120_000 });
+  const browser = await chromium.connectOverCDP(address, { timeout: 30_000 });
   const [context] = browser.contexts();
-  context.setDefaultTimeout(120_000);
+  context.setDefaultTimeout(60_000);
   return { process: child, context };
 }
 
-async function killBrowser({ process }: Running): Promise<void> {
-  const gone = new Promise((resolve) => process.once('exit', resolve));
-  process.kill('SIGKILL');
+/** At once and whole: the browser and every process it started. */
+async function killBrowser(child: ChildProcess): Promise<void> {
+  if (child.exitCode !== null || child.signalCode !== null) return;
+  const gone = new Promise((resolve) => child.once('exit', resolve));
+  if (child.pid !== undefined) process.kill(-child.pid, 'SIGKILL');
   await gone;
+}
+
+const MOST_STARTS = 3;
+
+/** A browser that does not come up on a busy machine is killed and started again. */
+async function startSurely(executable: string, profile: string): Promise<Running> {
+  for (let attempt = 1; ; attempt++) {
+    const child = launch(executable, profile);
+    try {
+      return await connected(child);
+    } catch (error) {
+      await killBrowser(child);
+      if (attempt === MOST_STARTS) throw error;
+      console.log('the browser did not come up; started again');
+    }
+  }
 }
 
 async function run(executable: string, url: string, profile: string): Promise<void> {
   const rounds = new KillRounds(url, new RandomStream(20, 'kills'), 'Sandpiper');
-  let running = await startBrowser(executable, profile);
+  let running = await startSurely(executable, profile);
   let browsersKilled = 0;
   const begun = performance.now();
   for (let n = 1; n <= ROUNDS; n++) {
-    if (n % WHOLE_BROWSER_EVERY !== 0) await rounds.round(running.context, killPage);
-    else {
-      await rounds.round(running.context, async (_page: Page) => killBrowser(running));
+    const whole = n % WHOLE_BROWSER_EVERY === 0;
+    try {
+      await rounds.round(running.context, whole ? () => killBrowser(running.process) : killPage);
+    } catch (error) {
+      // A browser that answers no more on a busy machine: another kill, and the next page must find the work.
+      console.log(`round ${n} broke off: ${String(error).split('\n')[0]}`);
+      await killBrowser(running.process);
+    }
+    if (running.process.exitCode !== null || running.process.signalCode !== null) {
       browsersKilled++;
-      running = await startBrowser(executable, profile);
+      running = await startSurely(executable, profile);
     }
     if (n % 50 === 0) console.log(`${n} rounds, ${Math.round((performance.now() - begun) / 1000)} s`);
   }
-  await killBrowser(running);
+  await killBrowser(running.process);
   const { edits, acknowledged, losses } = rounds.tally;
   console.log(
     `${ROUNDS} rounds (${browsersKilled} with the whole browser), ${edits} edits, ${acknowledged} acknowledged before a kill, ${losses.length} lost; ${Math.round((performance.now() - begun) / 1000)} s`,
