@@ -165,6 +165,48 @@ describeInBrowser('The frame', (site) => {
     await opened.close();
   });
 
+  test('the guide leads from the demo to an own craft, stays where it was left, goes and comes back', async () => {
+    const opened = await site.open({ width: 1024, height: 768 });
+    const { page } = opened;
+    const guide = page.getByRole('complementary', { name: 'Guide' });
+    const next = () => guide.getByRole('button', { name: 'Next step' }).click();
+    await guide.getByText('Guide 1 of 9').waitFor();
+    expect(await page.title()).toContain('Fly');
+    await next();
+    await next();
+    await page.waitForFunction(() => document.title.startsWith('Shape'));
+    await opened.shot('guide-shape');
+    // Elsewhere it says where it goes on.
+    await page.keyboard.press('Alt+Digit6');
+    await guide.getByRole('button', { name: 'Go to Shape' }).click();
+    await next();
+    await next();
+    await page.waitForFunction(() => document.title.startsWith('Measure'));
+    const demo = await page.locator('#top-craft option').allInnerTexts();
+    await guide.getByRole('button', { name: 'Start my craft' }).click();
+    await guide.getByText('Guide 6 of 9').waitFor();
+    expect(await page.locator('#top-craft option:checked').innerText()).toBe('My craft');
+    expect(await page.locator('#top-craft option').allInnerTexts()).toEqual([...demo, 'My craft']);
+    await savedNow(opened);
+    await page.reload();
+    await guide.getByText('Guide 6 of 9').waitFor();
+    for (const place of ['Shape', 'Fly', 'Carry']) {
+      await next();
+      await page.waitForFunction((wanted) => document.title.startsWith(wanted), place);
+    }
+    await guide.getByRole('button', { name: 'Guide done' }).click();
+    expect(await guide.count()).toBe(0);
+    await savedNow(opened);
+    await page.reload();
+    await page.waitForSelector('.carry-sheet');
+    expect(await guide.count()).toBe(0);
+    await page.keyboard.press('Alt+KeyH');
+    await page.getByRole('heading', { name: 'Here: Carry' }).waitFor();
+    await page.getByRole('button', { name: 'Start the guide' }).click();
+    await guide.getByText('Guide 1 of 9').waitFor();
+    await opened.close();
+  });
+
   test('an error that nothing caught becomes a message and the page goes on', async () => {
     const opened = await site.open({ at: '#/carry', expectedErrors: /made up for this test/ });
     const { page } = opened;

@@ -2,8 +2,9 @@ import { useEffect, useState } from 'preact/hooks';
 import { PLACE_LIST } from '../places/registry.ts';
 import { useStore } from '../store/context.ts';
 import { NoticeStack } from '../widgets/NoticeStack.tsx';
-import { HelpDialog } from './HelpDialog.tsx';
+import { guideMemory } from './guideMemory.ts';
 import { handleKey } from './keys.ts';
+import { Later } from './Later.tsx';
 import { PlaceFrame } from './PlaceFrame.tsx';
 import { Rail } from './Rail.tsx';
 import { hashOf, placeInHash } from './route.ts';
@@ -68,13 +69,25 @@ export function App() {
       </a>
       <Rail />
       <TopLine open={setDialog} />
+      {guideMemory(store.settings.value).hidden ? null : (
+        <Later load={() => import('./GuideLine.tsx')} with={{}} />
+      )}
       <main class="place" id="place" tabIndex={-1} aria-label={store.texts.places[here]}>
         <PlaceFrame key={here} place={place} />
       </main>
       <NoticeStack />
       {fileOver ? <div class="aim-drop">{store.texts.drop.over}</div> : null}
       {dialog === 'work' ? <WorkDialog onClose={close} /> : null}
-      {dialog === 'help' ? <HelpDialog onClose={close} /> : null}
+      {dialog === 'help' ? (
+        <Later
+          load={() => import('./HelpDialog.tsx')}
+          with={{ onClose: close }}
+          onFailure={() => {
+            close();
+            store.notices.tell('error', store.texts.states.failedLoad(store.texts.help.title));
+          }}
+        />
+      ) : null}
       {dialog === 'settings' ? <SettingsDialog onClose={close} /> : null}
     </div>
   );

@@ -6,6 +6,7 @@ import type { AsideRecord, WorkStorage } from '../storage/workStorage.ts';
 import { useStorage, useStore } from '../store/context.ts';
 import { differences } from '../store/differences.ts';
 import type { CraftWork, GainsVersion } from '../store/document.ts';
+import type { Store } from '../store/store.ts';
 import { withUnit } from '../store/units.ts';
 import { Button } from '../widgets/Button.tsx';
 import { DataTable } from '../widgets/DataTable.tsx';
@@ -71,6 +72,13 @@ function Crafts() {
                 )}
                 <Button
                   quiet
+                  name={`${words.copy}: ${craft.build.name}`}
+                  onClick={() => copyCraft(store, craft)}
+                >
+                  {words.copy}
+                </Button>
+                <Button
+                  quiet
                   name={`${words.remove}: ${craft.build.name}`}
                   disabled={store.crafts.value.length < 2}
                   onClick={() => store.removeCraft(craft.id, store.texts.edits.removeCraft(craft.build.name))}
@@ -84,6 +92,12 @@ function Crafts() {
       />
     </section>
   );
+}
+
+/** Both gain sets with their history go along; worksheets and results stay with the craft they are of. */
+function copyCraft(store: Store, craft: CraftWork): void {
+  const copy = { ...craft, id: crypto.randomUUID(), sheets: {} };
+  store.addCrafts([copy], store.texts.edits.copyCraft(craft.build.name));
 }
 
 /** The name of the craft on the bench can be changed in place. */
