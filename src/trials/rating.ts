@@ -90,6 +90,16 @@ export function stickActivity(stick: ArrayLike<number>, dt_s: number): StickActi
   };
 }
 
+/** Roll and pitch stick of one hand together: rms of both, reversals of both. @param dt_s between samples */
+export function handActivity(roll: ArrayLike<number>, pitch: ArrayLike<number>, dt_s: number): StickActivity {
+  const [a, b] = [stickActivity(roll, dt_s), stickActivity(pitch, dt_s)];
+  return {
+    rmsDeflection: Math.hypot(a.rmsDeflection, b.rmsDeflection),
+    rmsSpeed_per_s: Math.hypot(a.rmsSpeed_per_s, b.rmsSpeed_per_s),
+    reversals_per_s: a.reversals_per_s + b.reversals_per_s,
+  };
+}
+
 function reversals(stick: ArrayLike<number>): number {
   let turns = 0;
   let direction = 0;

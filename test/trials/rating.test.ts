@@ -5,6 +5,7 @@ import { flyTrial } from '../../src/trials/runTrial.ts';
 import { trialByName } from '../../src/trials/registry.ts';
 import {
   blindOrder,
+  handActivity,
   handScores,
   RATING_QUESTIONS,
   RATING_WORDS,
@@ -72,4 +73,22 @@ it('a flight by hand gets scores that trials share', () => {
   const scores = handScores(record);
   expect(scores.map((score) => score.name)).toContain('peak tilt');
   for (const score of scores) expect(Number.isFinite(score.value)).toBe(true);
+});
+
+describe('a hand', () => {
+  it('is as busy as its two sticks together: equal sines give √2 times one, and twice the reversals', () => {
+    const sine = Array.from({ length: 2001 }, (_, k) => 0.5 * Math.sin((2 * Math.PI * k) / 100));
+    const one = stickActivity(sine, 0.01);
+    const both = handActivity(sine, sine, 0.01);
+    expect(both.rmsDeflection).toBeCloseTo(Math.SQRT2 * one.rmsDeflection, 12);
+    expect(both.rmsSpeed_per_s).toBeCloseTo(Math.SQRT2 * one.rmsSpeed_per_s, 12);
+    expect(both.reversals_per_s).toBe(2 * one.reversals_per_s);
+    expect(
+      handActivity(
+        sine,
+        sine.map(() => 0),
+        0.01,
+      ),
+    ).toEqual(one);
+  });
 });

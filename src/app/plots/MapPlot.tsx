@@ -54,6 +54,10 @@ export interface MapPlotProps {
   /** Where the gains in use stand, and the other set's. */
   readonly point?: MapPoint;
   readonly pointB?: MapPoint;
+  /** What the first point is called; default "A". */
+  readonly pointName?: string;
+  /** A click on the first point picks it too. */
+  readonly picksPoint?: boolean;
   /** Dragging the point or moving it with the arrow keys. */
   readonly onMove?: (point: MapPoint) => void;
   /** A click elsewhere, or Enter. */
@@ -72,6 +76,8 @@ export function MapPlot(props: MapPlotProps) {
   const [hover, setHover] = useState<MapPoint | null>(null);
   const area = useRef<PlotArea | null>(null);
   const dragging = useRef(false);
+  /** A point that was pressed and let go where it was is picked. */
+  const moved = useRef(false);
 
   const canvas = useCanvas(
     (pen, width, height) => {
@@ -151,6 +157,7 @@ export function MapPlot(props: MapPlotProps) {
           if (event.button !== 0) return;
           if (nearPoint(event)) {
             dragging.current = true;
+            moved.current = false;
             event.currentTarget.setPointerCapture(event.pointerId);
           } else {
             const picked = at(event);
@@ -160,9 +167,13 @@ export function MapPlot(props: MapPlotProps) {
         onPointerMove={(event) => {
           const place = at(event);
           setHover(place);
-          if (dragging.current && place !== null) props.onMove?.(place);
+          if (!dragging.current || place === null) return;
+          moved.current = true;
+          props.onMove?.(place);
         }}
         onPointerUp={() => {
+          const still = dragging.current && !moved.current;
+          if (still && props.picksPoint === true && props.point !== undefined) props.onPick?.(props.point);
           dragging.current = false;
         }}
         onPointerCancel={() => {
@@ -230,7 +241,7 @@ function drawMap(
     haloText(pen, label, xToPx(area, props.x, x), yToPx(area, props.y, y), palette, palette.ink);
   }
   if (props.pointB !== undefined) drawPoint(pen, area, props, props.pointB, 'B', palette);
-  if (props.point !== undefined) drawPoint(pen, area, props, props.point, 'A', palette);
+  if (props.point !== undefined) drawPoint(pen, area, props, props.point, props.pointName ?? 'A', palette);
 }
 
 function drawContour(
@@ -329,7 +340,7 @@ function drawPoint(
   pen.fillStyle = palette.ground;
   pen.beginPath();
   pen.arc(x, y, 6, 0, 2 * Math.PI);
-  if (name === 'A') pen.fill();
+  if (name !== 'B') pen.fill();
   pen.stroke();
   pen.textAlign = 'left';
   pen.textBaseline = 'bottom';

@@ -14,6 +14,7 @@ import { changedCrafts, joined, reversed, type Change, type SlotChange } from '.
 import { demoScenes } from './demos.ts';
 import {
   freeName,
+  newCraft,
   newGainSet,
   sameJson,
   type CraftWork,
@@ -191,6 +192,43 @@ export class Store {
       return { slot: 'craft', id: craft.id, before: null, after };
     });
     this.commit(label, [...added, { slot: 'current', before: this.craft.value.id, after: crafts[0].id }]);
+  }
+
+  /**
+   * Lays what a trial flew on the desk, as one step that undo takes back: another build comes as a craft of its
+   * own called `name`, other gains as B of this craft; without a wind the one on the desk stays.
+   */
+  bringToDesk(
+    flown: {
+      readonly build: Build;
+      readonly gains: Gains;
+      readonly wind: Wind | null;
+      readonly name: string;
+    },
+    label: string,
+  ): readonly Problem[] {
+    return this.attempt({}, () => {
+      const craft = this.craft.value;
+      const gains = parseGains(flown.gains, label);
+      const same = sameJson(flown.build, craft.build);
+      const change: SlotChange[] = same
+        ? [{ slot: 'craft', id: craft.id, before: craft, after: withB(craft, gains) }]
+        : this.newOnDesk(parseBuild(flown.build, label), gains, flown.name);
+      if (flown.wind !== null)
+        change.push({ slot: 'wind', before: this.wind.value, after: parseWind(flown.wind, label) });
+      this.history.seal();
+      this.commit(label, change);
+      this.chooseSide(same ? 'B' : 'A');
+    });
+  }
+
+  private newOnDesk(build: Build, gains: Gains, wanted: string): SlotChange[] {
+    const names = this.crafts.value.map((craft) => craft.build.name);
+    const after = newCraft({ ...build, name: freeName(wanted, names) }, gains);
+    return [
+      { slot: 'craft', id: after.id, before: null, after },
+      { slot: 'current', before: this.craft.value.id, after: after.id },
+    ];
   }
 
   /** Gains from a file: they become the working and the saved ones of the side being edited. */
@@ -373,4 +411,8 @@ function sideOrA(craft: CraftWork, side: Side): GainSet {
 
 function withSet(craft: CraftWork, side: Side, set: GainSet): CraftWork {
   return side === 'A' ? { ...craft, gainsA: set } : { ...craft, gainsB: set };
+}
+
+function withB(craft: CraftWork, gains: Gains): CraftWork {
+  return withSet(craft, 'B', { ...(craft.gainsB ?? newGainSet(gains)), working: gains });
 }

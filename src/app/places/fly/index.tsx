@@ -39,6 +39,10 @@ export default function Fly() {
     const kept = running.get('flight');
     const one = kept instanceof FlightSession ? kept : new FlightSession(store);
     running.set('flight', one);
+    // Asked for by Prove, which has something to be flown again.
+    const seed = running.get('flight.seed');
+    if (typeof seed === 'number') one.change({ seed });
+    running.delete('flight.seed');
     return one;
   }, [store, running]);
   const [view, setView] = useState<FlightView | null>(null);

@@ -1,284 +1,174 @@
-/** Prove: repeatable trials with bands, the map of derivative gain and cutoff, spread over what is not known. */
-import { useEffect, useMemo, useRef, useState } from 'preact/hooks';
-import type { Gains } from '../../../craft/gains.ts';
-import { runPool, type PoolRun, type TaskAnswer } from '../../../trials/pool.ts';
-import { TRIALS } from '../../../trials/registry.ts';
-import { bandText, reportHtml } from '../../../trials/report.ts';
-import type { TrialTask } from '../../../trials/runTrial.ts';
+/** Prove: repeatable trials with bands, maps, spread over what is not known, and the pilot's own rating. */
+import { useMemo } from 'preact/hooks';
+import { VERSION } from '../../../flight/record.ts';
+import { reportHtml, repeatDescription, type ReportContent } from '../../../trials/report.ts';
+import { judgedBy } from '../../../trials/runTrial.ts';
 import type { TrialResult } from '../../../trials/trial.ts';
-import { saveFile } from '../../storage/saveFile.ts';
-import { useStore } from '../../store/context.ts';
+import { fileStem, saveFile, saveJson } from '../../storage/saveFile.ts';
+import { useRunning, useStore } from '../../store/context.ts';
+import { sameJson } from '../../store/document.ts';
 import { Button } from '../../widgets/Button.tsx';
-import { DataTable, type Column } from '../../widgets/DataTable.tsx';
 import { NumberField } from '../../widgets/NumberField.tsx';
-import { webWorker, workerCount } from './browserPool.ts';
-import { DerivativeMap } from './DerivativeMap.tsx';
+import { Tabs } from '../../widgets/Tabs.tsx';
+import { Toggle } from '../../widgets/Toggle.tsx';
+import { keptOf, type Kept, type Results, type RunOf } from './kept.ts';
+import { MapsPanel } from './MapsPanel.tsx';
 import './prove.css';
+import { RatingPanel } from './RatingPanel.tsx';
+import { ProveRuns } from './runs.ts';
+import { DeskContext, useDesk, type ProveDesk } from './shared.ts';
 import { SpreadPanel } from './SpreadPanel.tsx';
 import { proveTexts as words } from './texts.ts';
+import { TrialsPanel } from './TrialsPanel.tsx';
 
-/** What is kept of a run: the results and what they were of. */
-interface Kept {
-  readonly key: string;
-  readonly a: Readonly<Record<string, TrialResult>>;
-  readonly b: Readonly<Record<string, TrialResult>>;
-  readonly notes: string;
-  readonly seed: number;
-}
-const EMPTY: Kept = { key: '', a: {}, b: {}, notes: '', seed: 1 };
-
-function keptOf(raw: unknown): Kept {
-  return typeof raw === 'object' && raw !== null && 'a' in raw && 'b' in raw ? (raw as Kept) : EMPTY;
-}
+type Tab = keyof typeof words.tab;
+const TABS = (Object.keys(words.tab) as Tab[]).map((value) => ({ value, label: words.tab[value] }));
 
 export default function Prove() {
   const store = useStore();
+  const desk = useProveDesk();
+  const memory = store.settings.value.places['prove.tab'];
+  const tab = TABS.find(({ value }) => value === memory)?.value ?? 'trials';
+  return (
+    <DeskContext.Provider value={desk}>
+      <div class="prove">
+        <Bar />
+        <Tabs
+          label={words.tabs}
+          value={tab}
+          tabs={TABS}
+          onChange={(next) => store.setPlaceMemory('prove.tab', next)}
+        >
+          {tab === 'trials' && <TrialsPanel />}
+          {tab === 'maps' && <MapsPanel />}
+          {tab === 'spread' && <SpreadPanel />}
+          {tab === 'hand' && <RatingPanel />}
+        </Tabs>
+        <label class="prove-notes">
+          {words.notes}
+          <textarea
+            rows={2}
+            maxLength={10_000}
+            value={desk.kept.notes}
+            onChange={(event) => desk.keep({ notes: event.currentTarget.value }, words.edit.notes)}
+          />
+        </label>
+      </div>
+    </DeskContext.Provider>
+  );
+}
+
+/** The craft's kept results, judged by the bands that hold now; what a run would be of; the runs under way. */
+function useProveDesk(): ProveDesk {
+  const store = useStore();
+  const running = useRunning();
+  const runs = useMemo(() => {
+    const before = running.get('prove');
+    const one = before instanceof ProveRuns ? before : new ProveRuns(store);
+    running.set('prove', one);
+    return one;
+  }, [store, running]);
+  const raw = store.craft.value.sheets.prove;
+  const kept = useMemo(() => judged(keptOf(raw)), [raw]);
   const build = store.build.value;
   const gainsA = store.gainsA.value;
   const gainsB = store.gainsB.value;
-  const kept = keptOf(store.craft.value.sheets.prove);
-  const key = useMemo(
-    () => JSON.stringify([build, gainsA, gainsB, kept.seed]),
-    [build, gainsA, gainsB, kept.seed],
-  );
-  const stale = kept.key !== '' && kept.key !== key;
-  const [busy, setBusy] = useState(false);
-  const run = useRef<PoolRun | null>(null);
-  useEffect(() => () => run.current?.cancel(), []);
-  const keep = (change: Partial<Kept>) =>
-    store.setSheet('prove', { ...keptOf(store.craft.value.sheets.prove), ...change }, words.runJob);
+  const wind = kept.deskWind ? store.wind.value : null;
+  const now: RunOf = { build, gainsA, gainsB, wind, seed: kept.seed, version: VERSION };
+  const keep = (change: Partial<Kept>, label: string) =>
+    store.setSheet('prove', { ...keptOf(store.craft.value.sheets.prove), ...change }, label);
+  return { runs, kept, now, keep };
+}
 
-  const start = (names: readonly string[]): void => {
-    const sides: ['a' | 'b', Gains][] =
-      gainsB === null
-        ? [['a', gainsA]]
-        : [
-            ['a', gainsA],
-            ['b', gainsB],
-          ];
-    const tasks = names.flatMap((trial) => sides.map(([side, gains]) => ({ trial, side, gains })));
-    const workers = Array.from({ length: Math.min(workerCount(), tasks.length) }, webWorker);
-    const found: Kept = { ...(stale ? EMPTY : kept), seed: kept.seed, notes: kept.notes, key };
-    const sets = { a: { ...found.a }, b: { ...found.b } };
-    let done = 0;
-    const job = store.jobs.start(words.runJob, () => run.current?.cancel());
-    setBusy(true);
-    run.current = runPool(
-      workers,
-      tasks.length,
-      (index): TrialTask => ({
-        trial: tasks[index].trial,
-        build,
-        gains: tasks[index].gains,
-        wind: null,
-        seed: kept.seed,
-      }),
-      (index, answer: TaskAnswer) => {
-        done++;
-        job.progress(done / tasks.length);
-        const { trial, side } = tasks[index];
-        if (answer.kind === 'done') sets[side][trial] = answer.result;
-        else
-          store.notices.tell(
-            'error',
-            `${trial}: ${answer.kind === 'failed' ? answer.reason : (answer.problems[0]?.allowed ?? '')}`,
-            { topic: `prove:${trial}` },
-          );
-        if (done % 6 === 0 || done === tasks.length) keep({ ...found, a: { ...sets.a }, b: { ...sets.b } });
-      },
+function judged(kept: Kept): Kept {
+  const all = (results: Results): Results =>
+    Object.fromEntries(
+      Object.entries(results).map(([name, result]) => [name, judgedBy(result, kept.bands[name] ?? {})]),
     );
-    void run.current.done.then(() => {
-      workers.forEach((worker) => worker.end());
-      job.end();
-      setBusy(false);
-    });
-  };
+  return { ...kept, a: all(kept.a), b: all(kept.b) };
+}
 
+function Bar() {
+  const { kept, now, keep, runs } = useDesk();
+  const store = useStore();
   const results = Object.values(kept.a);
+  const edited = Object.values(kept.bands).reduce((sum, bands) => sum + Object.keys(bands).length, 0);
+  const stale = results.length > 0 && !sameJson(kept.of, now);
+  const content = reportContent(kept, now, runs);
+  const stem = fileStem(now.build.name);
+  const saveReport = (): void => {
+    if (runs.cells.value !== null && content.sweep === null)
+      store.notices.tell('info', words.otherBuild, { topic: 'prove:report' });
+    saveFile(`${stem}-trials.html`, reportHtml(content), 'text/html');
+  };
   return (
-    <div class="prove">
-      <section class="prove-bar">
-        <Button primary disabled={busy} onClick={() => start(TRIALS.map((trial) => trial.name))}>
-          {words.run}
-        </Button>
-        <NumberField
-          label={words.seed}
-          value={kept.seed}
-          min={0}
-          max={999_999}
-          step={1}
-          noSlider
-          onChange={(seed) => keep({ seed: Math.round(seed) })}
-        />
-        <Button
-          disabled={results.length === 0}
-          onClick={() =>
-            saveFile(
-              `${build.name}-trials.html`,
-              reportHtml({
-                build,
-                gains: gainsB ?? gainsA,
-                results: gainsB === null ? results : Object.values(kept.b),
-                ...(gainsB === null ? {} : { baseline: { gains: gainsA, results } }),
-                notes: kept.notes,
-                seed: kept.seed,
-              }),
-              'text/html',
-            )
-          }
-        >
-          {words.report}
-        </Button>
-        <span role="status">
-          {results.length > 0 && words.tally(results.filter((result) => result.pass).length, results.length)}
-          {stale && <em class="warn"> ({words.stale})</em>}
-        </span>
-        <span class="prove-clear">{words.clearance}</span>
-      </section>
-      {gainsB === null && <p class="faint small">{words.noB}</p>}
-      <TrialTable kept={kept} busy={busy} compare={gainsB !== null} onRun={(name) => start([name])} />
-      <label class="prove-notes">
-        {words.notes}
-        <textarea
-          rows={2}
-          value={kept.notes}
-          onChange={(event) => keep({ notes: event.currentTarget.value })}
-        />
-      </label>
-      <DerivativeMap />
-      <SpreadPanel seed={kept.seed} />
-    </div>
+    <section class="prove-bar" aria-label={words.table}>
+      <NumberField
+        label={words.seed}
+        value={kept.seed}
+        min={0}
+        max={999_999}
+        step={1}
+        noSlider
+        onChange={(seed) => keep({ seed: Math.round(seed) }, words.edit.seed)}
+      />
+      <Toggle
+        label={words.deskWind}
+        hint={words.deskWindHint}
+        on={kept.deskWind}
+        onChange={(deskWind) => keep({ deskWind }, words.edit.wind)}
+      />
+      <Button title={words.reportHint} onClick={saveReport}>
+        {words.report}
+      </Button>
+      <Button
+        title={words.descriptionHint}
+        onClick={() => saveJson(`${stem}.run.json`, repeatDescription(content))}
+      >
+        {words.description}
+      </Button>
+      <span role="status">
+        {results.length > 0 && words.tally(results.filter((result) => result.pass).length, results.length)}
+        {edited > 0 && <em> {words.bandsEdited(edited)}.</em>}
+        {stale && <em class="warn"> {words.stale}.</em>}
+      </span>
+      <span class="prove-clear" title={words.clearanceLong}>
+        {words.clearance}
+      </span>
+    </section>
   );
 }
 
-interface Row {
-  readonly name: string;
-  readonly title: string;
-  readonly purpose: string;
-  readonly a: TrialResult | null;
-  readonly b: TrialResult | null;
-}
-
-const three = (value: number | null | undefined): string =>
-  value === null || value === undefined ? '—' : String(Number(value.toPrecision(3)));
-
-function TrialTable(props: { kept: Kept; busy: boolean; compare: boolean; onRun: (name: string) => void }) {
-  const { kept, compare } = props;
-  const [opened, setOpened] = useState<string | null>(null);
-  const rows = TRIALS.map((trial): Row => ({
-    name: trial.name,
-    title: trial.title,
-    purpose: trial.purpose,
-    a: kept.a[trial.name] ?? null,
-    b: kept.b[trial.name] ?? null,
-  }));
-  const verdict = (result: TrialResult | null) =>
-    result === null ? (
-      <span class="faint">{words.notRun}</span>
-    ) : result.pass ? (
-      words.within
-    ) : (
-      <strong class="bad">{words.outside}</strong>
-    );
-  const columns: Column<Row>[] = [
-    {
-      key: 'trial',
-      label: words.trial,
-      show: (row) => (
-        <button
-          type="button"
-          class="link"
-          aria-expanded={opened === row.name}
-          onClick={() => setOpened(opened === row.name ? null : row.name)}
-        >
-          {row.title}
-        </button>
-      ),
-      sortBy: (row) => row.title,
-    },
-    {
-      key: 'a',
-      label: words.a,
-      show: (row) => verdict(row.a),
-      sortBy: (row) => (row.a === null ? 2 : row.a.pass ? 1 : 0),
-    },
-    ...(compare ? [{ key: 'b', label: words.b, show: (row: Row) => verdict(row.b) }] : []),
-    {
-      key: 'scores',
-      label: words.score,
-      show: (row) =>
-        row.a === null ? (
-          <span class="faint">{row.purpose}</span>
-        ) : (
-          row.a.scores.map((score) => `${score.name} ${three(score.value)} ${score.unit}`).join(' · ')
-        ),
-    },
-    {
-      key: 'run',
-      label: '',
-      show: (row) => (
-        <Button
-          quiet
-          disabled={props.busy}
-          name={`${words.runOne} ${row.title}`}
-          onClick={() => props.onRun(row.name)}
-        >
-          {words.runOne}
-        </Button>
-      ),
-    },
-  ];
-  return (
-    <DataTable
-      label={words.table}
-      columns={columns}
-      rows={rows}
-      rowKey={(row) => row.name}
-      opened={opened}
-      inside={(row) => (row.a === null ? <p>{row.purpose}</p> : <ScoreTable row={row} compare={compare} />)}
-    />
-  );
-}
-
-function ScoreTable(props: { row: Row; compare: boolean }) {
-  const { a, b } = props.row;
-  if (a === null) return null;
-  return (
-    <div>
-      <p>{props.row.purpose}</p>
-      <table class="prove-scores">
-        <thead>
-          <tr>
-            <th>{words.score}</th>
-            <th>{words.a}</th>
-            {props.compare && <th>{words.b}</th>}
-            {props.compare && <th>{words.difference}</th>}
-            <th>{words.band}</th>
-            <th>{words.source}</th>
-          </tr>
-        </thead>
-        <tbody>
-          {a.scores.map((score, i) => {
-            const other = b?.scores[i] ?? null;
-            const difference =
-              other?.value == null || score.value === null ? null : other.value - score.value;
-            return (
-              <tr key={score.name}>
-                <th scope="row">{score.name}</th>
-                <td class={score.pass ? '' : 'bad'}>
-                  {three(score.value)} <span class="unit">{score.unit}</span>
-                </td>
-                {props.compare && (
-                  <td class={other === null || other.pass ? '' : 'bad'}>{three(other?.value)}</td>
-                )}
-                {props.compare && <td>{three(difference)}</td>}
-                <td>{bandText(score.band, score.unit)}</td>
-                <td class="faint">{score.source}</td>
-              </tr>
-            );
-          })}
-        </tbody>
-      </table>
-    </div>
-  );
+/** What stands in report and description: of what the results were flown with, not of what changed since. */
+function reportContent(kept: Kept, now: RunOf, runs: ProveRuns): ReportContent {
+  const of = kept.of ?? now;
+  const a = Object.values(kept.a) as TrialResult[];
+  const b = Object.values(kept.b) as TrialResult[];
+  const compared = of.gainsB !== null && b.length > 0;
+  const cells = runs.cells.value;
+  const spread = kept.spread.result;
+  const last = kept.sessions.at(-1);
+  return {
+    build: of.build,
+    gains: compared ? (of.gainsB ?? of.gainsA) : of.gainsA,
+    results: compared ? b : a,
+    ...(compared ? { baseline: { gains: of.gainsA, results: a } } : {}),
+    notes: kept.notes,
+    seed: of.seed,
+    wind: of.wind,
+    bands: kept.bands,
+    sweep: cells !== null && sameJson(cells.subject.build, of.build) ? cells : null,
+    spread:
+      spread === null || !sameJson(spread.of.build, of.build)
+        ? null
+        : {
+            request: {
+              trials: [spread.summary.trial],
+              samples: kept.spread.samples,
+              shares: kept.spread.shares,
+            },
+            summaries: [spread.summary],
+          },
+    ...(last !== undefined && last.flights.length === last.order.length ? { ratings: last.flights } : {}),
+  };
 }

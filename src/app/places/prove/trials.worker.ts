@@ -1,4 +1,9 @@
 /** One worker of the trials' pool. */
-import { answerTask, type TaskMessage } from '../../../trials/pool.ts';
+import { serveTrials, type TaskMessage } from '../../../trials/protocol.ts';
 
-self.onmessage = ({ data }: MessageEvent<TaskMessage>) => self.postMessage(answerTask(data));
+serveTrials({
+  post: (answer) => self.postMessage(answer),
+  listen: (hear) => {
+    self.onmessage = ({ data }: MessageEvent<TaskMessage>) => hear(data);
+  },
+});
