@@ -7,11 +7,11 @@ import './styles/plots.css';
 import './styles/shell.css';
 import { App } from './shell/App.tsx';
 import { startOffline } from './shell/offline.ts';
+import { takeFromLink } from './shell/takeFromLink.ts';
 import { startAutosave, type Autosave } from './storage/autosave.ts';
 import { saveArchive } from './storage/saveArchive.ts';
 import { openWork } from './storage/start.ts';
 import { BenchContext } from './store/context.ts';
-import { newCraft } from './store/document.ts';
 import { Store } from './store/store.ts';
 import { startTheme } from './store/theme.ts';
 
@@ -41,7 +41,7 @@ async function start(root: HTMLElement): Promise<void> {
     window.addEventListener('pagehide', () => void autosave.flush());
   }
   for (const { name, reason } of opened.aside) store.notices.tell('error', words.aside(name, reason));
-  if (location.hash.startsWith('#/take/')) await takeFromLink(store);
+  await takeFromLink(store);
   const running = new Map<string, unknown>();
   startOffline(store, () => running.get('armed') === true);
   render(
@@ -50,17 +50,6 @@ async function start(root: HTMLElement): Promise<void> {
     </BenchContext.Provider>,
     root,
   );
-}
-
-/** A craft that came by a link becomes one of its own; junk is refused by name and nothing is changed. */
-async function takeFromLink(store: Store): Promise<void> {
-  const { takeLink } = await import('./places/carry/shareLink.ts');
-  const fragment = location.hash;
-  history.replaceState(null, '', '#/measure');
-  store.attempt({}, () => {
-    const taken = takeLink(fragment);
-    if (taken !== null) store.addCrafts([newCraft(taken.build, taken.gains)], store.texts.edits.byLink);
-  });
 }
 
 const root = document.getElementById('app');

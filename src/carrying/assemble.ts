@@ -149,8 +149,12 @@ function sheetTrial(result: TrialResult): SheetTrial {
   return { trial: `${title}${changedParameters(result)}`, scores: text, seed, pass };
 }
 
+/** What trials call the source of a band that a person has set. */
+const OWN_BAND = 'set by the user';
+
 function scoreWords(score: Score): string {
-  return `${score.name} ${scoreText(score)} (${bandText(score.band, score.unit)})${score.pass ? '' : ' OUTSIDE'}`;
+  const own = score.source === OWN_BAND ? ', own band' : '';
+  return `${score.name} ${scoreText(score)} (${bandText(score.band, score.unit)}${own})${score.pass ? '' : ' OUTSIDE'}`;
 }
 
 function fitting(parts: readonly string[]): string {

@@ -1,7 +1,7 @@
 import { expect, test } from 'vitest';
 import { accessibilityFaults, describeInBrowser } from './harness.ts';
 
-describeInBrowser('Shape, Prove and Carry', (site) => {
+describeInBrowser('Shape and Prove', (site) => {
   test('Shape: margins follow a gain, starting gains come, the map fills', async () => {
     const opened = await site.open({ at: '#/shape' });
     const { page } = opened;
@@ -70,33 +70,5 @@ describeInBrowser('Shape, Prove and Carry', (site) => {
     await map.scrollIntoViewIfNeeded();
     await opened.shot('prove-map');
     await opened.close();
-  }, 180_000);
-
-  test('Carry: the sheet stands with its trials, a link carries craft and gains, junk links are refused', async () => {
-    const context = await site.newContext({
-      viewport: { width: 1440, height: 900 },
-      permissions: ['clipboard-read', 'clipboard-write'],
-    });
-    const opened = await site.open({ at: '#/carry', context });
-    const { page } = opened;
-    await page.waitForSelector('.carry-sheet');
-    await page.getByRole('button', { name: /Run the sheet/ }).click();
-    await expect
-      .poll(() => page.frameLocator('.carry-sheet').getByText('Wind proven').count(), { timeout: 60_000 })
-      .toBe(1);
-    expect(await accessibilityFaults(page)).toEqual([]);
-    await opened.shot('carry');
-    await page.getByRole('button', { name: /Copy a link/ }).click();
-    await page.getByText('Copied.').waitFor();
-    const link = await page.evaluate(() => navigator.clipboard.readText());
-    expect(link).toMatch(/#\/take\//);
-    await page.goto('about:blank');
-    await page.goto(link);
-    await expect.poll(() => page.locator('#top-craft').innerText()).toMatch(/Sandpiper 2/);
-    await page.goto('about:blank');
-    await page.goto(`${site.url}#/take/AAAA_junk`);
-    await page.getByText(/link/).first().waitFor();
-    await opened.close();
-    await context.close();
   }, 180_000);
 });

@@ -9,6 +9,7 @@ import { PlaceFrame } from './PlaceFrame.tsx';
 import { Rail } from './Rail.tsx';
 import { hashOf, placeInHash } from './route.ts';
 import { SettingsDialog } from './SettingsDialog.tsx';
+import { takeFromLink } from './takeFromLink.ts';
 import { TopLine, type ShellDialog } from './TopLine.tsx';
 import { useFileDrop } from './useFileDrop.ts';
 import { useUncaught } from './useUncaught.ts';
@@ -27,6 +28,7 @@ export function App() {
     const follow = () => {
       const wanted = placeInHash(location.hash);
       if (wanted !== null) store.choosePlace(wanted);
+      else void takeFromLink(store);
     };
     const press = (event: KeyboardEvent) => {
       handleKey(event, {

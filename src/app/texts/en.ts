@@ -191,6 +191,8 @@ export const en = {
       `${name} is on the bench with the gains that lay there; ${shape} proposes gains of its own.`,
   },
   archive: {
+    byLink: (name: string) =>
+      `“${name}” came from a link as a craft of its own; Undo takes it off the bench again.`,
     opened: (count: number) =>
       count === 1 ? '1 craft came from the archive.' : `${count} crafts came from the archive.`,
   },

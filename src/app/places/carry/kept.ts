@@ -8,6 +8,7 @@ import type { WindProof } from '../../../carrying/windLimit.ts';
 import type { Build } from '../../../craft/build.ts';
 import type { Gains } from '../../../craft/gains.ts';
 import type { TrialResult } from '../../../trials/trial.ts';
+import { sameJson } from '../../store/document.ts';
 
 const name = z.string().max(200);
 const band = z.object({ least: z.number().optional(), most: z.number().optional() });
@@ -75,32 +76,26 @@ export function isOutOfDate(raw: unknown, build: Build, gains: Gains): boolean {
   return parsed.success && parsed.data.key !== keyOf(build, gains);
 }
 
-/**
- * Prove's results that are of this build and gains. Prove's key is the JSON of a list that begins with build,
- * gains A and gains B; its results stand under `a` and `b` by the trial's name.
- */
+/** What Prove's results are of; a wind that is not null was flown in place of the trials' own. */
+const provenOf = z.object({
+  build: z.unknown(),
+  gainsA: z.unknown(),
+  gainsB: z.unknown(),
+  wind: z.null(),
+});
+const proveSheet = z.object({ of: provenOf, a: z.unknown(), b: z.unknown() });
+
+/** Prove's results that are of this build and these gains, each trial in its own wind. */
 export function provenFor(raw: unknown, build: Build, gains: Gains): TrialResult[] {
-  const sheet = z.looseObject({ key: z.string() }).safeParse(raw);
-  if (!sheet.success) return [];
-  const of = listIn(sheet.data.key).map((part) => JSON.stringify(part));
-  if (of[0] !== JSON.stringify(build)) return [];
-  const wanted = JSON.stringify(gains);
-  const side = of[1] === wanted ? 'a' : of[2] === wanted ? 'b' : null;
-  const kept = side === null ? undefined : sheet.data[side];
+  const sheet = proveSheet.safeParse(raw);
+  if (!sheet.success || !sameJson(sheet.data.of.build, build)) return [];
+  const { of, a, b } = sheet.data;
+  const kept = sameJson(of.gainsA, gains) ? a : sameJson(of.gainsB, gains) ? b : null;
   if (typeof kept !== 'object' || kept === null) return [];
   return Object.values(kept).flatMap((one) => {
     const parsed = result.safeParse(one);
     return parsed.success ? [parsed.data] : [];
   });
-}
-
-function listIn(text: string): unknown[] {
-  try {
-    const list: unknown = JSON.parse(text);
-    return Array.isArray(list) ? list : [];
-  } catch {
-    return [];
-  }
 }
 
 /** The results for the sheet: this place's own, and of other trials Prove's. */

@@ -1,13 +1,15 @@
 /** Build and gains in the fragment of a link: deflated JSON in URL-safe base64. Nothing goes over a network. */
 import { deflateSync, inflateSync, strFromU8, strToU8 } from 'fflate';
 import { parseBuild, type Build } from '../../../craft/build.ts';
-import { parseJson } from '../../../craft/fields.ts';
 import { parseGains, type Gains } from '../../../craft/gains.ts';
 import { refuse } from '../../../craft/problem.ts';
+import { parseGuardedJson } from '../../storage/guardedJson.ts';
 
-const PREFIX = '#/take/';
+const LINK_PREFIX = '#/take/';
 /** Longer links are cut by some programs that pass them on. */
 export const LONGEST_LINK = 6000;
+/** Nothing honest is longer; a bomb is refused before it is unpacked. */
+const LONGEST_TAKEN = 4 * LONGEST_LINK;
 const LONGEST_TEXT = 400_000;
 
 export function linkFor(base: string, build: Build, gains: Gains): string | null {
@@ -15,7 +17,7 @@ export function linkFor(base: string, build: Build, gains: Gains): string | null
   let binary = '';
   for (const byte of packed) binary += String.fromCharCode(byte);
   const text = btoa(binary).replace(/\+/g, '-').replace(/\//g, '_').replace(/=+$/, '');
-  const link = `${base}${PREFIX}${text}`;
+  const link = `${base}${LINK_PREFIX}${text}`;
   return link.length > LONGEST_LINK ? null : link;
 }
 
@@ -24,9 +26,11 @@ export function linkFor(base: string, build: Build, gains: Gains): string | null
  * @throws InputError for junk: not base64, not deflate, too long when inflated, not a build and gains.
  */
 export function takeLink(fragment: string): { build: Build; gains: Gains } | null {
-  if (!fragment.startsWith(PREFIX)) return null;
-  const text = fragment.slice(PREFIX.length);
-  const raw = parseJson(unpack(text), 'link');
+  if (!fragment.startsWith(LINK_PREFIX)) return null;
+  const text = fragment.slice(LINK_PREFIX.length);
+  if (text.length > LONGEST_TAKEN)
+    throw refuse('link', '', `${text.length} characters`, `at most ${LONGEST_TAKEN} characters`);
+  const raw = parseGuardedJson(unpack(text), 'link');
   if (
     typeof raw !== 'object' ||
     raw === null ||
