@@ -221,10 +221,86 @@ describeInBrowser('The frame', (site) => {
     await opened.close();
   });
 
-  for (const theme of ['light', 'dark'] as const) {
+  test('the frame and Carry work by keyboard alone', async () => {
+    const opened = await site.open({ at: '#/carry' });
+    const { page } = opened;
+    const focused = () =>
+      page.evaluate(() => {
+        const at = document.activeElement;
+        return [at?.getAttribute('aria-label'), at?.textContent, at?.getAttribute('title')].find(Boolean);
+      });
+    await page.waitForSelector('.carry-sheet');
+    await page.keyboard.press('Tab');
+    expect(await focused()).toBe('Skip to the place');
+    await page.keyboard.press('Enter');
+    expect(await focused()).toBe('Carry');
+    await page.keyboard.press('Tab');
+    expect(await focused()).toMatch(/^Run the sheet/);
+    // Back through the whole frame: every step lands somewhere that says its name.
+    const seen = new Set<string>();
+    for (let i = 0; i < 24; i++) {
+      await page.keyboard.press('Shift+Tab');
+      const name = await focused();
+      expect(name, `step ${i} back`).toBeTruthy();
+      seen.add(name ?? '');
+    }
+    for (const name of ['Help', 'Settings', 'Work', 'Craft', 'Carry', 'Measure', 'Hide guide'])
+      expect(
+        [...seen].some((one) => one.includes(name)),
+        name,
+      ).toBe(true);
+    const ring = await page.evaluate(() => {
+      const link = document.querySelector<HTMLElement>('.rail a');
+      link?.focus();
+      return link === null ? '' : getComputedStyle(link).outlineStyle;
+    });
+    expect(ring).not.toBe('none');
+    await opened.close();
+  });
+
+  test('with reduced motion nothing moves by itself', async () => {
+    const opened = await site.open({ at: '#/carry', reducedMotion: true });
+    const { page } = opened;
+    expect(await page.evaluate(() => document.documentElement.dataset.motion)).toBe('reduced');
+    await page.keyboard.press('Alt+KeyH');
+    await page.waitForSelector('dialog[open]');
+    expect(await page.evaluate(() => document.getAnimations().length)).toBe(0);
+    await opened.close();
+  });
+
+  test('no place scrolls sideways at 1024 × 768 and on a tablet held upright', async () => {
+    const opened = await site.open({ width: 1024, height: 768 });
+    const { page } = opened;
+    for (const [width, height] of [
+      [1024, 768],
+      [768, 1024],
+    ]) {
+      await page.setViewportSize({ width, height });
+      for (const [i, place] of PLACES.entries()) {
+        await page.keyboard.press(`Alt+Digit${i + 1}`);
+        await page.waitForFunction((wanted) => document.title.startsWith(wanted), title(place));
+        await page.waitForTimeout(500);
+        const over = await page.evaluate(() =>
+          [document.documentElement, document.querySelector('#place')].map((box) =>
+            box === null ? NaN : box.scrollWidth - box.clientWidth,
+          ),
+        );
+        expect(over, `${place} at ${width} × ${height}`).toEqual([0, 0]);
+        await opened.shot(`place-${place}-${width}`);
+      }
+    }
+    await opened.close();
+  });
+
+  for (const theme of ['light', 'dark', 'contrast'] as const) {
     test(`nothing serious by axe in any place, ${theme}`, async () => {
-      const opened = await site.open({ theme });
+      const opened = await site.open(theme === 'contrast' ? {} : { theme });
       const { page } = opened;
+      if (theme === 'contrast') {
+        await page.keyboard.press('Alt+KeyS');
+        await page.getByLabel('Appearance').selectOption('contrast');
+        await page.keyboard.press('Escape');
+      }
       for (const [i, place] of PLACES.entries()) {
         await page.keyboard.press(`Alt+Digit${i + 1}`);
         await page.waitForFunction((wanted) => document.title.startsWith(wanted), title(place));
@@ -234,7 +310,9 @@ describeInBrowser('The frame', (site) => {
       }
       await opened.close();
     });
+  }
 
+  for (const theme of ['light', 'dark'] as const) {
     for (const [width, height] of [
       [1440, 900],
       [1024, 768],

@@ -3,17 +3,23 @@ import { PLACE_LIST } from '../places/registry.ts';
 import { useStore } from '../store/context.ts';
 import { NoticeStack } from '../widgets/NoticeStack.tsx';
 import { guideMemory } from './guideMemory.ts';
+import type HelpDialog from './HelpDialog.tsx';
 import { handleKey } from './keys.ts';
 import { Later } from './Later.tsx';
 import { PlaceFrame } from './PlaceFrame.tsx';
 import { Rail } from './Rail.tsx';
 import { hashOf, placeInHash } from './route.ts';
-import { SettingsDialog } from './SettingsDialog.tsx';
 import { takeFromLink } from './takeFromLink.ts';
 import { TopLine, type ShellDialog } from './TopLine.tsx';
 import { useFileDrop } from './useFileDrop.ts';
 import { useUncaught } from './useUncaught.ts';
-import { WorkDialog } from './WorkDialog.tsx';
+
+/** Loaded when they are first opened. */
+const DIALOGS: Readonly<Record<ShellDialog, () => Promise<{ default: typeof HelpDialog }>>> = {
+  work: () => import('./WorkDialog.tsx'),
+  help: () => import('./HelpDialog.tsx'),
+  settings: () => import('./SettingsDialog.tsx'),
+};
 
 /** The frame that all places live in. */
 export function App() {
@@ -79,18 +85,17 @@ export function App() {
       </main>
       <NoticeStack />
       {fileOver ? <div class="aim-drop">{store.texts.drop.over}</div> : null}
-      {dialog === 'work' ? <WorkDialog onClose={close} /> : null}
-      {dialog === 'help' ? (
+      {dialog === null ? null : (
         <Later
-          load={() => import('./HelpDialog.tsx')}
+          key={dialog}
+          load={DIALOGS[dialog]}
           with={{ onClose: close }}
           onFailure={() => {
             close();
-            store.notices.tell('error', store.texts.states.failedLoad(store.texts.help.title));
+            store.notices.tell('error', store.texts.states.failedLoad(store.texts.topLine[dialog]));
           }}
         />
-      ) : null}
-      {dialog === 'settings' ? <SettingsDialog onClose={close} /> : null}
+      )}
     </div>
   );
 }

@@ -3,7 +3,7 @@ import { THEMES, UNIT_SYSTEMS } from '../store/document.ts';
 import { Dialog } from '../widgets/Dialog.tsx';
 import { Select } from '../widgets/Select.tsx';
 
-export function SettingsDialog(props: { onClose: () => void }) {
+export default function SettingsDialog(props: { onClose: () => void }) {
   const store = useStore();
   const words = store.texts.settings;
   const now = store.settings.value;

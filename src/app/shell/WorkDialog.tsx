@@ -14,7 +14,7 @@ import { Dialog } from '../widgets/Dialog.tsx';
 import { FileDrop } from '../widgets/FileDrop.tsx';
 
 /** Crafts, gain sets with their history, files. */
-export function WorkDialog(props: { onClose: () => void }) {
+export default function WorkDialog(props: { onClose: () => void }) {
   const words = useStore().texts.work;
   const storage = useStorage();
   return (
