@@ -45,7 +45,12 @@ export function MapsPanel() {
     <section class="prove-part prove-maps" aria-label={words.tab.maps}>
       <div class="prove-map-side">
         <div class="row">
-          <Button primary disabled={busy} title={busy ? words.busy : words.mapHint} onClick={startMap}>
+          <Button
+            primary={!busy}
+            disabled={busy}
+            title={busy ? words.busy : words.mapHint}
+            onClick={startMap}
+          >
             {words.mapRun}
           </Button>
           <span class="faint small">{words.mapHint}</span>
@@ -96,8 +101,8 @@ function PickButtons(props: { cells: SweepCells; picks: readonly Place[] }) {
   return (
     <div class="row">
       {props.picks.map((place, i) => (
-        <Button key={i} onClick={() => fly(place)}>
-          {`${words.cellFly}: ${words.picked(i + 1)}`}
+        <Button key={i} title={words.cellFlyHint} onClick={() => fly(place)}>
+          {words.cellFly(i + 1)}
         </Button>
       ))}
     </div>

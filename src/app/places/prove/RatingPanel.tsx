@@ -304,7 +304,7 @@ function SessionTable({ session }: { session: RatingSession }) {
                   {mean(of, (one) => one.scores[k]?.value ?? NaN)}
                 </td>
               ))}
-              <td>{of.length === 1 ? of[0].note : ''}</td>
+              <td>{head === words.handMean ? '' : of[0].note}</td>
             </tr>
           ))}
         </tbody>

@@ -77,7 +77,12 @@ export function SpreadPanel() {
           />
         ))}
         <div class="row">
-          <Button primary disabled={busy} title={busy ? words.busy : undefined} onClick={() => void fly()}>
+          <Button
+            primary={!busy}
+            disabled={busy}
+            title={busy ? words.busy : undefined}
+            onClick={() => void fly()}
+          >
             {words.spreadRun(spread.samples)}
           </Button>
           {!sameJson(spread.shares, DEFAULT_SHARES) && (

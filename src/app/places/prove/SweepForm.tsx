@@ -1,9 +1,10 @@
 /** What to sweep: trial, one or two numbers by path, their ranges; refused with what is allowed before any flight. */
 import { useId, useState } from 'preact/hooks';
 import { InputError } from '../../../craft/problem.ts';
-import { numberPaths, valueAt } from '../../../trials/overrides.ts';
+import { numberPaths, resolve, valueAt } from '../../../trials/overrides.ts';
 import { TRIALS, trialByName } from '../../../trials/registry.ts';
 import { MOST_CELLS, parseSweep, SWEEP_FORMAT, type Subject, type Sweep } from '../../../trials/sweep.ts';
+import type { Trial } from '../../../trials/trial.ts';
 import { useStore } from '../../store/context.ts';
 import { Button } from '../../widgets/Button.tsx';
 import { Select } from '../../widgets/Select.tsx';
@@ -60,7 +61,7 @@ export function SweepForm(props: { subject: Subject; busy: boolean; onStart: (sw
   const choosePath = (axis: 'x' | 'y', path: string): void => {
     setForm({ ...form, [axis]: { ...form[axis], path } });
     said(() => {
-      const range = rangeAround(valueAt(trial, props.subject, path, axis));
+      const range = rangeAround(foundAt(trial, props.subject, path));
       setForm({ ...form, [axis]: { ...form[axis], path, ...range } });
     });
   };
@@ -180,6 +181,19 @@ function AxisFields(props: {
       </div>
     </fieldset>
   );
+}
+
+/** The number at `path`; NaN at an optional one that is absent. @throws InputError when there is no such place */
+function foundAt(trial: Trial, subject: Subject, path: string): number {
+  const value = valueAt(trial, subject, path, 'sweep');
+  if (!Number.isNaN(value)) return value;
+  try {
+    // Whether an absent field may be there is the parser's to say; which value is allowed comes later.
+    resolve(trial, subject, { [path]: 1 }, 'sweep');
+  } catch (error) {
+    if (!(error instanceof InputError) || error.problems.some((one) => one.path === 'path')) throw error;
+  }
+  return value;
 }
 
 /** A number where there is one; else the text, which the parser then names. */

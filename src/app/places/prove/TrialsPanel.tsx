@@ -42,7 +42,7 @@ export function TrialsPanel() {
     <section class="prove-part" aria-label={words.tab.trials}>
       <div class="row">
         <Button
-          primary
+          primary={!busy}
           disabled={busy}
           title={busy ? words.busy : undefined}
           onClick={() => void run(TRIALS.map((trial) => trial.name))}
@@ -168,7 +168,7 @@ function TrialTable(props: { rows: readonly Row[]; busy: boolean; onRun: (name: 
 const order = (result: TrialResult | null): number => (result === null ? 2 : result.pass ? 1 : 0);
 
 function Verdict({ result }: { result: TrialResult | null }) {
-  if (result === null) return <span class="faint">{words.notRun}</span>;
+  if (result === null) return <span class="faint prove-verdict">{words.notRun}</span>;
   return result.pass ? <span>{words.within}</span> : <strong class="bad">{words.outside}</strong>;
 }
 

@@ -1,5 +1,12 @@
 /** A sweep's cells as the map plot takes them: axes whose cell centres are the values flown, outline, front. */
-import { contourLines, createMapGrid, filledIn, setMapCell, type MapGrid } from '../../plots/mapGrid.ts';
+import {
+  contourLines,
+  createMapGrid,
+  filledIn,
+  setMapCell,
+  type ContourLine,
+  type MapGrid,
+} from '../../plots/mapGrid.ts';
 import type { MapCurve, MapLevel, MapPoint } from '../../plots/MapPlot.tsx';
 import type { PlotAxis } from '../../plots/frame.ts';
 import { shareOf, valueAt } from '../../plots/scale.ts';
@@ -89,41 +96,58 @@ export function curvesOf(cells: SweepCells, map: SweepMap): MapCurve[] {
   return [...outlineOf(cells, map), ...frontOf(cells, map)];
 }
 
+/** Pieces of a cell's edge for the outline. */
+const FINER = 5;
+
 function outlineOf(cells: SweepCells, map: SweepMap): MapCurve[] {
   const { columns, rows, sweep } = cells;
   if (sweep.y === undefined) return [];
   const { values, known } = filledIn(
     gridOf(cells, (place) => map.acceptable[place], new Uint8Array(columns * rows)),
   );
-  // A border of cells that do not pass closes the outline at the map's edge.
-  const padded = new Float64Array((columns + 2) * (rows + 2));
-  for (let r = 0; r < rows; r++) {
-    for (let c = 0; c < columns; c++) {
-      const place = r * columns + c;
-      padded[(r + 1) * (columns + 2) + c + 1] = known[place] === 1 ? values[place] : 0;
+  // A border that does not pass closes the outline at the map's edge; finer cells keep its corners.
+  const [width, height] = [FINER * columns + 2, FINER * rows + 2];
+  const padded = new Float64Array(width * height);
+  for (let r = 0; r < FINER * rows; r++) {
+    for (let c = 0; c < FINER * columns; c++) {
+      const place = Math.floor(r / FINER) * columns + Math.floor(c / FINER);
+      padded[(r + 1) * width + c + 1] = known[place] === 1 ? values[place] : 0;
     }
   }
   const [x, y] = [plotAxis(sweep.x), plotAxis(sweep.y)];
   const held = (share: number) => Math.min(1, Math.max(0, share));
-  const lines = [...contourLines(padded, columns + 2, rows + 2, 0.5)].sort((a, b) => b.length - a.length);
-  return lines.map((line, i) => ({
-    label: i === 0 ? words.outline : '',
-    axis: 'accent' as const,
-    x: line.map(([column]) => valueAt(x, held((column - 1) / columns))),
-    y: line.map(([, row]) => valueAt(y, held((row - 1) / rows))),
-  }));
+  const lines = [...contourLines(padded, width, height, 0.5)].sort((a, b) => b.length - a.length);
+  return lines.map((closed, i) => {
+    const line = endingRight(closed);
+    return {
+      label: i === 0 ? words.outline : '',
+      axis: 'accent' as const,
+      x: line.map(([column]) => valueAt(x, held((column - 1) / (FINER * columns)))),
+      y: line.map(([, row]) => valueAt(y, held((row - 1) / (FINER * rows)))),
+    };
+  });
+}
+
+/** A closed line begun so that it ends at its rightmost, there lowest point: its name is written leftward from there. */
+function endingRight(line: ContourLine): ContourLine {
+  const further = (a: ContourLine[number], b: ContourLine[number]) => a[0] - b[0] || b[1] - a[1];
+  const end = line.reduce((best, point, i) => (further(point, line[best]) > 0 ? i : best), 0);
+  const ring = line.slice(0, -1);
+  return [...ring.slice(end), ...ring.slice(0, end), line[end]];
 }
 
 function frontOf(cells: SweepCells, map: SweepMap): MapCurve[] {
   const { columns, sweep } = cells;
   const { y } = sweep;
   if (y === undefined || map.front.length < 2) return [];
+  const x = map.front.map((place) => axisValue(sweep.x, place % columns));
+  const front = x[0] > x[x.length - 1] ? [...map.front].reverse() : map.front;
   return [
     {
       label: words.front,
       axis: 'pitch',
-      x: map.front.map((place) => axisValue(sweep.x, place % columns)),
-      y: map.front.map((place) => axisValue(y, Math.floor(place / columns))),
+      x: front.map((place) => axisValue(sweep.x, place % columns)),
+      y: front.map((place) => axisValue(y, Math.floor(place / columns))),
     },
   ];
 }
