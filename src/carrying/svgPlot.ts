@@ -68,7 +68,7 @@ export function linePlot(frame: PlotFrame, lines: readonly PlotLine[]): string {
       `<line x1="${LEFT}" x2="${WIDTH - RIGHT}" y1="${f(toY(level.y))}" y2="${f(toY(level.y))}" class="l"/>`,
     );
     parts.push(
-      `<text x="${WIDTH - RIGHT - 2}" y="${f(levelLabelY(toY(level.y)))}" class="n" text-anchor="end">${escapeHtml(level.label)}</text>`,
+      `<text x="${LEFT + 4}" y="${f(levelLabelY(toY(level.y)))}" class="n">${escapeHtml(level.label)}</text>`,
     );
   }
   points.forEach((line, index) => {

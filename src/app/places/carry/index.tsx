@@ -25,6 +25,7 @@ import { Select } from '../../widgets/Select.tsx';
 import './carry.css';
 import { flyForSheet, type SheetFlights } from './flights.ts';
 import { carriedFor, isOutOfDate, joined, knownIn, provenFor, type CarrySheet } from './kept.ts';
+import { SheetView } from './SheetView.tsx';
 import { linkFor } from './shareLink.ts';
 import { carryTexts as words } from './texts.ts';
 
@@ -81,13 +82,7 @@ export default function Carry() {
         <Files carried={carried} stem={stem} />
       </section>
       {sheet.problem === null ? (
-        <iframe
-          ref={frame}
-          class="carry-sheet"
-          title={words.sheet}
-          sandbox="allow-same-origin allow-modals"
-          srcdoc={sheet.html}
-        />
+        <SheetView html={sheet.html} title={words.sheet} frame={frame} />
       ) : (
         <NoticeBox kind="error">
           {words.cannot}: {sheet.problem}

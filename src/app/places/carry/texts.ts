@@ -21,7 +21,7 @@ export const carryTexts = {
   knownCount: (count: number, all: number) =>
     `${count} of ${all} quantities with an uncertainty from Measure`,
   outOfDate: 'Earlier results were of another build or other gains and are left off.',
-  convention: 'Gain convention',
+  convention: 'Convention',
   constants: 'Constants',
   files: 'Files',
   saveBuild: 'Build',
