@@ -46,7 +46,7 @@ export const GUIDE_STEPS: readonly GuideStep[] = [
   },
   {
     place: 'measure',
-    text: 'Type what you know: all-up mass, rotor places, propeller, motor, cells, ESC. A swing test gives the inertia; each worksheet says how.',
+    text: 'Type what you know: all-up mass, propeller, motor, cells, ESC. A swing test gives the inertia; each worksheet says how.',
   },
   { place: 'shape', text: 'Ask for starting gains for your craft and take them.' },
   { place: 'fly', text: 'Fly it in the wind you expect, then run all trials in Prove.' },

@@ -22,7 +22,7 @@ export const PLACE_HELP: Readonly<Record<PlaceName, PlaceHelp>> = {
   measure: {
     what: 'Turns what a scale, a string, a stopwatch and a thrust stand say into the build: the numbers that the simulation flies.',
     steps: [
-      'Begin with the numbers of the build: all-up mass, where the rotors sit, propeller, motor, battery, ESC, gyro. Every field says its unit and its limits.',
+      'Begin with the numbers of the build: all-up mass, propeller, motor, battery, ESC, gyro. Every field says its unit and its limits.',
       'Swing test: hang the craft on two wires or as a pendulum and time some swings a few times. Inertia comes out with how well it is known.',
       'Thrust stand: give the file as it is; columns and units are read from its heads. Coefficients, their change with speed and the motor’s constants come out.',
       'Spin-up and gyro at rest give the motor’s lag and the sensor’s noise.',
