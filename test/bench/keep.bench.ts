@@ -3,14 +3,12 @@
  * Most rounds kill the page's process; every twentieth kills the whole browser. GUSTBENCH_ROUNDS=100 for fewer.
  */
 import { spawn, type ChildProcess } from 'node:child_process';
-import { mkdtempSync, rmSync } from 'node:fs';
-import { tmpdir } from 'node:os';
 import path from 'node:path';
 import { chromium, type BrowserContext } from 'playwright-core';
-import { build, preview } from 'vite';
 import { findChromium } from '../../src/cli/setup.mjs';
 import { RandomStream } from '../../src/math/random.ts';
 import { killPage, KillRounds } from '../browser/killRounds.ts';
+import { serveBuilt } from './site.ts';
 
 const ROUNDS = Number(process.env.GUSTBENCH_ROUNDS ?? 1000);
 const WHOLE_BROWSER_EVERY = 20;
@@ -108,17 +106,7 @@ async function run(executable: string, url: string, profile: string): Promise<vo
 const executable = findChromium();
 if (executable === null) console.log('left out: no Chromium');
 else {
-  const folder = mkdtempSync(path.join(tmpdir(), 'gustbench-keep-'));
-  const outDir = path.join(folder, 'site');
-  await build({ logLevel: 'error', build: { outDir, emptyOutDir: true } });
-  const server = await preview({
-    logLevel: 'error',
-    build: { outDir },
-    preview: { port: 0, host: '127.0.0.1' },
-  });
-  const address = server.httpServer.address();
-  const url = address === null || typeof address === 'string' ? '' : `http://127.0.0.1:${address.port}/`;
-  await run(executable, url, path.join(folder, 'profile'));
-  await server.close();
-  rmSync(folder, { recursive: true, force: true });
+  const site = await serveBuilt();
+  await run(executable, site.url, path.join(site.folder, 'profile'));
+  await site.close();
 }

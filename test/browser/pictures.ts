@@ -2,12 +2,11 @@
  * `npm run pictures`: takes the manual's pictures anew, one a place, from the demo craft in headless Chromium,
  * and writes them small to src/app/static/manual/. Look at them before they are kept.
  */
-import { mkdirSync, mkdtempSync, rmSync, writeFileSync } from 'node:fs';
-import { tmpdir } from 'node:os';
+import { mkdirSync, writeFileSync } from 'node:fs';
 import path from 'node:path';
 import { chromium, type Browser, type Page } from 'playwright-core';
-import { build, preview } from 'vite';
 import { findChromium, root } from '../../src/cli/setup.mjs';
+import { serveBuilt } from '../bench/site.ts';
 
 const FOLDER = path.join(root, 'src/app/static/manual');
 const SIZE = { width: 1200, height: 750 };
@@ -76,24 +75,15 @@ async function asWebp(page: Page, png: Buffer): Promise<Buffer> {
 }
 
 async function main(executablePath: string): Promise<void> {
-  const outDir = mkdtempSync(path.join(tmpdir(), 'gustbench-pictures-'));
-  await build({ logLevel: 'error', build: { outDir, emptyOutDir: true } });
-  const server = await preview({
-    logLevel: 'error',
-    build: { outDir },
-    preview: { port: 0, host: '127.0.0.1' },
-  });
-  const address = server.httpServer.address();
-  const url = address === null || typeof address === 'string' ? '' : `http://127.0.0.1:${address.port}/`;
+  const site = await serveBuilt();
   mkdirSync(FOLDER, { recursive: true });
   const browser = await chromium.launch({ executablePath, args: ['--no-sandbox'] });
   const wanted = process.argv.slice(2);
   for (const place of Object.keys(SCENES)) {
-    if (wanted.length === 0 || wanted.includes(place)) await take(browser, url, place);
+    if (wanted.length === 0 || wanted.includes(place)) await take(browser, site.url, place);
   }
   await browser.close();
-  await server.close();
-  rmSync(outDir, { recursive: true, force: true });
+  await site.close();
 }
 
 const chromiumPath = findChromium();

@@ -84,6 +84,44 @@ describeInBrowser('The frame', (site) => {
     await opened.close();
   });
 
+  test('saved gain sets keep their notes, say how they differ, come back, and every step can be undone', async () => {
+    const opened = await site.open({ at: '#/carry' });
+    const { page } = opened;
+    const save = async (note: string) => {
+      await page.getByLabel('Note', { exact: true }).fill(note);
+      await page.getByRole('button', { name: 'Save these gains' }).click();
+    };
+    const changeLoop = async (hertz: string) => {
+      await page.keyboard.press('Escape');
+      await page.keyboard.press('Alt+Digit2');
+      const field = page.getByRole('textbox', { name: 'Loop rate' }).first();
+      await field.fill(hertz);
+      await field.press('Enter');
+      await page.keyboard.press('Alt+KeyW');
+    };
+    await page.keyboard.press('Alt+KeyW');
+    await save('as it came');
+    await changeLoop('500');
+    const row = page.locator('dialog tr', { hasText: 'as it came' });
+    expect(await row.innerText()).toMatch(/loop_Hz\s+400 → 500/);
+    await save('faster loop');
+    expect(await page.locator('dialog tr', { hasText: 'faster loop' }).innerText()).toContain('nothing');
+    await opened.shot('work-history');
+    await row.getByRole('button', { name: 'Bring back' }).click();
+    await page.keyboard.press('Escape');
+    const loop = () => page.locator('[data-item="loop"]').innerText();
+    expect(await loop()).toContain('400');
+    // Back through every step to where it began, by the button.
+    const seen: string[] = [];
+    for (let i = 0; i < 4; i++) {
+      await page.getByRole('button', { name: 'Undo' }).click();
+      seen.push(/\d+/.exec((await loop()).replace('Loop', ''))?.[0] ?? '');
+    }
+    expect(seen).toEqual(['500', '500', '400', '400']);
+    expect(await page.getByRole('button', { name: 'Undo' }).isDisabled()).toBe(true);
+    await opened.close();
+  });
+
   test('a wrong file says what is wrong and the old build stays', async () => {
     const opened = await site.open({ at: '#/carry' });
     const { page } = opened;
