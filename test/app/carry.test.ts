@@ -11,6 +11,7 @@ import {
   provenFor,
 } from '../../src/app/places/carry/kept.ts';
 import { windFlights, windProof } from '../../src/carrying/windLimit.ts';
+import { VERSION } from '../../src/flight/record.ts';
 import { InputError } from '../../src/craft/problem.ts';
 import { demoBuild, demoGains, madeResult } from '../carrying/made.ts';
 
@@ -85,7 +86,7 @@ describe('what is kept for the sheet', () => {
   });
 
   const proven = {
-    of: { build, gainsA: others, gainsB: gains, wind: null, seed: 3, version: '0' },
+    of: { build, gainsA: others, gainsB: gains, wind: null, seed: 3, version: VERSION },
     a: { 'gust-front': madeResult('gust-front', false, 3) },
     b: { 'gust-rear': madeResult('gust-rear', true, 3), broken: { trial: 'broken' } },
   };
@@ -100,6 +101,8 @@ describe('what is kept for the sheet', () => {
   test('flights in the wind on the desk in place of the trials’ own do not count', () => {
     const inWind = { ...proven, of: { ...proven.of, wind: { mean_mps: 3 } } };
     expect(provenFor(inWind, build, gains)).toEqual([]);
+    const older = { ...proven, of: { ...proven.of, version: '0.0.1' } };
+    expect(provenFor(older, build, gains)).toEqual([]);
   });
 
   test.each([

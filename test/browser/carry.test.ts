@@ -65,6 +65,16 @@ describeInBrowser('Carry', (site) => {
     await expect
       .poll(() => page.getByRole('button', { name: 'Prove the wind limit' }).isEnabled())
       .toBe(true);
+    // What Prove has flown of the same build and gains is on the sheet too.
+    await page.keyboard.press('Alt+Digit4');
+    await page.getByRole('button', { name: /^Run Doublet, roll, small/ }).click();
+    await page
+      .getByText(/1 of 1 /)
+      .first()
+      .waitFor({ timeout: 60_000 });
+    await page.keyboard.press('Alt+Digit6');
+    await page.getByText('1 of them from Prove').waitFor();
+    await sheet.getByText('Also within their bands (1): Doublet, roll, small.').waitFor();
     await page.waitForSelector('.save-state[data-kind="saved"]');
     expect(await accessibilityFaults(page)).toEqual([]);
     await opened.shot('carry');
@@ -77,7 +87,7 @@ describeInBrowser('Carry', (site) => {
     await page.keyboard.press('Alt+Digit6');
     await page.getByText('Earlier results were of another build').waitFor();
     await sheet.getByText('No trial was run.').waitFor();
-    await page.keyboard.press('Control+KeyZ');
+    await page.getByRole('button', { name: 'Undo' }).click();
     await sheet.getByRole('cell', { name: 'Gust from the front' }).waitFor();
     await opened.close();
   }, 240_000);

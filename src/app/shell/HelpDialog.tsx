@@ -25,7 +25,9 @@ export default function HelpDialog(props: { onClose: () => void }) {
           <li key={step}>{step}</li>
         ))}
       </ol>
-      <GuideButton onClose={props.onClose} />
+      <div class="row">
+        <GuideButton onClose={props.onClose} />
+      </div>
       <h3>{helpTexts.manual}</h3>
       {PLACES.filter((place) => place !== here).map((place) => (
         <details key={place}>

@@ -2,10 +2,8 @@
 import { runTasks, type PoolRun } from '../../../trials/pool.ts';
 import type { TrialTask } from '../../../trials/runTrial.ts';
 import type { TrialResult } from '../../../trials/trial.ts';
-import { webTrialWorker } from '../../../trials/webWorker.ts';
 import type { JobList } from '../../store/jobs.ts';
-
-const MOST_WORKERS = 8;
+import { webWorker, workerCount } from '../prove/browserPool.ts';
 
 export interface SheetFlights {
   /** Results in the order of the tasks, null where there is none; null as a whole when stopped. */
@@ -16,8 +14,7 @@ export interface SheetFlights {
 /** @param label of the job in the top line */
 export function flyForSheet(tasks: readonly TrialTask[], jobs: JobList, label: string): SheetFlights {
   const found = new Array<TrialResult | null>(tasks.length).fill(null);
-  const workers = Math.max(1, Math.min(MOST_WORKERS, navigator.hardwareConcurrency));
-  const run: PoolRun = runTasks(newWorker, workers, {
+  const run: PoolRun = runTasks(webWorker, workerCount(), {
     count: tasks.length,
     taskAt: (index) => tasks[index],
     hear: (index, answer) => {
@@ -28,10 +25,4 @@ export function flyForSheet(tasks: readonly TrialTask[], jobs: JobList, label: s
   const job = jobs.start(label, () => run.cancel());
   const done = run.done.then(({ end }) => (end === 'cancelled' ? null : found)).finally(() => job.end());
   return { done, cancel: () => run.cancel() };
-}
-
-function newWorker() {
-  return webTrialWorker(
-    new Worker(new URL('../prove/trials.worker.ts', import.meta.url), { type: 'module' }),
-  );
 }

@@ -7,7 +7,9 @@ import { QUANTITY_NAMES } from '../../../carrying/assemble.ts';
 import type { WindProof } from '../../../carrying/windLimit.ts';
 import type { Build } from '../../../craft/build.ts';
 import type { Gains } from '../../../craft/gains.ts';
+import { VERSION } from '../../../flight/record.ts';
 import type { TrialResult } from '../../../trials/trial.ts';
+import type { RunOf } from '../prove/kept.ts';
 import { sameJson } from '../../store/document.ts';
 
 const name = z.string().max(200);
@@ -58,9 +60,9 @@ export interface CarrySheet {
   readonly wind: WindProof | null;
 }
 
-/** Says which build and gains results are of. */
+/** Says which build, gains and version of the program results are of. */
 export function keyOf(build: Build, gains: Gains): string {
-  return JSON.stringify([build, gains]);
+  return JSON.stringify([VERSION, build, gains]);
 }
 
 /** Carry's own sheet when it is of this build and gains; else an empty one. */
@@ -82,7 +84,8 @@ const provenOf = z.object({
   gainsA: z.unknown(),
   gainsB: z.unknown(),
   wind: z.null(),
-});
+  version: z.literal(VERSION),
+} satisfies Partial<Record<keyof RunOf, z.ZodType>>);
 const proveSheet = z.object({ of: provenOf, a: z.unknown(), b: z.unknown() });
 
 /** Prove's results that are of this build and these gains, each trial in its own wind. */
