@@ -29,8 +29,7 @@ export const PLACE_HELP: Readonly<Record<PlaceName, PlaceHelp>> = {
       'Accept takes a result into the build; undo takes it out again.',
     ],
     mind: 'Propellers off for everything that needs none. A thrust stand is guarded, bolted down and run from a distance, with eye protection on.',
-    picture:
-      'Measure: worksheets at the left, the fitted quantity and what it means for the craft at the right',
+    picture: 'Measure: the worksheet of a swing test with its cautions and its form',
   },
   shape: {
     what: 'Gains with the loop in view: how much margin each one leaves, how the craft answers a step and a gust, what noise reaches the motors.',
@@ -65,7 +64,7 @@ export const PLACE_HELP: Readonly<Record<PlaceName, PlaceHelp>> = {
       'Spread flies the build as it might be, within what your measurements leave open.',
     ],
     mind: 'A pass is about this build in this wind on this seed. It is not clearance to fly.',
-    picture: 'Prove: the table of trials with bands and scores, a map of derivative gain against its cutoff',
+    picture: 'Prove: the table of trials, what each is for, some with their results',
   },
   match: {
     what: 'Lays the simulation over a log of the real craft and corrects the model from it.',
@@ -75,8 +74,7 @@ export const PLACE_HELP: Readonly<Record<PlaceName, PlaceHelp>> = {
       'Take the corrected build when the difference is believable; then look at the gains again.',
     ],
     mind: 'Excite an axis gently, high enough, in calm air. A log of a smooth hover tells nothing about gain or lag.',
-    picture:
-      'Match: log and simulation over each other, the residual below, identified quantities with confidence',
+    picture: 'Match: the field for a log, and what makes a log worth having',
   },
   carry: {
     what: 'What leaves the screen: the pre-flight sheet, constants in your firmware’s units, build and gains as files or in a link.',
