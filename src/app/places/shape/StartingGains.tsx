@@ -1,5 +1,5 @@
 /** Starting gains by constrained optimisation in the worker, with the published rules beside them. */
-import { useEffect, useRef, useState } from 'preact/hooks';
+import { useEffect, useState } from 'preact/hooks';
 import { AXES, type AxisName } from '../../../craft/gains.ts';
 import type { TrimChoice } from '../../../shaping/axisModel.ts';
 import type { Plant } from '../../../shaping/continuous.ts';
@@ -7,49 +7,43 @@ import {
   amigoGains,
   simcGains,
   type AxisGainsFound,
+  type Loosening,
   type StartingSet,
 } from '../../../shaping/startingGains.ts';
 import { useStore } from '../../store/context.ts';
 import { readable } from '../../store/units.ts';
 import { Button } from '../../widgets/Button.tsx';
-import type { FromShapeWorker, ToShapeWorker } from './shape.worker.ts';
+import { keptShape } from './kept.ts';
+import { LimitFields } from './LimitFields.tsx';
+import { useOneShot } from './oneShot.ts';
 import { shapeTexts as words } from './texts.ts';
-import { useShapeWorker } from './useShapeWorker.ts';
 
 export function StartingGains(props: { trim: TrimChoice; axis: AxisName; plant: Plant }) {
   const store = useStore();
-  const worker = useShapeWorker();
   const [found, setFound] = useState<StartingSet | null>(null);
-  const [busy, setBusy] = useState(false);
-  const id = useRef(0);
-  useEffect(() => setFound(null), [store.craft.value.id, props.trim]);
-  const start = () => {
-    const one = worker.current;
-    if (one === null) return;
-    const job = store.jobs.start(words.starting);
-    const own = ++id.current;
-    setBusy(true);
-    one.onmessage = ({ data }: MessageEvent<FromShapeWorker>) => {
-      if (data.id !== own) return;
-      job.end();
-      setBusy(false);
-      if (data.kind === 'started') setFound(data.found);
-      else if (data.kind === 'failed') store.notices.tell('error', data.reason, { topic: 'shape:start' });
-    };
-    one.postMessage({
-      kind: 'start',
-      id: own,
-      build: store.build.value,
-      gains: store.gains.value,
-      trim: props.trim,
-    } satisfies ToShapeWorker);
-  };
+  const search = useOneShot(words.starting, 'shape:start');
+  const kept = keptShape(store.craft.value.sheets.shape);
+  const limitsKey = JSON.stringify(kept.limits);
+  useEffect(() => setFound(null), [store.craft.value.id, props.trim, limitsKey]);
+  const start = (): void =>
+    search.ask(
+      {
+        kind: 'start',
+        build: store.build.value,
+        gains: store.gains.value,
+        trim: props.trim,
+        limits: kept.limits,
+      },
+      (answer) => {
+        if (answer.kind === 'started') setFound(answer.found);
+      },
+    );
   const gains = store.gains.value;
   const tick_s = 1 / gains.loop_Hz;
   const extra_s = gains.computeDelay_s + store.build.value.gyro.delay_s;
   return (
     <div class="panel">
-      <Button primary disabled={busy} onClick={start}>
+      <Button primary disabled={search.busy} onClick={start}>
         {words.start}
       </Button>
       {found !== null && (
@@ -62,6 +56,7 @@ export function StartingGains(props: { trim: TrimChoice; axis: AxisName; plant: 
               </li>
             ))}
           </ul>
+          <Loosened changes={found.axes[props.axis].loosening} axis={props.axis} />
           <div class="row">
             <Button onClick={() => store.setGains({ ...found.gains, name: gains.name }, words.starting)}>
               {words.useStart}
@@ -77,6 +72,7 @@ export function StartingGains(props: { trim: TrimChoice; axis: AxisName; plant: 
           </div>
         </>
       )}
+      <LimitFields limits={kept.limits} />
       {props.plant.lag_s > 0.001 && (
         <details>
           <summary>{words.rules}</summary>
@@ -85,6 +81,18 @@ export function StartingGains(props: { trim: TrimChoice; axis: AxisName; plant: 
         </details>
       )}
     </div>
+  );
+}
+
+/** What a change of the bench would bring, the best first. */
+function Loosened(props: { changes: readonly Loosening[]; axis: AxisName }) {
+  const worth = props.changes.filter((one) => one.gain_pct >= 1);
+  if (worth.length === 0) return null;
+  return (
+    <p class="small">
+      {words.loosening(props.axis)}{' '}
+      {worth.map((one) => words.loosened(one.change, one.gain_pct.toFixed(0))).join('; ')}.
+    </p>
   );
 }
 

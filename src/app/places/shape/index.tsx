@@ -1,26 +1,30 @@
 /** Shape: the frequency response behind the gains, A over B, with the map, starting gains and firmware units. */
-import { signal } from '@preact/signals';
+import { signal, type Signal } from '@preact/signals';
 import { useMemo, useState } from 'preact/hooks';
 import { AXES, type AxisName, type Gains } from '../../../craft/gains.ts';
 import type { Build } from '../../../craft/build.ts';
 import { axisModels, type AxisModel, type TrimChoice } from '../../../shaping/axisModel.ts';
-import { analyse, type AxisAnalysis } from '../../../shaping/analysis.ts';
-import { loopCurves, type LoopCurves } from '../../../shaping/curves.ts';
-import { rateLoop } from '../../../shaping/rateLoop.ts';
-import { gyroNoise } from '../../../shaping/report.ts';
+import type { AxisAnalysis } from '../../../shaping/analysis.ts';
+import type { LoopCurves } from '../../../shaping/curves.ts';
+import { loopView } from '../../../shaping/loopView.ts';
+import { LEAST_COHERENCE, type SweepCheck, type SweepOptions } from '../../../shaping/sweepCheck.ts';
 import { LinePlot, type PlotSeries } from '../../plots/LinePlot.tsx';
 import { XyPlot } from '../../plots/XyPlot.tsx';
 import { useStore } from '../../store/context.ts';
 import { readable } from '../../store/units.ts';
+import { Button } from '../../widgets/Button.tsx';
 import { NoticeBox } from '../../widgets/Notice.tsx';
 import { Select } from '../../widgets/Select.tsx';
 import { Tabs } from '../../widgets/Tabs.tsx';
 import './shape.css';
 import { FirmwareUnits } from './FirmwareUnits.tsx';
+import { useFlightCheck, type FlightCheck } from './flightCheck.ts';
 import { GainFields } from './GainFields.tsx';
 import { GainMap } from './GainMap.tsx';
+import { Measures } from './Measures.tsx';
 import { StartingGains } from './StartingGains.tsx';
 import { shapeTexts as words } from './texts.ts';
+import { Walk } from './Walk.tsx';
 
 const TRIMS = {
   hover: {},
@@ -31,10 +35,14 @@ const TRIMS = {
 } as const satisfies Record<string, TrimChoice>;
 type TrimName = keyof typeof TRIMS;
 
-interface Side {
-  readonly analysis: AxisAnalysis;
-  readonly curves: LoopCurves;
-}
+/** The check by simulation flies a hover; null: it cannot fly that trim. */
+const FLOWN: Readonly<Record<TrimName, SweepOptions | null>> = {
+  hover: {},
+  forward: null,
+  climb: null,
+  low: { charge: TRIMS.low.charge },
+  released: { payloadReleased: true },
+};
 
 type Models =
   | { readonly kind: 'ready'; readonly models: Record<AxisName, AxisModel> }
@@ -47,16 +55,6 @@ function modelsOf(build: Build, trim: TrimChoice, elevation_m: number): Models {
     if (error instanceof RangeError) return { kind: 'none', reason: error.message };
     throw error;
   }
-}
-
-function sideOf(model: AxisModel, build: Build, gains: Gains, axis: AxisName): Side {
-  const loop = rateLoop(model.measured, gains, axis);
-  const { gyro } = build;
-  const noise = gyroNoise(gyro.noise_dps_per_rtHz, gyro.bandwidth_Hz, gains.loop_Hz);
-  return {
-    analysis: analyse(loop, noise.sigma_dps, noise.correlation),
-    curves: loopCurves(loop, gyro.noise_dps_per_rtHz),
-  };
 }
 
 export default function Shape() {
@@ -98,11 +96,7 @@ export default function Shape() {
             <StartingGains trim={TRIMS[trim]} axis={axis} plant={models.models[axis].plant} />
           </>
         )}
-        <FirmwareUnits />
-        <details class="panel">
-          <summary>{words.walk}</summary>
-          <p>{words.walkText}</p>
-        </details>
+        <FirmwareUnits axis={axis} />
       </section>
       {models.kind === 'ready' && (
         <Plots
@@ -112,6 +106,7 @@ export default function Shape() {
           gains={gains}
           other={other}
           trim={TRIMS[trim]}
+          flown={FLOWN[trim]}
         />
       )}
     </div>
@@ -139,13 +134,15 @@ interface PlotsProps {
   readonly gains: Gains;
   readonly other: Gains | null;
   readonly trim: TrimChoice;
+  readonly flown: SweepOptions | null;
 }
 
 function Plots(props: PlotsProps) {
   const { models, build, axis, gains, other } = props;
-  const a = useMemo(() => sideOf(models[axis], build, gains, axis), [models, build, gains, axis]);
+  const flown = useFlightCheck(build, gains, axis, props.flown);
+  const a = useMemo(() => loopView(models[axis], build, gains, axis), [models, build, gains, axis]);
   const b = useMemo(
-    () => (other === null ? null : sideOf(models[axis], build, other, axis)),
+    () => (other === null ? null : loopView(models[axis], build, other, axis)),
     [models, build, other, axis],
   );
   const cursor = useMemo(() => signal<number | null>(null), []);
@@ -155,8 +152,14 @@ function Plots(props: PlotsProps) {
       ? []
       : [{ label: 'B', axis: 'ink' as const, values: pick(b.curves), x: b.curves.f_Hz, side: 'B' as const }]),
   ];
-  const gainSeries = useMemo(() => series((c) => c.gain_dB), [a, b, axis]);
-  const phaseSeries = useMemo(() => series((c) => c.phase_deg), [a, b, axis]);
+  const gainSeries = useMemo(
+    () => [...series((c) => c.gain_dB), ...measured(flown.check, (check) => check.measured_dB)],
+    [a, b, axis, flown.check],
+  );
+  const phaseSeries = useMemo(
+    () => [...series((c) => c.phase_deg), ...measured(flown.check, (check) => check.measured_deg)],
+    [a, b, axis, flown.check],
+  );
   const sensitivitySeries = useMemo(() => series((c) => c.sensitivity_dB), [a, b, axis]);
   const noiseSeries = useMemo(() => series((c) => c.noise_us_per_rtHz), [a, b, axis]);
   const crossover = a.analysis.margins.crossover_Hz;
@@ -177,12 +180,13 @@ function Plots(props: PlotsProps) {
         <strong>{axis}</strong>: {a.analysis.statement}
       </p>
       <MarginTable a={a.analysis} b={b?.analysis ?? null} />
+      <FlownRow flown={flown} can={props.flown !== null} />
       <div class="shape-grid">
         <LinePlot
           label={words.bodeGain}
           x={a.curves.f_Hz}
           series={gainSeries}
-          xLabel=""
+          xLabel={words.frequency}
           xUnit="Hz"
           yLabel={words.bodeGain}
           yUnit="dB"
@@ -196,7 +200,7 @@ function Plots(props: PlotsProps) {
           label={words.bodePhase}
           x={a.curves.f_Hz}
           series={phaseSeries}
-          xLabel=""
+          xLabel={words.frequency}
           xUnit="Hz"
           yLabel={words.bodePhase}
           yUnit="deg"
@@ -210,7 +214,7 @@ function Plots(props: PlotsProps) {
           label={words.sensitivity}
           x={a.curves.f_Hz}
           series={sensitivitySeries}
-          xLabel=""
+          xLabel={words.frequency}
           xUnit="Hz"
           yLabel={words.sensitivity}
           yUnit="dB"
@@ -222,7 +226,7 @@ function Plots(props: PlotsProps) {
           label={words.noise}
           x={a.curves.f_Hz}
           series={noiseSeries}
-          xLabel=""
+          xLabel={words.frequency}
           xUnit="Hz"
           yLabel={words.noise}
           yUnit="µs/√Hz"
@@ -230,10 +234,59 @@ function Plots(props: PlotsProps) {
           cursor={cursor}
           height={150}
         />
+        {flown.check !== null && <CoherencePlot check={flown.check} cursor={cursor} />}
         <RootPlot a={a.curves} b={b?.curves ?? null} />
         <GainMap build={build} gains={gains} other={other} axis={axis} trim={props.trim} />
+        <Measures build={build} gains={gains} other={other} axis={axis} trim={props.trim} />
       </div>
+      <Walk axis={axis} />
     </div>
+  );
+}
+
+/** What the flight measured, over the computed lines. */
+function measured(check: SweepCheck | null, pick: (check: SweepCheck) => Float64Array): PlotSeries[] {
+  if (check === null) return [];
+  return [{ label: words.flown.label, axis: 'accent', values: pick(check), x: check.f_Hz }];
+}
+
+function FlownRow(props: { flown: FlightCheck; can: boolean }) {
+  const { flown, can } = props;
+  return (
+    <div class="row shape-flown">
+      <Button disabled={flown.busy || !can} title={words.flown.hint} onClick={flown.run}>
+        {words.flown.run}
+      </Button>
+      <span role="status">
+        {!can ? words.flown.only : flown.busy ? `${words.flown.job} …` : (flown.check?.statement ?? '')}
+      </span>
+    </div>
+  );
+}
+
+const COHERENCE_MARKS = [{ label: String(LEAST_COHERENCE), y: LEAST_COHERENCE }];
+
+function CoherencePlot(props: { check: SweepCheck; cursor: Signal<number | null> }) {
+  const { check } = props;
+  const series = useMemo(
+    (): PlotSeries[] => [{ label: words.flown.coherenceShort, axis: 'accent', values: check.coherence }],
+    [check],
+  );
+  return (
+    <LinePlot
+      label={words.flown.coherence}
+      x={check.f_Hz}
+      series={series}
+      xLabel={words.frequency}
+      xUnit="Hz"
+      yLabel={words.flown.coherenceShort}
+      yUnit=""
+      logX
+      yRange={[0, 1]}
+      markers={COHERENCE_MARKS}
+      cursor={props.cursor}
+      height={150}
+    />
   );
 }
 
@@ -288,9 +341,9 @@ function StepPlot(props: { a: LoopCurves; b: LoopCurves | null; axis: AxisName }
       label={words.step}
       x={shown.x}
       series={shown.series}
-      xLabel=""
+      xLabel={words.time}
       xUnit="s"
-      yLabel={words.step}
+      yLabel={words.rate}
       yUnit=""
       markers={markers}
       xRange={[0, Math.min(0.8, shown.x[shown.x.length - 1])]}

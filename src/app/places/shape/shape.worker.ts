@@ -1,12 +1,24 @@
-/** Long work of Shape beside the page: starting gains and the map of two gains, coarse to fine. */
+/**
+ * Long work of Shape beside the page: starting gains, the map of two gains from coarse to fine, the further
+ * measures, the walk's flights and the check by simulation.
+ */
 import type { Build } from '../../../craft/build.ts';
 import type { AxisName, Gains } from '../../../craft/gains.ts';
 import { InputError } from '../../../craft/problem.ts';
 import { analyse } from '../../../shaping/analysis.ts';
 import { axisModels, type TrimChoice } from '../../../shaping/axisModel.ts';
 import { rateLoop } from '../../../shaping/rateLoop.ts';
-import { gyroNoise } from '../../../shaping/report.ts';
-import { startingGains, type StartingSet } from '../../../shaping/startingGains.ts';
+import { gyroNoise, reportForBuild, type ShapeReport } from '../../../shaping/report.ts';
+import { startingGains, type StartingLimits, type StartingSet } from '../../../shaping/startingGains.ts';
+import { sweepMeasure, type SweepCheck, type SweepOptions } from '../../../shaping/sweepCheck.ts';
+import {
+  walkAdvice,
+  walkCandidates,
+  walkResponse,
+  type WalkCandidate,
+  type WalkResponse,
+  type WalkStage,
+} from '../../../shaping/walk.ts';
 import { cellsInOrder } from '../../../trials/sweep.ts';
 
 export type MapKind = 'p-d' | 'd-cutoff' | 'p-loop';
@@ -27,6 +39,31 @@ export type ToShapeWorker =
       readonly build: Build;
       readonly gains: Gains;
       readonly trim: TrimChoice;
+      readonly limits: StartingLimits;
+    }
+  | {
+      readonly kind: 'report';
+      readonly id: number;
+      readonly build: Build;
+      readonly gains: Gains;
+      readonly other: Gains | null;
+      readonly trim: TrimChoice;
+    }
+  | {
+      readonly kind: 'walk';
+      readonly id: number;
+      readonly build: Build;
+      readonly gains: Gains;
+      readonly axis: AxisName;
+      readonly stage: WalkStage;
+    }
+  | {
+      readonly kind: 'sweep';
+      readonly id: number;
+      readonly build: Build;
+      readonly gains: Gains;
+      readonly axis: AxisName;
+      readonly options: SweepOptions;
     }
   | {
       readonly kind: 'map';
@@ -46,7 +83,21 @@ export interface MapCell {
   readonly noise_us: number;
 }
 
+/** One of the walk's flights: what was tried, how it flew, what it asks for. */
+export interface WalkTrial extends WalkCandidate {
+  readonly response: WalkResponse;
+  readonly advice: string;
+}
+
 export type FromShapeWorker =
+  | {
+      readonly kind: 'reported';
+      readonly id: number;
+      readonly a: ShapeReport;
+      readonly b: ShapeReport | null;
+    }
+  | { readonly kind: 'walked'; readonly id: number; readonly trials: readonly WalkTrial[] }
+  | { readonly kind: 'swept'; readonly id: number; readonly check: SweepCheck }
   | { readonly kind: 'started'; readonly id: number; readonly found: StartingSet }
   | { readonly kind: 'failed'; readonly id: number; readonly reason: string }
   | {
@@ -64,8 +115,8 @@ const say = (message: FromShapeWorker): void => self.postMessage(message);
 self.onmessage = ({ data }: MessageEvent<ToShapeWorker>) => {
   newest = data.id;
   try {
-    if (data.kind === 'start') begin(data);
-    else void fillMap(data);
+    if (data.kind === 'map') void fillMap(data);
+    else say(answerTo(data));
   } catch (error) {
     say({ kind: 'failed', id: data.id, reason: reasonOf(error) });
   }
@@ -76,15 +127,41 @@ function reasonOf(error: unknown): string {
   return error instanceof Error ? error.message : String(error);
 }
 
-function begin(data: Extract<ToShapeWorker, { kind: 'start' }>): void {
+function answerTo(data: Exclude<ToShapeWorker, { kind: 'map' }>): FromShapeWorker {
+  const { id, build, gains } = data;
+  switch (data.kind) {
+    case 'start':
+      return { kind: 'started', id, found: startFor(data) };
+    case 'report':
+      return {
+        kind: 'reported',
+        id,
+        a: reportForBuild(build, gains, data.trim),
+        b: data.other === null ? null : reportForBuild(build, data.other, data.trim),
+      };
+    case 'walk':
+      return { kind: 'walked', id, trials: walk(data) };
+    case 'sweep':
+      return { kind: 'swept', id, check: sweepMeasure(build, gains, data.axis, data.options) };
+  }
+}
+
+function startFor(data: Extract<ToShapeWorker, { kind: 'start' }>): StartingSet {
   const models = axisModels(data.build, data.trim);
   const { gyro } = data.build;
-  const found = startingGains(
+  return startingGains(
     { roll: models.roll.measured, pitch: models.pitch.measured, yaw: models.yaw.measured },
     data.gains,
     gyroNoise(gyro.noise_dps_per_rtHz, gyro.bandwidth_Hz, data.gains.loop_Hz),
+    data.limits,
   );
-  say({ kind: 'started', id: data.id, found });
+}
+
+function walk(data: Extract<ToShapeWorker, { kind: 'walk' }>): WalkTrial[] {
+  return walkCandidates(data.stage, data.gains, data.axis).map((candidate) => {
+    const response = walkResponse(data.build, candidate.gains, data.axis);
+    return { ...candidate, response, advice: walkAdvice(data.stage, response) };
+  });
 }
 
 function gainsAt(gains: Gains, task: MapTask, x: number, y: number): Gains {
