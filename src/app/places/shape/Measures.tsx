@@ -57,6 +57,8 @@ const ROWS: readonly Row[] = [
   { ...words.gainCrossings, unit: 'Hz', pick: (r) => r.gainCrossings_Hz, reason: 'crossover_Hz' },
   { ...words.phaseCrossings, unit: 'Hz', pick: (r) => r.phaseCrossings_Hz, reason: 'gainMargin_dB' },
 ];
+const HALF = Math.ceil(ROWS.length / 2);
+const PARTS = [ROWS.slice(0, HALF), ROWS.slice(HALF)];
 
 export function Measures(props: {
   build: Build;
@@ -84,32 +86,69 @@ export function Measures(props: {
     }, WAIT_MS);
     return () => clearTimeout(timer);
   }, [build, gains, other, trim]);
+  const a = found?.a[axis] ?? null;
+  const b = found?.b?.[axis] ?? null;
   return (
-    <section class="shape-measures" aria-label={words.label}>
+    <section class="shape-measures shape-full" aria-label={words.label}>
       <h3>{words.label}</h3>
       {failed !== null && <p class="bad">{failed}</p>}
-      <table class="small">
-        <thead>
-          <tr>
-            <th scope="col" />
-            <th scope="col">A</th>
-            {other !== null && <th scope="col">B</th>}
-            <th scope="col" />
-          </tr>
-        </thead>
-        <tbody>
-          {ROWS.map((row) => (
-            <tr key={row.label} title={row.hint}>
-              <th scope="row">{row.label}</th>
-              <Cell row={row} report={found?.a[axis] ?? null} />
-              {other !== null && <Cell row={row} report={found?.b?.[axis] ?? null} />}
-              <td class="unit">{row.unit}</td>
-            </tr>
-          ))}
-        </tbody>
-      </table>
+      <div class="shape-measures-parts">
+        {PARTS.map((rows) => (
+          <Part key={rows[0].label} rows={rows} a={a} b={b} two={other !== null} />
+        ))}
+      </div>
+      {reasonsOf(a).map((why) => (
+        <p class="small faint" key={why}>
+          {why}
+        </p>
+      ))}
     </section>
   );
+}
+
+function Part(props: { rows: readonly Row[]; a: AxisReport | null; b: AxisReport | null; two: boolean }) {
+  return (
+    <table class="small">
+      <thead>
+        <tr>
+          <th scope="col">{words.quantity}</th>
+          <th scope="col">A</th>
+          {props.two && <th scope="col">B</th>}
+          <th scope="col">{words.unit}</th>
+        </tr>
+      </thead>
+      <tbody>
+        {props.rows.map((row) => (
+          <tr key={row.label} title={row.hint}>
+            <th scope="row">{row.label}</th>
+            <Cell row={row} report={props.a} />
+            {props.two && <Cell row={row} report={props.b} />}
+            <td class="unit">{row.unit}</td>
+          </tr>
+        ))}
+      </tbody>
+    </table>
+  );
+}
+
+const absent = (value: Value | readonly number[]): boolean =>
+  Array.isArray(value) ? value.length === 0 : value == null;
+
+function reasonFor(row: Row, report: AxisReport): string {
+  const own = row.reason === 'handling' ? report.handling?.reason : null;
+  return own ?? report.reasons[row.reason] ?? words.none;
+}
+
+/** Why measures of set A are not there, each reason once with the measures it holds for. */
+function reasonsOf(report: AxisReport | null): string[] {
+  if (report === null) return [];
+  const held = new Map<string, string[]>();
+  for (const row of ROWS) {
+    if (!absent(row.pick(report))) continue;
+    const why = reasonFor(row, report);
+    held.set(why, [...(held.get(why) ?? []), row.label]);
+  }
+  return [...held].map(([why, rows]) => words.absent(rows.join(', '), why));
 }
 
 /** A number, or a dash with the reason behind it. */
@@ -119,8 +158,7 @@ function Cell(props: { row: Row; report: AxisReport | null }) {
   const value = row.pick(report);
   if (typeof value === 'number') return <td>{three(value)}</td>;
   if (Array.isArray(value) && value.length > 0) return <td>{value.map(three).join(', ')}</td>;
-  const why = report.handling?.reason ?? report.reasons[row.reason] ?? words.none;
-  return <td title={why}>—</td>;
+  return <td title={reasonFor(row, report)}>—</td>;
 }
 
 const three = (value: number): string => String(Number(value.toPrecision(3))).replace('-', '−');

@@ -162,6 +162,7 @@ function Plots(props: PlotsProps) {
   );
   const sensitivitySeries = useMemo(() => series((c) => c.sensitivity_dB), [a, b, axis]);
   const noiseSeries = useMemo(() => series((c) => c.noise_us_per_rtHz), [a, b, axis]);
+  const range = useMemo(() => rangeOf(a.curves, b?.curves ?? null), [a, b]);
   const crossover = a.analysis.margins.crossover_Hz;
   const markers = useMemo(
     () => [
@@ -191,6 +192,7 @@ function Plots(props: PlotsProps) {
           yLabel={words.bodeGain}
           yUnit="dB"
           logX
+          xRange={range}
           markers={markers}
           cursor={cursor}
           height={170}
@@ -205,6 +207,7 @@ function Plots(props: PlotsProps) {
           yLabel={words.bodePhase}
           yUnit="deg"
           logX
+          xRange={range}
           markers={phaseMarkers}
           cursor={cursor}
           height={170}
@@ -219,6 +222,7 @@ function Plots(props: PlotsProps) {
           yLabel={words.sensitivity}
           yUnit="dB"
           logX
+          xRange={range}
           cursor={cursor}
           height={150}
         />
@@ -231,17 +235,24 @@ function Plots(props: PlotsProps) {
           yLabel={words.noise}
           yUnit="µs/√Hz"
           logX
+          xRange={range}
           cursor={cursor}
           height={150}
         />
-        {flown.check !== null && <CoherencePlot check={flown.check} cursor={cursor} />}
         <RootPlot a={a.curves} b={b?.curves ?? null} />
         <GainMap build={build} gains={gains} other={other} axis={axis} trim={props.trim} />
+        {flown.check !== null && <CoherencePlot check={flown.check} range={range} cursor={cursor} />}
         <Measures build={build} gains={gains} other={other} axis={axis} trim={props.trim} />
       </div>
       <Walk axis={axis} />
     </div>
   );
+}
+
+/** Up to half the faster loop's rate: beyond it there is nothing to draw. */
+function rangeOf(a: LoopCurves, b: LoopCurves | null): readonly [number, number] {
+  const last = (curves: LoopCurves) => curves.f_Hz[curves.f_Hz.length - 1];
+  return [a.f_Hz[0], Math.max(last(a), b === null ? 0 : last(b))];
 }
 
 /** What the flight measured, over the computed lines. */
@@ -266,27 +277,34 @@ function FlownRow(props: { flown: FlightCheck; can: boolean }) {
 
 const COHERENCE_MARKS = [{ label: String(LEAST_COHERENCE), y: LEAST_COHERENCE }];
 
-function CoherencePlot(props: { check: SweepCheck; cursor: Signal<number | null> }) {
+function CoherencePlot(props: {
+  check: SweepCheck;
+  range: readonly [number, number];
+  cursor: Signal<number | null>;
+}) {
   const { check } = props;
   const series = useMemo(
     (): PlotSeries[] => [{ label: words.flown.coherenceShort, axis: 'accent', values: check.coherence }],
     [check],
   );
   return (
-    <LinePlot
-      label={words.flown.coherence}
-      x={check.f_Hz}
-      series={series}
-      xLabel={words.frequency}
-      xUnit="Hz"
-      yLabel={words.flown.coherenceShort}
-      yUnit=""
-      logX
-      yRange={[0, 1]}
-      markers={COHERENCE_MARKS}
-      cursor={props.cursor}
-      height={150}
-    />
+    <div class="shape-full">
+      <LinePlot
+        label={words.flown.coherence}
+        x={check.f_Hz}
+        series={series}
+        xLabel={words.frequency}
+        xUnit="Hz"
+        yLabel={words.flown.coherenceShort}
+        yUnit=""
+        logX
+        xRange={props.range}
+        yRange={[0, 1]}
+        markers={COHERENCE_MARKS}
+        cursor={props.cursor}
+        height={130}
+      />
+    </div>
   );
 }
 

@@ -120,7 +120,10 @@ export const shapeTexts = {
   rate: 'rate over setpoint',
   measures: {
     label: 'Further measures',
-    none: 'not there',
+    none: 'there is none',
+    quantity: 'measure',
+    unit: 'unit',
+    absent: (rows: string, why: string) => `— ${rows}: ${why}.`,
     bandwidth: {
       label: 'bandwidth',
       hint: 'Attitude over rate setpoint: −135° or 6 dB, the lower (ADS-33E-PRF 3.3.2.1)',
