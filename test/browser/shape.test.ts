@@ -11,6 +11,17 @@ async function field(page: Page, label: string, value: string): Promise<void> {
   await input.press('Enter');
 }
 
+/** Pixels by which a part of the place is wider than its room. */
+function sideways(page: Page): Promise<number> {
+  return page.evaluate(() =>
+    Math.max(
+      ...[...document.querySelectorAll('.shape, .shape-side, .shape-plots')].map(
+        (part) => part.scrollWidth - part.clientWidth,
+      ),
+    ),
+  );
+}
+
 describeInBrowser('Shape', (site) => {
   test('P, then I, then D: each stage is flown, a row is taken, undo brings the old gains back', async () => {
     const opened = await site.open({ at: '#/shape', width: 1440, height: 900 });
@@ -29,6 +40,7 @@ describeInBrowser('Shape', (site) => {
     await rows.nth(1).getByRole('button', { name: 'Take, on to D' }).click();
     await page.locator('.shape-walk tbody th', { hasText: /^D / }).first().waitFor({ timeout: FLOWN_MS });
     await page.locator('.shape-walk').scrollIntoViewIfNeeded();
+    expect(await sideways(page)).toBeLessThanOrEqual(0);
     await opened.shot('shape-walk');
     expect(await accessibilityFaults(page)).toEqual([]);
     for (let k = 0; k < 2; k++) await page.getByRole('button', { name: 'Undo' }).click();
@@ -66,6 +78,8 @@ describeInBrowser('Shape', (site) => {
       .toBeGreaterThan(1);
     expect(Number(await cell('self-levelling: phase margin').innerText())).toBeGreaterThan(20);
     expect(Number(await cell('heat by noise, a motor').innerText())).toBeGreaterThan(0);
+    expect(await sideways(page)).toBeLessThanOrEqual(0);
+    await opened.shot('shape-top-dark');
     await page.locator('.shape-measures').scrollIntoViewIfNeeded();
     await opened.shot('shape-measures-dark');
     await page.getByRole('tab', { name: 'yaw' }).click();
@@ -120,7 +134,10 @@ describeInBrowser('Shape', (site) => {
     const own = page.getByRole('textbox', { name: 'P', exact: true }).first();
     await expect.poll(async () => Number(await own.inputValue())).toBeCloseTo(100 / (180 / Math.PI), 4);
     expect(Number(await inUnits.inputValue())).toBe(100);
+    expect(await sideways(page)).toBeLessThanOrEqual(0);
     await opened.shot('shape-own');
+    await page.getByText(/Found in simulation: no clearance/).scrollIntoViewIfNeeded();
+    await opened.shot('shape-own-foot');
     expect(await accessibilityFaults(page)).toEqual([]);
     await field(page, 'P', '0');
     await page.getByText(/an integral time needs P above 0/).waitFor();

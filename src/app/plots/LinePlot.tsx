@@ -19,6 +19,8 @@ export interface PlotSeries {
   readonly x?: Numbers;
   /** B is drawn thinner and lighter under A. */
   readonly side?: 'A' | 'B';
+  /** Measured: dots, without a line between them. */
+  readonly dots?: boolean;
   /** Shown in the read-out; default 4 significant digits. */
   readonly digits?: number;
 }
@@ -73,7 +75,7 @@ export function LinePlot(props: LinePlotProps) {
   latest.current = props;
   const [index, setIndex] = useState<number | null>(null);
   const shape = JSON.stringify([
-    props.series.map(({ label, axis, side }) => [label, axis, side]),
+    props.series.map(({ label, axis, side, dots }) => [label, axis, side, dots]),
     [
       props.logX,
       props.logY,
@@ -269,11 +271,14 @@ function makePlot(
         ...props.series.map((one): uPlot.Series => ({
           label: one.label,
           stroke: colourOf(one.axis, palette),
-          width: one.side === 'B' ? 1 : 1.75,
+          width: one.dots === true ? 0 : one.side === 'B' ? 1 : 1.75,
           alpha: one.side === 'B' ? 0.8 : 1,
           dash: [...dashOf(one.axis)],
           spanGaps: true,
-          points: { show: false },
+          points:
+            one.dots === true
+              ? { show: true, size: 4.5, fill: colourOf(one.axis, palette) }
+              : { show: false },
         })),
       ],
       hooks: {

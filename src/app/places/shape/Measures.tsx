@@ -21,10 +21,15 @@ interface Row {
   readonly reason: string;
 }
 
-const ms = (value: Value): Value => (value == null ? value : value * 1000);
+const thousandfold = (value: Value): Value => (value == null ? value : value * 1000);
 const ROWS: readonly Row[] = [
   { ...words.bandwidth, unit: 'Hz', pick: (r) => r.handling?.bandwidth_Hz, reason: 'handling' },
-  { ...words.phaseDelay, unit: 'ms', pick: (r) => ms(r.handling?.phaseDelay_s), reason: 'handling' },
+  {
+    ...words.phaseDelay,
+    unit: 'ms',
+    pick: (r) => thousandfold(r.handling?.phaseDelay_s),
+    reason: 'handling',
+  },
   {
     ...words.rejection,
     unit: 'Hz',
@@ -39,7 +44,7 @@ const ROWS: readonly Row[] = [
   },
   { ...words.pushRate, unit: 'deg/s', pick: (r) => r.push?.peakRate_dps, reason: 'push' },
   { ...words.pushAngle, unit: 'deg', pick: (r) => r.push?.lastingAngle_deg, reason: 'push' },
-  { ...words.heat, unit: 'W', pick: (r) => r.noiseHeat_W, reason: 'noiseHeat_W' },
+  { ...words.heat, unit: 'mW', pick: (r) => thousandfold(r.noiseHeat_W), reason: 'noiseHeat_W' },
   { ...words.levelledGain, unit: 'dB', pick: (r) => r.levelled?.gainMarginAtMotors_dB, reason: 'levelled' },
   {
     ...words.levelledPhase,
@@ -53,7 +58,12 @@ const ROWS: readonly Row[] = [
     pick: (r) => r.levelled?.delayMarginAtMotors_ms,
     reason: 'levelled',
   },
-  { ...words.levelledRise, unit: 'ms', pick: (r) => ms(r.levelled?.step.rise_s), reason: 'levelled' },
+  {
+    ...words.levelledRise,
+    unit: 'ms',
+    pick: (r) => thousandfold(r.levelled?.step.rise_s),
+    reason: 'levelled',
+  },
   { ...words.gainCrossings, unit: 'Hz', pick: (r) => r.gainCrossings_Hz, reason: 'crossover_Hz' },
   { ...words.phaseCrossings, unit: 'Hz', pick: (r) => r.phaseCrossings_Hz, reason: 'gainMargin_dB' },
 ];

@@ -258,7 +258,7 @@ function rangeOf(a: LoopCurves, b: LoopCurves | null): readonly [number, number]
 /** What the flight measured, over the computed lines. */
 function measured(check: SweepCheck | null, pick: (check: SweepCheck) => Float64Array): PlotSeries[] {
   if (check === null) return [];
-  return [{ label: words.flown.label, axis: 'accent', values: pick(check), x: check.f_Hz }];
+  return [{ label: words.flown.label, axis: 'accent', values: pick(check), x: check.f_Hz, dots: true }];
 }
 
 function FlownRow(props: { flown: FlightCheck; can: boolean }) {
@@ -284,7 +284,9 @@ function CoherencePlot(props: {
 }) {
   const { check } = props;
   const series = useMemo(
-    (): PlotSeries[] => [{ label: words.flown.coherenceShort, axis: 'accent', values: check.coherence }],
+    (): PlotSeries[] => [
+      { label: words.flown.coherenceShort, axis: 'accent', values: check.coherence, dots: true },
+    ],
     [check],
   );
   return (
@@ -389,8 +391,8 @@ function RootPlot(props: { a: LoopCurves; b: LoopCurves | null }) {
     <XyPlot
       label={words.roots}
       curves={[]}
-      x={{ low: -1.1, high: 1.1, label: words.roots, unit: '' }}
-      y={{ low: -1.1, high: 1.1, label: '', unit: '' }}
+      x={{ low: -1.3, high: 1.3, label: words.roots, unit: '' }}
+      y={{ low: -1.3, high: 1.3, label: '', unit: '' }}
       equalScales
       circles={UNIT_CIRCLE}
       points={points}

@@ -15,7 +15,7 @@ export const shapeTexts = {
   useStart: 'Take them',
   compareStart: 'Put them in B',
   limitedBy: (axis: string, active: string, loosened: string) =>
-    `${axis}: limited by ${active}; ${loosened} would loosen it.`,
+    `${axis}: limited by ${active}. Loosened by ${loosened}.`,
   rules: 'Published rules, same plant',
   simc: 'SIMC (Skogestad 2003)',
   amigo: 'AMIGO (Åström & Hägglund 2006)',
