@@ -112,11 +112,14 @@ function Exports(props: { convention: Convention }) {
     setSaid(words.copied);
   };
   const rates = [gains.loop_Hz / 2, gains.loop_Hz * 2].filter((rate) => rate >= 50 && rate <= 8000);
+  const changes = sameTogether(
+    rates.map((rate) => [whatChangesWithRate(convention, gains.loop_Hz, rate).join('; '), rate]),
+  );
   return (
     <>
-      {rates.map((rate) => (
-        <p class="small" key={rate}>
-          {words.rateChange(String(rate))} {whatChangesWithRate(convention, gains.loop_Hz, rate).join('; ')}
+      {changes.map(([what, at]) => (
+        <p class="small" key={what}>
+          {words.rateChange(at.join(words.or))} {what}
         </p>
       ))}
       <div class="row">
@@ -131,4 +134,11 @@ function Exports(props: { convention: Convention }) {
       <p class="small faint">{words.allAxes(AXES.join(', '))}</p>
     </>
   );
+}
+
+/** What holds for several rates is said once. */
+function sameTogether(said: readonly (readonly [string, number])[]): [string, number[]][] {
+  const rates = new Map<string, number[]>();
+  for (const [what, rate] of said) rates.set(what, [...(rates.get(what) ?? []), rate]);
+  return [...rates];
 }

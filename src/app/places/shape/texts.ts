@@ -63,6 +63,7 @@ export const shapeTexts = {
   conventionChoice: 'Convention',
   exportAs: 'Copy as',
   copied: 'Copied.',
+  or: ' or ',
   rateChange: (to: string) => `At ${to} Hz instead:`,
   caution:
     'Found in simulation: no clearance to fly. Propellers off for the first power-up; restrained first hover.',
