@@ -65,7 +65,7 @@ describeInBrowser('Shape', (site) => {
     await opened.close();
   });
 
-  test('further measures come for A and B, with both loops closed; yaw says why it has none', async () => {
+  test('further measures come, with both loops closed too; yaw says why it has none', async () => {
     const opened = await site.open({ at: '#/shape', width: 1024, height: 768, theme: 'dark' });
     const { page } = opened;
     const cell = (name: string) =>
