@@ -2,6 +2,7 @@
 import type { Build } from '../../../craft/build.ts';
 import { useStore } from '../../store/context.ts';
 import { NumberField } from '../../widgets/NumberField.tsx';
+import { forgetKnown } from './accept.ts';
 import { measureTexts as words } from './texts.ts';
 
 type Group = keyof typeof words.groups;
@@ -20,6 +21,17 @@ const f = (path: string, label: string, unit: string, min: number, max: number):
   min,
   max,
 });
+
+/** Fields whose measured uncertainty is kept with the craft, by the name of the quantity. */
+const KNOWN_AS: Readonly<Record<string, string>> = {
+  'airframe.mass_kg': 'all-up mass',
+  'airframe.inertia_kgm2.xx': 'inertia roll',
+  'airframe.inertia_kgm2.yy': 'inertia pitch',
+  'airframe.inertia_kgm2.zz': 'inertia yaw',
+  'propeller.thrustCoefficient': 'thrust coefficient',
+  'propeller.powerCoefficient': 'power coefficient',
+  'gyro.noise_dps_per_rtHz': 'gyro noise',
+};
 
 const FIELDS: Readonly<Record<Group, readonly Field[]>> = {
   airframe: [
@@ -107,6 +119,9 @@ export function BuildFields() {
                   const problem = store.setBuild((now) => written(now, field.path, next), field.label, {
                     quiet: true,
                   })[0];
+                  const quantity = KNOWN_AS[field.path.join('.')];
+                  if (problem === undefined && quantity !== undefined)
+                    forgetKnown(store, quantity, field.label);
                   return problem === undefined ? null : `${problem.path}: ${problem.allowed}`;
                 }}
               />
