@@ -3,7 +3,34 @@ import { tmpdir } from 'node:os';
 import path from 'node:path';
 import type { Page } from 'playwright-core';
 import { afterAll, beforeAll, expect, test } from 'vitest';
+import { RandomStream } from '../../src/math/random.ts';
 import { accessibilityFaults, describeInBrowser } from './harness.ts';
+
+/** A speed that goes from 3000 to 6000 rev/min and back with 45 and 70 ms of lag, in closed form; 1 kHz. */
+function spinupCsv(): string {
+  const lines = ['t_s,rpm'];
+  for (let i = 0; i < 2000; i++) {
+    const t = i / 1000;
+    const up = 6000 - 3000 * Math.exp(-Math.max(0, t - 0.4) / 0.045);
+    const speed = t < 0.4 ? 3000 : t < 1.2 ? up : 3000 + 3000 * Math.exp(-(t - 1.2) / 0.07);
+    lines.push(`${t.toFixed(3)},${(speed + 15 * Math.sin(41 * i * i)).toFixed(1)}`);
+  }
+  return `${lines.join('\n')}\n`;
+}
+
+/** Noise, a line at 70 Hz and its second at 140 Hz, as of two blades at 4200 rev/min; 500 Hz, 60 s. */
+function stillCsv(): string {
+  const lines = ['t_s,gyro_roll_dps,gyro_pitch_dps,gyro_yaw_dps'];
+  const random = new RandomStream(5, 'still');
+  for (let i = 0; i < 30_000; i++) {
+    const t = i / 500;
+    const line = 0.8 * Math.sin(2 * Math.PI * 70 * t) + 0.4 * Math.sin(2 * Math.PI * 140 * t);
+    lines.push(
+      [t, ...[1, 1, 1].map(() => line + 0.1 * random.gaussian())].map((v) => v.toFixed(4)).join(','),
+    );
+  }
+  return `${lines.join('\n')}\n`;
+}
 
 let folder = '';
 const file = (name: string) => path.join(folder, name);
@@ -25,6 +52,8 @@ function standCsv(): string {
 beforeAll(() => {
   folder = mkdtempSync(path.join(tmpdir(), 'gustbench-measure-'));
   writeFileSync(file('stand.csv'), standCsv());
+  writeFileSync(file('spinup.csv'), spinupCsv());
+  writeFileSync(file('still.csv'), stillCsv());
   writeFileSync(file('junk.csv'), Buffer.from([0x50, 0x4b, 0, 0, 1, 2, 3, 255, 0, 17]));
   // Sparse: no room on the disk.
   writeFileSync(file('huge.csv'), 'rpm,thrust (g)\n');
@@ -162,4 +191,26 @@ describeInBrowser('Measure', (site) => {
     await page.getByRole('button', { name: /^Undo/ }).click();
     await opened.close();
   }, 120_000);
+
+  test('a spin-up is drawn with its fit, a gyro record with spectrum and Allan deviation', async () => {
+    const opened = await site.open({ at: '#/measure', width: 1024, height: 768, theme: 'dark' });
+    const { page } = opened;
+    const drop = (name: string) => page.locator('.measure input[type="file"]').setInputFiles(file(name));
+    await tab(page, 'Spin-up');
+    await drop('spinup.csv');
+    const lag = page.getByRole('row', { name: /^lag / }).first();
+    await lag.waitFor();
+    await expect.poll(async () => Number(await lag.locator('td b').innerText())).toBeCloseTo(0.045, 2);
+    await page.getByText('Speed over time, spinup.csv').first().waitFor();
+    await opened.shot('measure-spinup-dark');
+    await tab(page, 'Gyro at rest and idle');
+    await drop('still.csv');
+    await page.getByText('Allan deviation', { exact: true }).first().waitFor();
+    await page.getByText('Gyro noise density; rotor orders marked').first().waitFor();
+    expect(await accessibilityFaults(page)).toEqual([]);
+    await page.locator('.measure figure').first().scrollIntoViewIfNeeded();
+    await opened.shot('measure-still-dark');
+    expect(await page.locator('.measure').innerText()).not.toMatch(/NaN/);
+    await opened.close();
+  }, 100_000);
 });

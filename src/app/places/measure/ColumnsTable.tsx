@@ -4,7 +4,8 @@ import type { ColumnChoice, ColumnKey, ColumnMapping } from '../../../measuring/
 import { DIMENSIONS, type Quantity } from '../../../measuring/heads.ts';
 import { unitsOf } from '../../../measuring/units.ts';
 import { Button } from '../../widgets/Button.tsx';
-import type { BenchKind, Looked } from './bench.worker.ts';
+import type { BenchKind } from './kinds.ts';
+import type { Looked } from './bench.worker.ts';
 import { KEYS_OF } from './columnMemory.ts';
 import { measureTexts } from './texts.ts';
 

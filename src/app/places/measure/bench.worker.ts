@@ -15,8 +15,7 @@ import { analyseStill, joinStill } from '../../../measuring/still.ts';
 import { analyseSwing, joinSwings } from '../../../measuring/swing.ts';
 import { readSwing } from '../../../measuring/swingFile.ts';
 import { KEYS_OF, shapeOf, type RememberedShape } from './columnMemory.ts';
-
-export type BenchKind = 'swing' | 'stand' | 'spinup' | 'still';
+import type { BenchKind } from './kinds.ts';
 
 /** What the four benches give. */
 export type BenchResult = Extract<Measurement, { measurement: BenchKind }>;

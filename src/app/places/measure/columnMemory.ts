@@ -1,7 +1,7 @@
 /** Corrected column mappings, kept per file shape: files with the same heads in the same order have one shape. */
 import type { ColumnKey, ColumnMapping } from '../../../measuring/columns.ts';
 import type { Store } from '../../store/store.ts';
-import type { BenchKind } from './bench.worker.ts';
+import type { BenchKind } from './kinds.ts';
 
 /** Quantities a bench takes from its table. */
 export const KEYS_OF: Readonly<Record<Exclude<BenchKind, 'swing'>, readonly ColumnKey[]>> = {

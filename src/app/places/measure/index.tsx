@@ -5,7 +5,7 @@ import { Button } from '../../widgets/Button.tsx';
 import { Tabs } from '../../widgets/Tabs.tsx';
 import { BalanceForm } from './BalanceForm.tsx';
 import { Bench } from './Bench.tsx';
-import type { BenchKind } from './bench.worker.ts';
+import type { BenchKind } from './kinds.ts';
 import { BuildFields } from './BuildFields.tsx';
 import './measure.css';
 import { PartsForm } from './PartsForm.tsx';

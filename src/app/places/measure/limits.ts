@@ -1,5 +1,5 @@
 /** How large and how many files a bench takes; refused before anything of them is read. */
-import type { BenchKind } from './bench.worker.ts';
+import type { BenchKind } from './kinds.ts';
 import { measureTexts as words } from './texts.ts';
 
 /** Bytes of all files together. A gyro at rest for ten minutes at 2 kHz has about 100 MB. */

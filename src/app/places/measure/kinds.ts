@@ -1,0 +1,2 @@
+/** What is measured from files. */
+export type BenchKind = 'swing' | 'stand' | 'spinup' | 'still';
