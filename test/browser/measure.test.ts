@@ -206,7 +206,7 @@ describeInBrowser('Measure', (site) => {
     await tab(page, 'Gyro at rest and idle');
     await drop('still.csv');
     await page.getByText('Allan deviation', { exact: true }).first().waitFor();
-    await page.getByText('Gyro noise density; rotor orders marked').first().waitFor();
+    await page.getByText('Gyro noise density, turns of the rotor marked').first().waitFor();
     expect(await accessibilityFaults(page)).toEqual([]);
     await page.locator('.measure figure').first().scrollIntoViewIfNeeded();
     await opened.shot('measure-still-dark');

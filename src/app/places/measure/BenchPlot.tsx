@@ -123,12 +123,14 @@ function stillPlots(still: StillResult): LinePlotProps[] {
   const plots: LinePlotProps[] = [
     {
       label: words.still,
-      x: first.spectrum.frequency_Hz,
+      // From the second bin on: the first is 0 Hz and has no place on a logarithmic axis.
+      x: first.spectrum.frequency_Hz.subarray(1),
       series: axes.map(({ axis, spectrum }) => ({
         label: axis,
         axis,
-        values: spectrum.density,
-        x: spectrum.frequency_Hz,
+        // The spectrum is one of power, unit² per Hz.
+        values: spectrum.density.subarray(1).map(Math.sqrt),
+        x: spectrum.frequency_Hz.subarray(1),
       })),
       xLabel: words.frequency,
       xUnit: 'Hz',

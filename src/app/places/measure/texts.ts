@@ -50,7 +50,7 @@ export const measureTexts = {
     `${size.toFixed(0)} MB together; allowed: up to ${most} MB here. Take fewer files at once.`,
   plots: {
     stand: 'Thrust over speed',
-    still: 'Gyro noise density; rotor orders marked',
+    still: 'Gyro noise density, turns of the rotor marked',
     allan: 'Allan deviation',
     spinup: (file: string) => `Speed over time, ${file}`,
     used: 'used',
@@ -65,7 +65,7 @@ export const measureTexts = {
     averaging: 'averaging time',
     deviation: 'deviation',
     row: (row: number) => `row ${row}`,
-    order: (order: number) => `${order} per turn`,
+    order: (order: number) => `${order}×`,
     noOutliers: 'No row was left out of the fit.',
     leftOut: (count: number) =>
       count === 1 ? 'One row was left out of the fit:' : `${count} rows were left out of the fit:`,
