@@ -8,7 +8,6 @@ import { InputError } from '../craft/problem.ts';
 import { answerTask, type TaskAnswer, type TaskMessage } from './protocol.ts';
 import type { TrialTask } from './runTrial.ts';
 
-export { answerTask } from './protocol.ts';
 export type { TaskAnswer, TaskMessage } from './protocol.ts';
 
 /** The pool's end of the line to a worker. */

@@ -163,6 +163,15 @@ describeInBrowser('Prove', (site) => {
     await page.waitForTimeout(600);
     await page.goto(`${page.url().split('#')[0]}#/prove`);
     await expect.poll(() => cellsDone(page), { timeout: 60_000 }).toBeGreaterThan(60);
+    // Each layer is read out in its own unit.
+    const map = page.locator('.plot-body.map canvas');
+    const readOut = async () => {
+      await map.hover({ position: { x: 200, y: 150 } });
+      return page.locator('.prove-map-main').innerText();
+    };
+    await expect.poll(readOut).toMatch(/gust excursion [\d.]+ deg\/s(?! rms)/);
+    await page.getByLabel('Layer').selectOption('motor activity');
+    await expect.poll(readOut).toMatch(/motor activity [\d.]+ µs rms/);
     await opened.shot('prove-map-dark');
     await page.getByRole('button', { name: 'Stop', exact: true }).last().click();
     await page.getByText(/a worker stopped and was replaced/).waitFor();
