@@ -466,6 +466,11 @@ function motorOf(
   return motor;
 }
 
+/** Never "-0.00". */
+function twoPlaces(value: number): string {
+  return (Math.round(100 * value) / 100 + 0).toFixed(2);
+}
+
 function quantitiesOf(
   thrust: CoefficientFit,
   power: CoefficientFit | null,
@@ -478,7 +483,7 @@ function quantitiesOf(
     thrustCoefficient: quantified(estimate, loopGainSentence('The thrust coefficient', estimate)),
     thrustExponent: quantified(
       { value: thrust.exponent, sigma: thrust.exponentSigma, unit: '1' },
-      `C_T goes with speed to the power ${thrust.exponent.toFixed(2)}: with a constant the plant gain at full throttle and at idle would be wrong by that much, so the table is used.`,
+      `C_T goes with speed to the power ${twoPlaces(thrust.exponent)}: with a constant the plant gain at full throttle and at idle would be wrong by that much, so the table is used.`,
     ),
   };
   if (power !== null) {

@@ -61,6 +61,7 @@ describeInBrowser('The frame', (site) => {
     await page.reload();
     await page.waitForSelector('.frame');
     expect(await page.title()).toContain('Shape');
+    expect(await page.locator('.save-state').innerText(), 'nothing is unwritten').toBe('saved');
     expect(await page.locator('#top-craft option:checked').innerText()).toBe('Wren');
     expect(await page.locator('[data-item="gains"] option').count()).toBe(2);
     expect(await page.evaluate(() => document.documentElement.dataset.theme)).toBe('dark');

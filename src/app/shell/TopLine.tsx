@@ -159,7 +159,7 @@ function SaveItem() {
     <span
       class="save-state"
       data-kind={state.kind}
-      data-revision={state.kind === 'saved' ? state.revision : undefined}
+      data-revision={state.kind === 'saved' ? (state.revision ?? undefined) : undefined}
       title={title}
     >
       {words[state.kind]}

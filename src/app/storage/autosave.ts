@@ -77,7 +77,11 @@ export function startAutosave(store: Store, storage: WorkStorage, onQuota: () =>
 
   const endEffect = effect(() => {
     const document = { crafts: store.crafts.value, desk: store.desk.value, settings: store.settings.value };
-    if (stopped || !storage.hasUnwritten(document)) return;
+    if (stopped) return;
+    if (!storage.hasUnwritten(document)) {
+      if (store.saveState.peek().kind === 'off') state({ kind: 'saved', revision: null });
+      return;
+    }
     if (store.saveState.peek().kind !== 'failed') state({ kind: 'pending' });
     schedule(SAVE_AFTER_MS);
   });

@@ -39,7 +39,8 @@ const MOST_VERSIONS = 100;
 export type SaveState =
   | { readonly kind: 'off'; readonly reason: string }
   | { readonly kind: 'pending' }
-  | { readonly kind: 'saved'; readonly revision: number }
+  /** Revision of the last save; null: nothing had to be saved since the page was opened. */
+  | { readonly kind: 'saved'; readonly revision: number | null }
   | { readonly kind: 'failed'; readonly reason: string };
 
 type Edit<T> = T | ((now: T) => T);

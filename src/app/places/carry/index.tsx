@@ -22,6 +22,7 @@ import { withUnit } from '../../store/units.ts';
 import { Button } from '../../widgets/Button.tsx';
 import { NoticeBox } from '../../widgets/Notice.tsx';
 import { Select } from '../../widgets/Select.tsx';
+import { keptShape } from '../shape/kept.ts';
 import './carry.css';
 import { flyForSheet, type SheetFlights } from './flights.ts';
 import { carriedFor, isOutOfDate, joined, knownIn, provenFor, type CarrySheet } from './kept.ts';
@@ -65,7 +66,10 @@ export default function Carry() {
         <Select
           label={words.convention}
           value={carried.convention.name}
-          options={CONVENTIONS.map((one) => ({ value: one.name, label: one.name }))}
+          options={conventionsOf(store.craft.value.sheets.shape).map(({ name }) => ({
+            value: name,
+            label: name,
+          }))}
           onChange={(convention) => store.setPlaceMemory('carry', { convention })}
         />
         <div class="row">
@@ -101,8 +105,15 @@ function useCarried(store: Store): Carried {
   const proven = useMemo(() => provenFor(prove, build, gains), [prove, build, gains]);
   const results = useMemo(() => joined(own.results, proven), [own, proven]);
   const known = useMemo(() => knownIn(measure), [measure]);
-  const convention = CONVENTIONS.find((one) => one.name === memory?.convention) ?? CONVENTIONS[0];
+  const conventions = conventionsOf(store.craft.value.sheets.shape);
+  const convention = conventions.find((one) => one.name === memory?.convention) ?? CONVENTIONS[0];
   return { build, gains, convention, own, results, known };
+}
+
+/** The ones that come with the program and the craft's own from Shape, which goes before one of its name. */
+function conventionsOf(shapeSheet: unknown): readonly Convention[] {
+  const { own } = keptShape(shapeSheet);
+  return own === null ? CONVENTIONS : [own, ...CONVENTIONS.filter((one) => one.name !== own.name)];
 }
 
 function madeSheet({ build, gains, convention, own, results, known }: Carried): {

@@ -10,6 +10,7 @@ import { FileDrop } from '../../widgets/FileDrop.tsx';
 import { NoticeBox } from '../../widgets/Notice.tsx';
 import { Stale } from '../../widgets/states.tsx';
 import { Tabs } from '../../widgets/Tabs.tsx';
+import { acceptCorrection } from './accept.ts';
 import { AxisPlots } from './AxisPlots.tsx';
 import type { ShownAxis, ShownEstimate } from './messages.ts';
 import { Replay } from './Replay.tsx';
@@ -243,10 +244,9 @@ function Correction(props: { matched: Matched; accepted: boolean; stale: boolean
             <Button
               primary
               disabled={props.accepted || props.stale}
-              onClick={() => {
-                store.sealEdit();
-                store.setBuild(corrected, `${words.acceptLabel} ${file.name}`);
-              }}
+              onClick={() =>
+                acceptCorrection(store, corrected, result.axes, `${words.acceptLabel} ${file.name}`)
+              }
             >
               {words.acceptNow}
             </Button>

@@ -119,6 +119,8 @@ export const matchTexts = {
   leftLabel: 'prediction error',
   unknownLine: 'a line',
   orders: { 'once per turn': 'once per turn', 'blade pass': 'blade pass' },
+  fromLog: 'matched to a flight log',
+  fromLogWithin: (percent: string) => `±${percent} % (matched to a flight log)`,
   time: 'time',
   frequency: 'frequency',
   density: 'density',

@@ -3,19 +3,16 @@ import { buildFromMeasurements, type Measurement } from '../../../measuring/buil
 import { halfWidth95, percent, type Estimate } from '../../../measuring/estimate.ts';
 import type { SwingResult } from '../../../measuring/swing.ts';
 import type { Store } from '../../store/store.ts';
+import { keepKnown, knownNow, type Known } from '../known.ts';
 import { measureTexts } from './texts.ts';
 
 const words = measureTexts.knownBy;
-/** Entry among the craft's sheets; Carry reads `known` from it. */
-const SHEET = 'measure';
 const INERTIAS = {
   'inertia roll': { axis: 'roll', key: 'inertia_xx_kgm2' },
   'inertia pitch': { axis: 'pitch', key: 'inertia_yy_kgm2' },
   'inertia yaw': { axis: 'yaw', key: 'inertia_zz_kgm2' },
 } as const;
 const INERTIA_NAMES = Object.keys(INERTIAS) as (keyof typeof INERTIAS)[];
-
-type Known = Record<string, string>;
 
 /** @returns whether the build took it; a refusal stands in the notices. Build and sheet are one step of Undo. */
 export function acceptResult(store: Store, result: Measurement, label: string): boolean {
@@ -33,19 +30,6 @@ export function acceptResult(store: Store, result: Measurement, label: string): 
 export function forgetKnown(store: Store, quantity: string, label: string): void {
   const { [quantity]: gone, ...others } = knownNow(store);
   if (gone !== undefined) keepKnown(store, others, label);
-}
-
-function keepKnown(store: Store, known: Known, label: string): void {
-  store.setSheet(SHEET, { known }, label);
-}
-
-function knownNow(store: Store): Known {
-  const sheet: unknown = store.craft.value.sheets[SHEET];
-  const known = typeof sheet === 'object' && sheet !== null && 'known' in sheet ? sheet.known : null;
-  if (typeof known !== 'object' || known === null) return {};
-  return Object.fromEntries(
-    Object.entries(known).filter((one): one is [string, string] => typeof one[1] === 'string'),
-  );
 }
 
 /** "±2.1 % (bifilar swing, 5 timings)" by the name of the quantity. */

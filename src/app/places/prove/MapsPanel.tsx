@@ -247,6 +247,7 @@ function Line(props: DrawnProps) {
             {Array.from(map.x, (value, column) => {
               const cell = cells.at(column, 0);
               const pick = picks.findIndex((one) => one.column === column);
+              const told = pick < 0 ? words.pick : words.picked(pick + 1);
               return (
                 <tr key={column}>
                   <td class="numeric">
@@ -267,10 +268,10 @@ function Line(props: DrawnProps) {
                   <td>
                     <Button
                       quiet
-                      name={`${words.pick} ${three(value)}`}
+                      name={`${told} ${three(value)}`}
                       onClick={() => props.act({ column, row: 0 })}
                     >
-                      {pick < 0 ? words.pick : words.picked(pick + 1)}
+                      {told}
                     </Button>
                   </td>
                 </tr>
