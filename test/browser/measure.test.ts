@@ -75,6 +75,30 @@ const built = async (page: Page, label: string): Promise<number> => {
 };
 
 describeInBrowser('Measure', (site) => {
+  test('arms and turns are set for all four corners at once, or for one', async () => {
+    const opened = await site.open({ at: '#/measure' });
+    const { page } = opened;
+    await tab(page, 'Numbers of the build');
+    const at = (name: string) => page.getByRole('textbox', { name, exact: true });
+    const turns = (name: string) => page.getByRole('combobox', { name, exact: true });
+    await at('FL forward').fill('0.2');
+    await at('FL forward').press('Enter');
+    await expect.poll(() => at('RR forward').inputValue()).toBe('−0.2');
+    expect(await at('FR forward').inputValue()).toBe('0.2');
+    await turns('FL turns').selectOption('ccw');
+    await expect.poll(() => turns('RR turns').inputValue()).toBe('ccw');
+    expect(await turns('FR turns').inputValue()).toBe('cw');
+    await page.getByText('Mirrored: one edit moves all four').click();
+    await at('RR forward').fill('-0.19');
+    await at('RR forward').press('Enter');
+    await expect.poll(() => at('RR forward').inputValue()).toBe('−0.19');
+    expect(await at('RL forward').inputValue()).toBe('−0.2');
+    await at('FL forward').scrollIntoViewIfNeeded();
+    await opened.shot('measure-rotors');
+    expect(await accessibilityFaults(page)).toEqual([]);
+    await opened.close();
+  }, 60_000);
+
   test('two scales give mass and centre, accepted with what is known, and Undo takes all of it back', async () => {
     const opened = await site.open({ at: '#/measure' });
     const { page } = opened;

@@ -3,6 +3,7 @@ import type { Build } from '../../../craft/build.ts';
 import { useStore } from '../../store/context.ts';
 import { NumberField } from '../../widgets/NumberField.tsx';
 import { forgetKnown } from './accept.ts';
+import { RotorFields } from './RotorFields.tsx';
 import { measureTexts as words } from './texts.ts';
 
 type Group = keyof typeof words.groups;
@@ -129,6 +130,7 @@ export function BuildFields() {
           })}
         </fieldset>
       ))}
+      <RotorFields key={store.craft.value.id} />
     </div>
   );
 }

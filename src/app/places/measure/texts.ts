@@ -10,6 +10,13 @@ export const measureTexts = {
     spinup: 'Spin-up',
     still: 'Gyro at rest and idle',
   },
+  rotors: {
+    label: 'Rotors, from the origin of the build; turns seen from above',
+    mirrored: 'Mirrored: one edit moves all four',
+    axes: ['forward', 'right', 'down'],
+    turns: 'turns',
+    spins: { cw: 'clockwise', ccw: 'counter-clockwise' },
+  },
   cautions: 'Cautions',
   what: {
     swing:
