@@ -45,9 +45,6 @@ const FRAMES_UP = 180;
 const LEAST_SCALE = 0.4;
 /** A gap between frames longer than this was a hidden page, not a slow one. */
 const HIDDEN_MS = 1000;
-/** Software WebGL that stays slower than this at the least resolution for so many frames gives way to the 2D canvas. */
-const TOO_SLOW_MS = 1000 / 30;
-const PATIENCE_FRAMES = 300;
 
 /** Everything that is made anew with build, site or theme. */
 interface Content {
@@ -68,7 +65,6 @@ export class FlightView {
   private content: Content | null = null;
   private scale: number;
   private readonly mostScale: number;
-  private readonly software: boolean;
   private interval_ms = 16;
   private lastFrame_ms = 0;
   private framesAtScale = 0;
@@ -89,7 +85,6 @@ export class FlightView {
     canvasOnly = false,
   ) {
     const kind = canvasOnly ? 'none' : webglKind();
-    this.software = kind === 'software';
     this.webgl = kind === 'none' ? null : tryWebgl(kind === 'hardware');
     this.painter = this.webgl === null ? new CanvasPainter() : null;
     // In software half the pixels are a good start; the rate soon says what can be afforded.
@@ -115,12 +110,12 @@ export class FlightView {
   private attach(): void {
     this.host.append(this.canvas);
     this.canvas.setAttribute('aria-hidden', 'true');
-    this.canvas.addEventListener('webglcontextlost', () => this.leaveWebgl(), { once: true });
+    this.canvas.addEventListener('webglcontextlost', () => this.loseWebgl(), { once: true });
     this.resize();
   }
 
-  /** The graphics driver gave up or is too slow: goes on with the 2D canvas. */
-  private leaveWebgl(): void {
+  /** The graphics driver gave up: goes on with the 2D canvas. */
+  private loseWebgl(): void {
     if (this.webgl === null) return;
     this.webgl.domElement.remove();
     this.webgl.dispose();
@@ -279,9 +274,6 @@ export class FlightView {
       this.framesAtScale > FRAMES_UP * (this.scale * 1.15 >= this.tooMuch ? 8 : 1)
     ) {
       this.setScale(Math.min(this.mostScale, this.scale * 1.15));
-    } else if (this.software && this.interval_ms > TOO_SLOW_MS && this.framesAtScale > PATIENCE_FRAMES) {
-      // Drawn by the processor either way, and the painter's few polygons cost it less.
-      this.leaveWebgl();
     }
   }
 
