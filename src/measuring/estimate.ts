@@ -105,7 +105,7 @@ export function percent(share: number): string {
 }
 
 /** Relative 95 % half-width. */
-export const halfWidth95 = (estimate: Estimate): number =>
+export const halfWidth95 = (estimate: Pick<Estimate, 'value' | 'sigma'>): number =>
   (NORMAL_95 * estimate.sigma) / Math.abs(estimate.value);
 
 /** Change of a loop's gain margin for a relative change of the plant's gain, dB. */

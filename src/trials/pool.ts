@@ -75,17 +75,6 @@ export function runTasks(makeWorker: MakeWorker, workers: number, work: PoolWork
   return pool;
 }
 
-/** As `runTasks`, over workers that are there already; those that die are not replaced. */
-export function runPool(
-  workers: readonly TrialWorker[],
-  count: number,
-  taskAt: (index: number) => TrialTask,
-  hear: (index: number, answer: TaskAnswer) => void,
-): PoolRun {
-  const free = [...workers];
-  return runTasks(() => free.shift() ?? null, workers.length, { count, taskAt, hear });
-}
-
 class Pool implements PoolRun {
   readonly done: Promise<PoolOutcome>;
   private settle: (outcome: PoolOutcome) => void = () => undefined;

@@ -7,7 +7,7 @@ import {
   isOutOfDate,
   joined,
   keyOf,
-  knownIn,
+  knownOnSheet,
   provenFor,
 } from '../../src/app/places/carry/kept.ts';
 import { windFlights, windProof } from '../../src/carrying/windLimit.ts';
@@ -118,12 +118,12 @@ describe('what is kept for the sheet', () => {
   ])('junk is as nothing: %j', (junk) => {
     expect(carriedFor(junk, build, gains)).toMatchObject({ results: [], wind: null });
     expect(provenFor(junk, build, gains)).toEqual([]);
-    expect(knownIn(junk)).toEqual({});
+    expect(knownOnSheet(junk)).toEqual({});
   });
 
   test('uncertainties are taken by name, as short texts', () => {
     expect(
-      knownIn({
+      knownOnSheet({
         known: { 'all-up mass': '± 0.2 %', 'gyro noise': 4, other: 'x', 'inertia roll': 'y'.repeat(900) },
       }),
     ).toEqual({

@@ -4,7 +4,6 @@ import { describe, expect, it } from 'vitest';
 import { refuse } from '../../src/craft/problem.ts';
 import {
   inPlaceWorker,
-  runPool,
   runTasks,
   type PoolWork,
   type Progress,
@@ -225,7 +224,12 @@ describe('the pool', () => {
   it('given workers that cannot be replaced, goes on with those that are left', async () => {
     const workers = [new ToyWorker(), new ToyWorker()];
     const heard: number[] = [];
-    const run = runPool(workers, 4, task, (index) => heard.push(index));
+    const free = [...workers];
+    const run = runTasks(() => free.shift() ?? null, workers.length, {
+      count: 4,
+      taskAt: task,
+      hear: (index) => heard.push(index),
+    });
     await turn();
     workers[0].die();
     while (workers[1].message !== null) workers[1].answer();

@@ -25,7 +25,7 @@ import { Select } from '../../widgets/Select.tsx';
 import { keptShape } from '../shape/kept.ts';
 import './carry.css';
 import { flyForSheet, type SheetFlights } from './flights.ts';
-import { carriedFor, isOutOfDate, joined, knownIn, provenFor, type CarrySheet } from './kept.ts';
+import { carriedFor, isOutOfDate, joined, knownOnSheet, provenFor, type CarrySheet } from './kept.ts';
 import { SheetView } from './SheetView.tsx';
 import { linkFor } from './shareLink.ts';
 import { carryTexts as words } from './texts.ts';
@@ -43,6 +43,8 @@ interface Carried {
   readonly build: Build;
   readonly gains: Gains;
   readonly convention: Convention;
+  /** All that may be chosen. */
+  readonly conventions: readonly Convention[];
   readonly own: CarrySheet;
   readonly results: readonly TrialResult[];
   readonly known: Readonly<Record<string, string>>;
@@ -66,10 +68,7 @@ export default function Carry() {
         <Select
           label={words.convention}
           value={carried.convention.name}
-          options={conventionsOf(store.craft.value.sheets.shape).map(({ name }) => ({
-            value: name,
-            label: name,
-          }))}
+          options={carried.conventions.map(({ name }) => ({ value: name, label: name }))}
           onChange={(convention) => store.setPlaceMemory('carry', { convention })}
         />
         <div class="row">
@@ -104,10 +103,10 @@ function useCarried(store: Store): Carried {
   const own = useMemo(() => carriedFor(carry, build, gains), [carry, build, gains]);
   const proven = useMemo(() => provenFor(prove, build, gains), [prove, build, gains]);
   const results = useMemo(() => joined(own.results, proven), [own, proven]);
-  const known = useMemo(() => knownIn(measure), [measure]);
+  const known = useMemo(() => knownOnSheet(measure), [measure]);
   const conventions = conventionsOf(store.craft.value.sheets.shape);
   const convention = conventions.find((one) => one.name === memory?.convention) ?? CONVENTIONS[0];
-  return { build, gains, convention, own, results, known };
+  return { build, gains, convention, conventions, own, results, known };
 }
 
 /** The ones that come with the program and the craft's own from Shape, which goes before one of its name. */

@@ -9,6 +9,7 @@ import type { Build } from '../../../craft/build.ts';
 import type { Gains } from '../../../craft/gains.ts';
 import { VERSION } from '../../../flight/record.ts';
 import type { TrialResult } from '../../../trials/trial.ts';
+import { knownIn } from '../known.ts';
 import type { RunOf } from '../prove/kept.ts';
 import { sameJson } from '../../store/document.ts';
 
@@ -110,13 +111,12 @@ export function joined(own: readonly TrialResult[], proven: readonly TrialResult
 const LONGEST_KNOWN = 60;
 
 /** How well quantities are known, as Measure keeps it: `{known: {quantity: text}}`. */
-export function knownIn(raw: unknown): Record<string, string> {
-  const sheet = z.object({ known: z.record(z.string(), z.unknown()) }).safeParse(raw);
-  if (!sheet.success) return {};
+export function knownOnSheet(raw: unknown): Record<string, string> {
+  const known = knownIn(raw);
   return Object.fromEntries(
     QUANTITY_NAMES.flatMap((quantity) => {
-      const text = sheet.data.known[quantity];
-      return typeof text === 'string' && text !== '' ? [[quantity, text.slice(0, LONGEST_KNOWN)]] : [];
+      const text = known[quantity] ?? '';
+      return text === '' ? [] : [[quantity, text.slice(0, LONGEST_KNOWN)]];
     }),
   );
 }

@@ -1,13 +1,12 @@
-import { signal } from '@preact/signals';
 import { useMemo } from 'preact/hooks';
 import type { AxisName } from '../../../craft/gains.ts';
 import { TRUSTED_COHERENCE } from '../../../matching/spectra.ts';
 import { LinePlot, type PlotMarker, type PlotSeries } from '../../plots/LinePlot.tsx';
 import type { ShownAxis } from './messages.ts';
+import { OverAndLeft } from './OverAndLeft.tsx';
 import { matchTexts as words } from './texts.ts';
 
 const COHERENCE_MARKS: readonly PlotMarker[] = [{ label: words.trusted, y: TRUSTED_COHERENCE }];
-const ZERO: readonly PlotMarker[] = [{ label: '', y: 0 }];
 
 /** Pictures of one axis: the log with the pieces used, the held-back piece, the response, what is left over. */
 export function AxisPlots(props: { axis: AxisName; shown: ShownAxis }) {
@@ -53,7 +52,6 @@ function Overview(props: { axis: AxisName; overview: NonNullable<ShownAxis['over
 
 function Check(props: { axis: AxisName; check: NonNullable<ShownAxis['check']> }) {
   const { axis, check } = props;
-  const cursor = useMemo(() => signal<number | null>(null), []);
   const over = useMemo(
     (): PlotSeries[] => [
       { label: words.log, axis: 'ink', values: check.measured_dps },
@@ -66,31 +64,11 @@ function Check(props: { axis: AxisName; check: NonNullable<ShownAxis['check']> }
     [check],
   );
   return (
-    <>
-      <LinePlot
-        label={words.check(axis)}
-        x={check.t_s}
-        series={over}
-        xLabel={words.time}
-        xUnit="s"
-        yLabel={words.rate}
-        yUnit="deg/s"
-        cursor={cursor}
-        height={170}
-      />
-      <LinePlot
-        label={words.residual(axis)}
-        x={check.t_s}
-        series={left}
-        xLabel={words.time}
-        xUnit="s"
-        yLabel={words.difference}
-        yUnit="deg/s"
-        markers={ZERO}
-        cursor={cursor}
-        height={100}
-      />
-    </>
+    <OverAndLeft
+      t_s={check.t_s}
+      over={{ label: words.check(axis), series: over, height: 170 }}
+      left={{ label: words.residual(axis), series: left, height: 100 }}
+    />
   );
 }
 

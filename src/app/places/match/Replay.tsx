@@ -1,19 +1,18 @@
-import { signal } from '@preact/signals';
 import { useMemo, useState } from 'preact/hooks';
 import type { AxisName } from '../../../craft/gains.ts';
-import { LinePlot, type PlotMarker, type PlotSeries } from '../../plots/LinePlot.tsx';
+import { LinePlot, type PlotSeries } from '../../plots/LinePlot.tsx';
 import { useStore } from '../../store/context.ts';
 import { Button } from '../../widgets/Button.tsx';
 import { NumberField } from '../../widgets/NumberField.tsx';
 import { Select } from '../../widgets/Select.tsx';
 import type { ShownReplayAxis } from './messages.ts';
 import type { Matched, MatchSession, Replayed } from './session.ts';
+import { OverAndLeft } from './OverAndLeft.tsx';
 import { matchTexts as words } from './texts.ts';
 
 const DEFAULT_S = 20;
 const SHORTEST_S = 2;
 const LONGEST_S = 120;
-const ZERO: readonly PlotMarker[] = [{ label: '', y: 0 }];
 
 /** The logged sticks through the full simulation: the log over it, what is left below. */
 export function Replay(props: { axis: AxisName; session: MatchSession; matched: Matched }) {
@@ -84,7 +83,6 @@ export function Replay(props: { axis: AxisName; session: MatchSession; matched: 
 
 function ReplayPlots(props: { axis: AxisName; replayed: Replayed }) {
   const { axis, replayed } = props;
-  const cursor = useMemo(() => signal<number | null>(null), []);
   const { replays } = replayed;
   const names = [words.flownBuild, words.flownCorrected];
   const shown = useMemo(
@@ -148,28 +146,10 @@ function ReplayPlots(props: { axis: AxisName; replayed: Replayed }) {
           </li>
         ))}
       </ul>
-      <LinePlot
-        label={words.replayPlot(axis)}
-        x={t_s}
-        series={over}
-        xLabel={words.time}
-        xUnit="s"
-        yLabel={words.rate}
-        yUnit="deg/s"
-        cursor={cursor}
-        height={190}
-      />
-      <LinePlot
-        label={words.replayLeft(axis)}
-        x={t_s}
-        series={left}
-        xLabel={words.time}
-        xUnit="s"
-        yLabel={words.difference}
-        yUnit="deg/s"
-        markers={ZERO}
-        cursor={cursor}
-        height={110}
+      <OverAndLeft
+        t_s={t_s}
+        over={{ label: words.replayPlot(axis), series: over, height: 190 }}
+        left={{ label: words.replayLeft(axis), series: left, height: 110 }}
       />
       <LinePlot
         label={words.replaySpectrum(axis)}

@@ -2,11 +2,9 @@
 import type { Build } from '../../../craft/build.ts';
 import type { AxisName } from '../../../craft/gains.ts';
 import type { Store } from '../../store/store.ts';
-import { keepKnown, knownNow, type Known } from '../known.ts';
+import { keepKnown, knownNow, knownTo, type Known } from '../known.ts';
 import type { ShownAxis } from './messages.ts';
 import { matchTexts as words } from './texts.ts';
-
-const HALF_95 = 1.96;
 
 interface Corrected {
   readonly quantity: string;
@@ -46,6 +44,5 @@ function knownOf(before: Build, after: Build, axes: Readonly<Record<AxisName, Sh
 
 function told(axis: AxisName | null, axes: Readonly<Record<AxisName, ShownAxis>>): string {
   const gain = axis === null ? null : (axes[axis].estimates?.gain_dps2_per_us ?? null);
-  if (gain === null || gain.value === 0) return words.fromLog;
-  return words.fromLogWithin(((100 * HALF_95 * gain.sigma) / Math.abs(gain.value)).toPrecision(2));
+  return gain === null ? words.fromLog : knownTo(gain, words.fromLog);
 }

@@ -120,7 +120,6 @@ export const matchTexts = {
   unknownLine: 'a line',
   orders: { 'once per turn': 'once per turn', 'blade pass': 'blade pass' },
   fromLog: 'matched to a flight log',
-  fromLogWithin: (percent: string) => `±${percent} % (matched to a flight log)`,
   time: 'time',
   frequency: 'frequency',
   density: 'density',

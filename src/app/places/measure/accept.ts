@@ -1,9 +1,9 @@
 /** Taking a result into the build, and keeping with the craft how well each quantity is known. */
 import { buildFromMeasurements, type Measurement } from '../../../measuring/buildFromMeasurements.ts';
-import { halfWidth95, percent, type Estimate } from '../../../measuring/estimate.ts';
+import { halfWidth95 } from '../../../measuring/estimate.ts';
 import type { SwingResult } from '../../../measuring/swing.ts';
 import type { Store } from '../../store/store.ts';
-import { keepKnown, knownNow, type Known } from '../known.ts';
+import { keepKnown, knownNow, knownTo, type Known } from '../known.ts';
 import { measureTexts } from './texts.ts';
 
 const words = measureTexts.knownBy;
@@ -40,9 +40,9 @@ function knownOf(result: Measurement): Known {
     case 'parts': {
       const inertias = INERTIA_NAMES.map((name) => [
         name,
-        told(result.quantities[INERTIAS[name].key], words.parts),
+        knownTo(result.quantities[INERTIAS[name].key], words.parts),
       ]);
-      return { ...Object.fromEntries(inertias), 'all-up mass': told(result.mass_kg, words.partsMass) };
+      return { ...Object.fromEntries(inertias), 'all-up mass': knownTo(result.mass_kg, words.partsMass) };
     }
     case 'balance':
       return result.mass_kg === null ? {} : { 'all-up mass': words.scales };
@@ -50,15 +50,15 @@ function knownOf(result: Measurement): Known {
       const { thrustCoefficient, powerCoefficient } = result.quantities;
       const how = words.stand(result.residuals.length - result.outliers.length);
       return {
-        ...(thrustCoefficient === undefined ? {} : { 'thrust coefficient': told(thrustCoefficient, how) }),
-        ...(powerCoefficient === undefined ? {} : { 'power coefficient': told(powerCoefficient, how) }),
+        ...(thrustCoefficient === undefined ? {} : { 'thrust coefficient': knownTo(thrustCoefficient, how) }),
+        ...(powerCoefficient === undefined ? {} : { 'power coefficient': knownTo(powerCoefficient, how) }),
       };
     }
     case 'still': {
       const noises = Object.values(result.axes).map((axis) => axis.noise);
       if (noises.length === 0 || !(result.gyro.noise_dps_per_rtHz > 0)) return {};
       const widest = noises.reduce((a, b) => (halfWidth95(a) > halfWidth95(b) ? a : b));
-      return { 'gyro noise': told(widest, words.still(result.sampling.duration_s.toFixed(0))) };
+      return { 'gyro noise': knownTo(widest, words.still(result.sampling.duration_s.toFixed(0))) };
     }
     case 'spinup':
       return {};
@@ -75,12 +75,7 @@ function knownOfSwing(result: SwingResult): Known {
       const timings = tests.flatMap((test) =>
         test.timings.filter((one) => one.leftOut === null && one.body === 'craft'),
       );
-      return [[name, told(estimate, words.swing(tests[0].method, timings.length))]];
+      return [[name, knownTo(estimate, words.swing(tests[0].method, timings.length))]];
     }),
   );
-}
-
-function told(estimate: Estimate, how: string): string {
-  const share = halfWidth95(estimate);
-  return Number.isFinite(share) ? `±${percent(share)} (${how})` : how;
 }
